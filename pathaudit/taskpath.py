@@ -1,0 +1,234 @@
+"""The task path: the tool poses over time, in the part frame.
+
+`path_from` takes columns that lie in memory; `reading.timed_csv` takes a file. Both end in `assemble`, the one place where
+the column names of a timed path get their meaning.
+"""
+
+import hashlib
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from .conventions import FARTHEST, INCH, SHORTEST_STEP, UNIT_TOLERANCE, frozen
+from .errors import ReadError, quoted
+from .kernels import rotations
+
+TIME = {"t_s": lambda v: v, "t_ms": lambda v: v / 1000.0}
+LENGTH = {"mm": lambda v: v / 1000.0, "m": lambda v: v, "in": lambda v: v * INCH}
+ANGLE = {"deg": np.deg2rad, "rad": lambda v: v}
+QUATERNION = ("qw", "qx", "qy", "qz")
+AXIS = ("i", "j", "k")
+MEANING = frozenset(
+    [*TIME, *QUATERNION, *AXIS, "process", "label"]
+    + [f"{c}_{unit}" for c in "xyz" for unit in LENGTH]
+    + [f"r{c}_{unit}" for c in "xyz" for unit in ANGLE]
+)
+"""Every column name that this module understands; all others are handed through."""
+
+ORIENTATIONS = "qw,qx,qy,qz or rx_deg,ry_deg,rz_deg (or _rad) or i,j,k"
+
+
+@dataclass(frozen=True, eq=False)
+class Path:
+    """Tool poses over time in the part frame: N samples, SI units, read-only arrays.
+
+    time (N,) s, strictly increasing.  position (N, 3) m, the tool centre point.
+    rotation (N, 3, 3): columns are the tool axes in the part frame.
+    spin_free: only the tool axis was given; `rotation` is then a frame with that +Z, carried along by the least turns.
+    process (N,) bool: the process runs (all True where nothing was said).  label: N texts, '' where none.
+    columns, cells: the source's header and, for each column, its N values as given (raw text for a file), to hand through.
+    file, sha256: the source and the hash of its bytes.
+    """
+
+    time: np.ndarray
+    position: np.ndarray
+    rotation: np.ndarray
+    spin_free: bool
+    process: np.ndarray
+    label: tuple
+    columns: tuple
+    cells: tuple
+    file: str
+    sha256: str
+
+    @property
+    def samples(self) -> int:
+        return len(self.time)
+
+    @property
+    def duration(self) -> float:
+        """s"""
+        return float(self.time[-1] - self.time[0])
+
+    @cached_property
+    def distance(self) -> np.ndarray:
+        """(N,) m, cumulated along the straight lines between the positions."""
+        steps = np.linalg.norm(np.diff(self.position, axis=0), axis=1)
+        return frozen(np.concatenate([[0.0], np.cumsum(steps)]))
+
+    @property
+    def length(self) -> float:
+        """m"""
+        return float(self.distance[-1])
+
+
+def path_from(columns, *, name: str = "arrays") -> Path:
+    """A path from a mapping or a DataFrame whose keys are the column names of a timed path.
+
+    >>> path = path_from({"t_s": [0, 1], "x_mm": [0, 50], "y_mm": [0, 0], "z_mm": [0, 0], "i": [0, 0], "j": [0, 0], "k": [-1, -1]})
+    >>> path.duration, path.length, path.spin_free
+    (1.0, 0.05, True)
+
+    `name` stands where errors name a file. Raises ReadError.
+    """
+    header = tuple(str(key) for key in columns.keys())
+    for column in header:
+        if header.count(column) > 1:
+            raise ReadError(name, f"column {column}", "the column twice", "each column once")
+    values = {str(key): np.array(columns[key]) for key in columns.keys()}
+    digest = hashlib.sha256()
+    for column, array in values.items():
+        if array.ndim != 1:
+            raise ReadError(name, f"column {column}", f"an array of shape {array.shape}", "one number a sample")
+        array.flags.writeable = False
+        digest.update(repr((column, array.dtype.str)).encode())
+        digest.update("\0".join(map(str, array)).encode() if array.dtype == object else array.tobytes())
+    lengths = {len(array) for array in values.values()}
+    if len(lengths) > 1:
+        raise ReadError(name, "", f"columns of {min(lengths)} and {max(lengths)} values", "the same number of values in every column")
+    return assemble(
+        header, tuple(values.values()), _array_numbers(name, values), name=name, sha256=digest.hexdigest(), place=lambda row: f"row {row + 1}"
+    )
+
+
+def _array_numbers(name, values):
+    def numbers(column):
+        try:
+            return values[column].astype(np.float64)
+        except (TypeError, ValueError, OverflowError):
+            raise ReadError(name, f"column {column}", f"values of type {values[column].dtype}", "numbers") from None
+
+    return numbers
+
+
+def assemble(header, cells, numbers, *, name, sha256, place) -> Path:
+    """Build a Path from named columns.
+
+    header, cells: the column names and, for each, its values as given.
+    numbers(column) -> (N,) float64, raises ReadError.  place(row) -> words that name a row for the user.
+    """
+    source = _Source(header, numbers, name, place)
+    time = source.quantity("time", TIME)
+    position = np.stack([source.quantity(f"the tool centre point's {c}", _units(c, LENGTH)) for c in "xyz"], axis=-1)
+    if len(time) < 2:
+        raise ReadError(name, "", f"{len(time)} sample" + "s" * (len(time) != 1), "at least 2 samples")
+    _check_time(source, time)
+    far = ~(np.abs(position) <= FARTHEST)
+    if far.any():
+        row, c = np.argwhere(far)[0]
+        raise source.error(row, f"a tool centre point at {position[row, c]:g} m", f"coordinates within {FARTHEST:g} m (check the unit of the column)")
+    rotation, spin_free = _rotation(source)
+    process = source.column("process") if "process" in header else np.ones(len(time))
+    wrong = (process != 0) & (process != 1)
+    if wrong.any():
+        row = int(np.argmax(wrong))
+        raise source.error(row, f"process = {process[row]:g}", "1 while the process runs or 0 on an air move")
+    label = tuple(map(str, cells[header.index("label")])) if "label" in header else ("",) * len(time)
+    return Path(frozen(time), frozen(position), frozen(rotation), spin_free, frozen(process, bool), label, tuple(header), tuple(cells), str(name), sha256)
+
+
+@dataclass(frozen=True)
+class _Source:
+    """The named columns of one source and the words for its places."""
+
+    header: tuple
+    numbers: object
+    name: str
+    place: object
+
+    def error(self, row, found, expected):
+        return ReadError(self.name, self.place(int(row)), found, expected)
+
+    def column(self, column):
+        values = self.numbers(column)
+        bad = ~np.isfinite(values)
+        if bad.any():
+            row = int(np.argmax(bad))
+            raise ReadError(self.name, f"{self.place(row)}, column {column}", f"{values[row]}", "a finite number")
+        return values
+
+    def quantity(self, title, units):
+        """The column that gives one quantity, converted; `units` maps column names to conversions."""
+        given = [column for column in units if column in self.header]
+        if len(given) > 1:
+            raise ReadError(self.name, "header", f"both {given[0]} and {given[1]}", f"{title} once")
+        if not given:
+            raise ReadError(self.name, "header", self._missing(units), f"{title} as {_either(units)}")
+        return units[given[0]](self.column(given[0]))
+
+    def _missing(self, wanted):
+        """What to say was found where none of the `wanted` columns is there: a column that looks like a try at one."""
+        stem = next(iter(wanted)).split("_")[0]
+        names = {stem, "time"} if stem == "t" else {stem}
+        near = [c for c in self.header if c not in MEANING and c.lower().replace("[", "_").replace(" ", "_").replace("(", "_").split("_")[0] in names]
+        if near:
+            return f"a column {quoted(near[0])}" + (" without a unit" if near[0].lower() in names else "")
+        return f"the columns {quoted(', '.join(self.header))}"
+
+
+def _units(name, units):
+    return {f"{name}_{unit}": convert for unit, convert in units.items()}
+
+
+def _either(names):
+    *first, last = names
+    return f"{', '.join(first)} or {last}" if first else last
+
+
+def _check_time(source, time):
+    late = ~(np.diff(time) >= SHORTEST_STEP)
+    if late.any():
+        row = int(np.argmax(late)) + 1
+        raise source.error(row, f"time {time[row]:.9g} s after {time[row - 1]:.9g} s in {source.place(row - 1)}", "times that strictly increase")
+
+
+def _rotation(source):
+    """(N, 3, 3) and whether the spin about the tool axis is free, from the one orientation form that the source has."""
+    angles = [_units(f"r{c}", ANGLE) for c in "xyz"]
+    groups = {"quaternion": [{c: None} for c in QUATERNION], "angles": angles, "axis": [{c: None} for c in AXIS]}
+    there = {form: [any(c in source.header for c in names) for names in group] for form, group in groups.items()}
+    whole = [form for form, found in there.items() if all(found)]
+    if len(whole) > 1:
+        columns = [c for form in whole for names in groups[form] for c in names if c in source.header]
+        raise ReadError(source.name, "header", f"two forms of the orientation ({', '.join(columns)})", f"exactly one of {ORIENTATIONS}")
+    if not whole:
+        raise _no_orientation(source, groups, there)
+    if whole == ["angles"]:
+        rpy = np.stack([source.quantity(f"the turn about {c.upper()}", names) for c, names in zip("xyz", angles)], axis=-1)
+        return rotations.matrix_from_rpy(rpy), False
+    if whole == ["quaternion"]:
+        wxyz = _unit(source, QUATERNION, "a quaternion")
+        return rotations.matrix_from_wxyz(rotations.continuous_wxyz(wxyz)), False
+    return rotations.carry_frames(_unit(source, AXIS, "a tool axis")), True
+
+
+def _no_orientation(source, groups, there):
+    for form, found in there.items():
+        if any(found):
+            missing = [_either(names) for names, ok in zip(groups[form], found) if not ok]
+            return ReadError(source.name, "header", f"an orientation without {', '.join(missing)}", f"all of one form: {ORIENTATIONS}")
+    near = [c for c in source.header if c.lower() in ("rx", "ry", "rz", "roll", "pitch", "yaw", "a", "b", "c")]
+    found = f"a column {quoted(near[0])} without a unit or a known meaning" if near else "no orientation"
+    return ReadError(source.name, "header", found, ORIENTATIONS)
+
+
+def _unit(source, columns, title):
+    """(N, len(columns)) of unit length; what is within the tolerance of 1 is scaled to it."""
+    vectors = np.stack([source.column(c) for c in columns], axis=-1)
+    length = np.linalg.norm(vectors, axis=-1)
+    bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
+    if bad.any():
+        row = int(np.argmax(bad))
+        raise source.error(row, f"{title} of length {length[row]:.6g} ({', '.join(columns)})", "length 1")
+    return vectors / length[:, None]

@@ -8,7 +8,7 @@ import numpy as np
 
 from .conventions import DEG, MAX_JOINTS, MM, frozen
 from .errors import ModelError, quoted
-from .kernels import linkage, rotations
+from .kernels import rotations
 
 
 class Chain(NamedTuple):
@@ -118,17 +118,19 @@ class Arm:
 
     def flange_pose(self, q) -> np.ndarray:
         """q (..., n) rad or m -> (..., 4, 4), flange in the arm's base frame."""
-        return self._each(linkage.poses, q)
+        return self._each("poses", q)
 
     def jacobian(self, q) -> np.ndarray:
         """q (..., n) -> (..., 6, n): linear rows first, then angular; at the flange origin, in base-frame axes."""
-        return self._each(linkage.jacobians, q)
+        return self._each("jacobians", q)
 
     def _each(self, kernel, q):
         q = np.ascontiguousarray(q, dtype=np.float64)
         if q.shape[-1:] != (self.n,):
             raise ModelError("q", f"shape {q.shape}", f"(..., {self.n}), one number a joint")
-        out = kernel(self.chain.links.copy(), self.chain.prismatic.copy(), q.reshape(-1, self.n).copy())
+        from .kernels import linkage  # loads Numba: only where numbers are wanted
+
+        out = getattr(linkage, kernel)(self.chain.links.copy(), self.chain.prismatic.copy(), q.reshape(-1, self.n).copy())
         return out.reshape(q.shape[:-1] + out.shape[1:])
 
 

@@ -1,0 +1,46 @@
+"""Arms of the outside values, built from their Denavit-Hartenberg rows."""
+
+import numpy as np
+from outside import inputs
+
+import pathaudit as pa
+
+
+def dh_rows(a_mm, alpha_deg, d_mm, range_deg=None, speed_deg_s=None):
+    n = len(a_mm)
+    ranges = range_deg or [[-360.0, 360.0]] * n
+    speeds = speed_deg_s or [180.0] * n
+    return [
+        {
+            "name": f"j{i + 1}", "type": "revolute", "a_mm": a_mm[i], "alpha_deg": alpha_deg[i], "d_mm": d_mm[i], "theta_deg": 0.0,
+            "lower_deg": ranges[i][0], "upper_deg": ranges[i][1], "speed_deg_s": speeds[i],
+        }
+        for i in range(n)
+    ]  # fmt: skip
+
+
+def planar(*lengths):
+    """Joints about +z, links along x, lengths in metres: task rows 0 and 1 are the plane, row 5 the turn."""
+    n = len(lengths)
+    return pa.Arm.from_dh(dh_rows([1000.0 * length for length in lengths], [0.0] * n, [0.0] * n))
+
+
+def puma(convention="standard", **limits):
+    row = inputs("KIN-011")
+    if convention == "standard":
+        table = row["dh"]["a"], row["dh"]["alpha_deg"], row["dh"]["d"]
+    else:
+        table = row["mod"]["a_prev"], row["mod"]["alpha_prev_deg"], row["mod"]["d"]
+    return pa.Arm.from_dh(dh_rows(*table, **limits), convention=convention)
+
+
+def sixteen():
+    """The arm of Manseur and Doty with sixteen postures for one pose (KIN-018)."""
+    row = inputs("KIN-018")
+    metres = [[1000.0 * value for value in row[key]] for key in ("a", "d")]
+    return pa.Arm.from_dh(dh_rows(metres[0], row["alpha_deg"], metres[1]))
+
+
+def square(rows):
+    """A 3 x 4 pose with its last row."""
+    return np.vstack([rows, [0.0, 0.0, 0.0, 1.0]])

@@ -1,0 +1,113 @@
+"""The fastest clock along a path whose joint motion is given, under joint speed and acceleration limits and a ceiling.
+
+The path is q(u) at nodes u_0 < ... < u_N with rates q' and q''; b = (du/dt)^2 is linear between nodes, so d2u/dt2 = a = b'/2 is constant
+on an interval, and joint speed and acceleration are q' sqrt(b) and q'' b + q' a (Bobrow 1985; Shin and McKay 1985; Verscheure 2009).
+Each interval is a set of linear rows in (b_k, b_k+1), with the acceleration rows at BOTH of its ends: rows at its middle let the result
+come out faster than the true optimum. A backward sweep finds the largest b at each node from which the rest can be run, a forward sweep
+takes the largest b that stays below: exact two-variable linear programmes, a constant number of passes over the rows.
+"""
+
+import numpy as np
+
+from .compiled import helper, kernel
+
+
+@helper
+def largest_before(left, right, x, y):
+    """Largest b_k in [0, x] with some b_k+1 in [0, y] such that |left[i, 0] b_k + left[i, 1] b_k+1| <= left[i, 2], and so for right.
+
+    The gap between the lowest upper and the highest lower bound on b_k+1 is concave in b_k and not negative at 0, so Newton steps on
+    it from the right end in its root, exactly, in a few turns.
+    """
+    for _ in range(100):
+        low, low_slope, high, high_slope = 0.0, 0.0, y, 0.0
+        for rows in (left, right):
+            for i in range(rows.shape[0]):
+                p, q, c = rows[i, 0], rows[i, 1], rows[i, 2]
+                if q < 0.0:
+                    p, q = -p, -q
+                if q > 1e-300:
+                    up, down = (c - p * x) / q, (-c - p * x) / q
+                    if up < high:
+                        high, high_slope = up, -p / q
+                    if down > low:
+                        low, low_slope = down, -p / q
+                elif abs(p) * x > c:
+                    x = c / abs(p)
+                    low, high, low_slope, high_slope = 1.0, 0.0, 0.0, 0.0
+                    break
+        gap = high - low
+        if gap >= -1e-14 * (abs(high) + abs(low)):
+            return x
+        slope = high_slope - low_slope
+        if slope < 0.0:
+            x -= gap / slope
+            if x <= 0.0:
+                return 0.0
+        elif slope > 0.0:
+            return 0.0
+    return x
+
+
+@helper
+def interval_rows(rate, bend, limit, half, near, rows):
+    """Fill rows (n, 3): p b_k + q b_k+1 within c at one end of an interval; near (1 or 0) tells whether that end is b_k's.
+
+    half is 1 / (2 (u_k+1 - u_k)), so that a = (b_k+1 - b_k) half.
+    """
+    for i in range(rate.shape[0]):
+        if limit[i] < 1e300:
+            rows[i, 0] = bend[i] * near - rate[i] * half
+            rows[i, 1] = bend[i] * (1.0 - near) + rate[i] * half
+            rows[i, 2] = limit[i]
+        else:
+            rows[i, 0], rows[i, 1], rows[i, 2] = 0.0, 0.0, 1.0
+
+
+@kernel("void(f8[::1], f8[:,::1], f8[:,::1], f8[:,::1], f8[::1], f8[::1])")
+def _sweep(u, rate, bend, limit, ceiling, b):
+    count, n = rate.shape
+    left, right = np.empty((n, 3)), np.empty((n, 3))
+    b[count - 1] = ceiling[count - 1]
+    for k in range(count - 2, -1, -1):
+        half = 0.5 / (u[k + 1] - u[k])
+        interval_rows(rate[k], bend[k], limit[k], half, 1.0, left)
+        interval_rows(rate[k + 1], bend[k + 1], limit[k + 1], half, 0.0, right)
+        b[k] = largest_before(left, right, ceiling[k], b[k + 1])
+    for k in range(count - 1):
+        half = 0.5 / (u[k + 1] - u[k])
+        interval_rows(rate[k], bend[k], limit[k], half, 1.0, left)
+        interval_rows(rate[k + 1], bend[k + 1], limit[k + 1], half, 0.0, right)
+        high = b[k + 1]
+        for i in range(n):
+            for j in range(2):
+                rows = left if j == 0 else right
+                p, q = rows[i, 0], rows[i, 1]
+                if q < 0.0:
+                    p, q = -p, -q
+                if q > 1e-300:
+                    high = min(high, (rows[i, 2] - p * b[k]) / q)
+        b[k + 1] = max(high, 0.0)
+
+
+def sweep(u, rate, bend, limit, ceiling):
+    """Largest b (N,) = (du/dt)^2 under |q'' b + q' a| <= limit and 0 <= b <= ceiling.
+
+    u (N,) increasing, rate and bend (N, n) the first and second derivative of the joints by u, limit (N, n) or (n,) joint accelerations
+    (inf where there is none), ceiling (N,), which holds the speed limits: b <= (limit / |q'|)^2.
+    """
+    rate = np.ascontiguousarray(rate, dtype=float)
+    limit = np.ascontiguousarray(np.broadcast_to(np.asarray(limit, dtype=float), rate.shape))
+    b = np.empty(rate.shape[0])
+    _sweep(
+        np.ascontiguousarray(u, dtype=float), rate, np.ascontiguousarray(bend, dtype=float), limit,
+        np.ascontiguousarray(ceiling, dtype=float), b,
+    )  # fmt: skip
+    return b
+
+
+def durations(u, b):
+    """Time (N - 1,) over each interval for b (N,) linear between nodes u (N,); infinite where both ends stand still."""
+    root = np.sqrt(b)
+    with np.errstate(divide="ignore"):
+        return 2.0 * np.diff(u) / (root[1:] + root[:-1])

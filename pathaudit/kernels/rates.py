@@ -1,0 +1,460 @@
+"""Rates along a path: tool twists from the timed poses, joint speeds and accelerations, singular values, the largest speed.
+
+Joint rates come from the Jacobian and the tool twist, not from differences of joint angles: beside a singularity those hide the peak.
+"""
+
+from math import sqrt
+
+import numpy as np
+
+from .compiled import helper, kernel
+from .linkage import place
+from .task import damped_step, eliminate, rotation_log, task_jacobian
+
+
+@helper
+def weights(time, k, first, count, w):
+    """Fill w (3, 5): w[d, i] is the weight of sample first + i in the d-th derivative at time[k] of the polynomial through `count` samples.
+
+    Fornberg, "Generation of finite difference formulas on arbitrarily spaced grids", Math. Comp. 51 (1988).
+    """
+    for d in range(3):
+        for i in range(5):
+            w[d, i] = 0.0
+    w[0, 0] = 1.0
+    c1, c4 = 1.0, time[first] - time[k]
+    for i in range(1, count):
+        c2, c5, c4 = 1.0, c4, time[first + i] - time[k]
+        top = min(i, 2)
+        for j in range(i):
+            c3 = time[first + i] - time[first + j]
+            c2 *= c3
+            if j == i - 1:
+                for d in range(top, 0, -1):
+                    w[d, i] = c1 * (d * w[d - 1, i - 1] - c5 * w[d, i - 1]) / c2
+                w[0, i] = -c1 * c5 * w[0, i - 1] / c2
+            for d in range(top, 0, -1):
+                w[d, j] = (c4 * w[d, j] - d * w[d - 1, j]) / c3
+            w[0, j] = c4 * w[0, j] / c3
+        c1 = c2
+
+
+@helper
+def window(k, total, kinks):
+    """First sample and number of samples of the polynomial at sample k: five where the motion is smooth, three beside and on a kink."""
+    reach = 2
+    for j in range(max(k - 1, 0), min(k + 2, total)):
+        if kinks[j]:
+            reach = 1
+    count = min(2 * reach + 1, total)
+    return max(0, min(k - reach, total - count)), count
+
+
+@helper
+def find_kinks(time, secant, kinks):
+    """Mark the samples where the velocity jumps: the change of secant (N - 1, c) there dwarfs that at both neighbours."""
+    total = time.shape[0]
+    before, here, jump = 0.0, 0.0, 0.0
+    for j in range(1, total):
+        after, jump_after = 0.0, 0.0
+        if j + 1 < total:
+            change = size = 0.0
+            for c in range(secant.shape[1]):
+                change += (secant[j, c] - secant[j - 1, c]) ** 2
+                size = max(size, abs(secant[j, c]), abs(secant[j - 1, c]))
+            jump_after = sqrt(change) / (size + 1e-12)
+            after = sqrt(change) / (time[j + 1] - time[j - 1])
+        # `here` belongs to sample j - 1
+        if j > 1 and here > 5.0 * max(before, after) and jump > 0.02:
+            kinks[j - 1] = 1
+        before, here, jump = here, after, jump_after
+
+
+@helper
+def seen_from(a, b, out):
+    """Fill out (3, 3) with a^T b, the orientation b as seen from a."""
+    for i in range(3):
+        for j in range(3):
+            out[i, j] = a[0, i] * b[0, j] + a[1, i] * b[1, j] + a[2, i] * b[2, j]
+
+
+@kernel("void(f8[::1], f8[:,::1], f8[:,::1], f8[:,::1])")
+def _derivatives(time, values, first, second):
+    total, c = values.shape
+    kinks, w = np.zeros(total, np.uint8), np.empty((3, 5))
+    secant = np.empty((max(total - 1, 0), c))
+    for k in range(total - 1):
+        for j in range(c):
+            secant[k, j] = (values[k + 1, j] - values[k, j]) / (time[k + 1] - time[k])
+    find_kinks(time, secant, kinks)
+    for k in range(total):
+        start, count = window(k, total, kinks)
+        weights(time, k, start, count, w)
+        for j in range(c):
+            a = b = 0.0
+            for i in range(count):
+                offset = values[start + i, j] - values[k, j]
+                a += w[1, i] * offset
+                b += w[2, i] * offset
+            first[k, j], second[k, j] = a, b
+
+
+@kernel("void(f8[::1], f8[:,:,::1], f8[:,::1], f8[:,::1])")
+def _turning(time, rotation, first, second):
+    total = time.shape[0]
+    kinks, w = np.zeros(total, np.uint8), np.empty((3, 5))
+    relative, vector, secant = np.empty((3, 3)), np.empty(3), np.empty((max(total - 1, 0), 3))
+    for k in range(total - 1):
+        seen_from(rotation[k], rotation[k + 1], relative)
+        rotation_log(relative, vector)
+        for i in range(3):
+            # the rotation vector is the same in both frames; in part axes the secants of a path can be compared
+            secant[k, i] = rotation[k, i, 0] * vector[0] + rotation[k, i, 1] * vector[1] + rotation[k, i, 2] * vector[2]
+            secant[k, i] /= time[k + 1] - time[k]
+    find_kinks(time, secant, kinks)
+    a, b = np.empty(3), np.empty(3)
+    for k in range(total):
+        start, count = window(k, total, kinks)
+        weights(time, k, start, count, w)
+        for j in range(3):
+            a[j], b[j] = 0.0, 0.0
+        for i in range(count):
+            if start + i != k:
+                seen_from(rotation[k], rotation[start + i], relative)
+                rotation_log(relative, vector)
+                for j in range(3):
+                    a[j] += w[1, i] * vector[j]
+                    b[j] += w[2, i] * vector[j]
+        for i in range(3):
+            first[k, i] = rotation[k, i, 0] * a[0] + rotation[k, i, 1] * a[1] + rotation[k, i, 2] * a[2]
+            second[k, i] = rotation[k, i, 0] * b[0] + rotation[k, i, 1] * b[1] + rotation[k, i, 2] * b[2]
+
+
+def derivatives(time, values):
+    """First and second time derivative of values (N, c): the quartic through five samples, the parabola through three at a kink."""
+    values = np.ascontiguousarray(values, dtype=float)
+    first, second = np.empty_like(values), np.empty_like(values)
+    _derivatives(np.ascontiguousarray(time, dtype=float), values, first, second)
+    return first, second
+
+
+def twists(time, position, rotation):
+    """Tool twist and its rate, (N, 6) each, linear rows first, in part axes, of poses at time (N,), position (N, 3), rotation (N, 3, 3).
+
+    Rotations are differentiated in the chart of rotation vectors around each sample, where the first two derivatives at the centre are
+    the angular velocity and acceleration exactly.
+    """
+    time = np.ascontiguousarray(time, dtype=float)
+    linear, linear_rate = derivatives(time, position)
+    angular, angular_rate = np.empty((time.shape[0], 3)), np.empty((time.shape[0], 3))
+    _turning(time, np.ascontiguousarray(rotation, dtype=float), angular, angular_rate)
+    return np.hstack([linear, angular]), np.hstack([linear_rate, angular_rate])
+
+
+@helper
+def extreme_singular_values(jacobian, rows, n, work, d, e):
+    """Smallest and largest singular value of jacobian (rows, n) over min(rows, n), from the tridiagonal form of the Gram matrix.
+
+    Householder tridiagonalisation, then Laguerre steps on the characteristic polynomial from outside the spectrum, which converge from
+    one side and cubically (Wilkinson 1965, ch. 7). Squaring loses half the digits: the absolute error is about 1e-8 of the largest
+    value near zero, which the caller mends by `jacobi_smallest` where it matters.
+    """
+    size = min(rows, n)
+    trace = 0.0
+    for i in range(size):
+        for j in range(i + 1):
+            total = 0.0
+            if n >= rows:
+                for k in range(n):
+                    total += jacobian[i, k] * jacobian[j, k]
+            else:
+                for k in range(rows):
+                    total += jacobian[k, i] * jacobian[k, j]
+            work[i, j] = total
+            work[j, i] = total
+        trace += work[i, i]
+    if size == 1:
+        return sqrt(work[0, 0]), sqrt(work[0, 0])
+    for k in range(size - 2):
+        norm = 0.0
+        for i in range(k + 1, size):
+            norm += work[i, k] * work[i, k]
+        tail = norm - work[k + 1, k] * work[k + 1, k]
+        e[k] = work[k + 1, k]
+        if tail > 0.0:
+            alpha = -sqrt(norm) if work[k + 1, k] > 0.0 else sqrt(norm)
+            e[k] = alpha
+            # v = x - alpha e1, beta = 2 / v.v; v replaces the column
+            work[k + 1, k] -= alpha
+            beta = 2.0 / (tail + work[k + 1, k] * work[k + 1, k])
+            mean = 0.0
+            for i in range(k + 1, size):
+                total = 0.0
+                for j in range(k + 1, size):
+                    total += work[i, j] * work[j, k]
+                d[i] = beta * total
+                mean += d[i] * work[i, k]
+            mean *= 0.5 * beta
+            for i in range(k + 1, size):
+                d[i] -= mean * work[i, k]
+            for i in range(k + 1, size):
+                for j in range(k + 1, i + 1):
+                    work[i, j] -= work[i, k] * d[j] + d[i] * work[j, k]
+                    work[j, i] = work[i, j]
+    e[size - 2] = work[size - 1, size - 2]
+    high = 0.0
+    for i in range(size):
+        d[i] = work[i, i]
+    for i in range(size):
+        radius = (abs(e[i]) if i < size - 1 else 0.0) + (abs(e[i - 1]) if i > 0 else 0.0)
+        high = max(high, d[i] + radius)
+        if i < size - 1:
+            work[0, i] = e[i] * e[i]
+    low = laguerre(d, work[0], size, 0.0, -1.0, trace)
+    top = laguerre(d, work[0], size, min(high, trace) * (1.0 + 1e-15), 1.0, trace)
+    return sqrt(max(low, 0.0)), sqrt(top)
+
+
+@helper
+def laguerre(d, squares, size, x, side, scale):
+    """The root next to x of the tridiagonal's characteristic polynomial, from below (side -1) or above (side 1) the spectrum."""
+    for _ in range(60):
+        # p, p', p'' by the three-term recurrence, scaled so that nothing overflows (entries are of order one)
+        p0, p1 = 1.0, d[0] - x
+        g0, g1 = 0.0, -1.0
+        h0, h1 = 0.0, 0.0
+        for i in range(1, size):
+            a = d[i] - x
+            p2 = a * p1 - squares[i - 1] * p0
+            g2 = a * g1 - p1 - squares[i - 1] * g0
+            h2 = a * h1 - 2.0 * g1 - squares[i - 1] * h0
+            p0, p1, g0, g1, h0, h1 = p1, p2, g1, g2, h1, h2
+        if p1 == 0.0:
+            return x
+        g = g1 / p1
+        h = g * g - h1 / p1
+        inside = (size - 1.0) * (size * h - g * g)
+        root = sqrt(inside) if inside > 0.0 else 0.0
+        step = -size / (g - root if g < 0.0 else g + root)
+        x += step
+        if not abs(step) > 4e-16 * abs(x) + 1e-18 * scale or step * side > 0.0:
+            return x
+    return x
+
+
+@helper
+def jacobi_smallest(jacobian, rows, n, work):
+    """Smallest singular value by one-sided Jacobi rotations (Hestenes 1958), to full relative accuracy; slow, for the few that need it."""
+    wide = n >= rows
+    size, depth = (rows, n) if wide else (n, rows)
+    for i in range(size):
+        for k in range(depth):
+            work[i, k] = jacobian[i, k] if wide else jacobian[k, i]
+    for _ in range(40):
+        off = 0.0
+        for i in range(size - 1):
+            for j in range(i + 1, size):
+                a = b = c = 0.0
+                for k in range(depth):
+                    a += work[i, k] * work[i, k]
+                    b += work[j, k] * work[j, k]
+                    c += work[i, k] * work[j, k]
+                if abs(c) <= 1e-15 * sqrt(a * b):
+                    continue
+                off = max(off, abs(c) / sqrt(a * b))
+                zeta = (b - a) / (2.0 * c)
+                t = (1.0 if zeta >= 0.0 else -1.0) / (abs(zeta) + sqrt(1.0 + zeta * zeta))
+                cs = 1.0 / sqrt(1.0 + t * t)
+                sn = cs * t
+                for k in range(depth):
+                    x, y = work[i, k], work[j, k]
+                    work[i, k], work[j, k] = cs * x - sn * y, sn * x + cs * y
+        if off == 0.0:
+            break
+    smallest = 1e300
+    for i in range(size):
+        total = 0.0
+        for k in range(depth):
+            total += work[i, k] * work[i, k]
+        smallest = min(smallest, sqrt(total))
+    return smallest
+
+
+@helper
+def smallest_share(jacobian, rows, n, speed, limit, work, null):
+    """Least over all joint motions with the same tool motion of the largest |speed| / limit, for one surplus joint (n = rows + 1).
+
+    Discrete Chebyshev approximation in one unknown: the optimum is the largest of the bounds that pairs of joints give (the vertices of
+    the dual linear programme; de la Vallee Poussin's bound).
+    """
+    # the null vector by Gaussian elimination with complete pivoting over the columns
+    for i in range(rows):
+        for j in range(n):
+            work[i, j] = jacobian[i, j]
+    for j in range(n):
+        null[j] = j
+    for k in range(rows):
+        p, q, largest = k, k, 0.0
+        for i in range(k, rows):
+            for j in range(k, n):
+                if abs(work[i, j]) > largest:
+                    p, q, largest = i, j, abs(work[i, j])
+        if largest < 1e-12:
+            return -1.0
+        for j in range(n):
+            work[k, j], work[p, j] = work[p, j], work[k, j]
+        for i in range(rows):
+            work[i, k], work[i, q] = work[i, q], work[i, k]
+        null[k], null[q] = null[q], null[k]
+        for i in range(k + 1, rows):
+            factor = work[i, k] / work[k, k]
+            for j in range(k, n):
+                work[i, j] -= factor * work[k, j]
+    for k in range(rows - 1, -1, -1):
+        total = -work[k, rows]
+        for j in range(k + 1, rows):
+            total -= work[k, j] * work[rows, j]
+        work[rows, k] = total / work[k, k]
+    work[rows, rows] = 1.0
+    best = 0.0
+    for a in range(n):
+        i = int(null[a])
+        for b in range(a):
+            j = int(null[b])
+            size = abs(work[rows, a]) * limit[j] + abs(work[rows, b]) * limit[i]
+            if size > 0.0:
+                best = max(best, abs(work[rows, b] * speed[i] - work[rows, a] * speed[j]) / size)
+    return best
+
+
+@helper
+def in_tool_axes(v, tool, inverse_length, out):
+    for i in range(3):
+        out[i] = (tool[0, i] * v[0] + tool[1, i] * v[1] + tool[2, i] * v[2]) * inverse_length
+        out[3 + i] = tool[0, i] * v[3] + tool[1, i] * v[4] + tool[2, i] * v[5]
+
+
+@helper
+def match_rates(jacobian, demand, rows, n, low, guess, out, work, vector, step, right):
+    """Fill out (n,): the rates nearest to guess (n,) that give the demand; return the determinant of a square Jacobian, else 1.
+
+    Where the Jacobian is square and regular the guess does not matter. On a singular place the direction that the Jacobian cannot
+    tell is left as the guess has it.
+    """
+    determinant = 1.0
+    if n == rows:
+        determinant, smallest = eliminate(jacobian, demand, n, work, out)
+        if low > 1e-6 and smallest > 0.0:
+            return determinant
+    for i in range(rows):
+        right[i] = demand[i]
+        for j in range(n):
+            right[i] -= jacobian[i, j] * guess[j]
+    damped_step(jacobian, right, rows, n, 1e-12 if low < 1e-6 else 0.0, work, vector, step)
+    for i in range(n):
+        out[i] = guess[i] + step[i]
+    return determinant
+
+
+@helper
+def coasting(prismatic, axes, origins, tool, speed, out):
+    """Fill out (6,): the acceleration of the tool at constant joint speeds, J-dot times q-dot, in the axes of the first frame."""
+    n = prismatic.shape[0]
+    wx = wy = wz = vx = vy = vz = 0.0
+    for i in range(6):
+        out[i] = 0.0
+    # the tool's own velocity first
+    tx = ty = tz = 0.0
+    for i in range(n):
+        ax, ay, az, s = axes[i, 0], axes[i, 1], axes[i, 2], speed[i]
+        if prismatic[i]:
+            tx, ty, tz = tx + ax * s, ty + ay * s, tz + az * s
+        else:
+            dx, dy, dz = tool[0, 3] - origins[i, 0], tool[1, 3] - origins[i, 1], tool[2, 3] - origins[i, 2]
+            tx, ty, tz = tx + (ay * dz - az * dy) * s, ty + (az * dx - ax * dz) * s, tz + (ax * dy - ay * dx) * s
+    ox, oy, oz = origins[0, 0], origins[0, 1], origins[0, 2]
+    for i in range(n):
+        ax, ay, az, s = axes[i, 0], axes[i, 1], axes[i, 2], speed[i]
+        # velocity of this joint's origin, carried by the joints before it
+        dx, dy, dz = origins[i, 0] - ox, origins[i, 1] - oy, origins[i, 2] - oz
+        vx, vy, vz = vx + wy * dz - wz * dy, vy + wz * dx - wx * dz, vz + wx * dy - wy * dx
+        ox, oy, oz = origins[i, 0], origins[i, 1], origins[i, 2]
+        # rate of this joint's axis
+        bx, by, bz = wy * az - wz * ay, wz * ax - wx * az, wx * ay - wy * ax
+        if prismatic[i]:
+            # the axis turns, and the part already slid out is carried in the origins of the joints after it
+            out[0] += bx * s
+            out[1] += by * s
+            out[2] += bz * s
+            vx, vy, vz = vx + ax * s, vy + ay * s, vz + az * s
+        else:
+            dx, dy, dz = tool[0, 3] - ox, tool[1, 3] - oy, tool[2, 3] - oz
+            ex, ey, ez = tx - vx, ty - vy, tz - vz
+            out[0] += (by * dz - bz * dy + ay * ez - az * ey) * s
+            out[1] += (bz * dx - bx * dz + az * ex - ax * ez) * s
+            out[2] += (bx * dy - by * dx + ax * ey - ay * ex) * s
+            out[3] += bx * s
+            out[4] += by * s
+            out[5] += bz * s
+            wx, wy, wz = wx + ax * s, wy + ay * s, wz + az * s
+    return True
+
+
+@kernel(
+    "void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[:,::1], f8[:,::1], f8[:,::1], f8[:,::1], f8[:,::1],"
+    " f8[:,::1], f8[:,::1], f8[:,::1])"
+)
+def _rates(links, prismatic, length, rows, limit, joints, twist, twist_rate, slope, bend, speed, acceleration, measures):
+    n = prismatic.shape[0]
+    wide = max(n, 7) + 1
+    axes, origins, tool, jacobian = np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((rows, n))
+    work, vector, step = np.empty((wide, wide)), np.empty(wide), np.empty(n)
+    d, e, right, demand = np.empty(wide), np.empty(wide), np.empty(6), np.empty(6)
+    for k in range(joints.shape[0]):
+        if not np.isfinite(joints[k, 0]):
+            for i in range(n):
+                speed[k, i], acceleration[k, i] = np.nan, np.nan
+            for i in range(6):
+                measures[k, i] = np.nan
+            continue
+        place(links, prismatic, joints[k], axes, origins, tool)
+        task_jacobian(prismatic, axes, origins, tool, rows, 1.0 / length, jacobian)
+        low, high = extreme_singular_values(jacobian, rows, n, work, d, e)
+        if low < 1e-4 * high:
+            low = jacobi_smallest(jacobian, rows, n, work)
+        in_tool_axes(twist[k], tool, 1.0 / length, demand)
+        determinant = match_rates(jacobian, demand, rows, n, low, slope[k], speed[k], work, vector, step, right)
+        in_tool_axes(twist_rate[k], tool, 1.0 / length, demand)
+        if coasting(prismatic, axes, origins, tool, speed[k], vector):
+            in_tool_axes(vector, tool, 1.0 / length, right)
+            for i in range(rows):
+                demand[i] -= right[i]
+        match_rates(jacobian, demand, rows, n, low, bend[k], acceleration[k], work, vector, step, right)
+        share = 0.0
+        for i in range(n):
+            share = max(share, abs(speed[k, i]) / limit[i])
+        least = share
+        if n == rows + 1 and share > 0.0:
+            found = smallest_share(jacobian, rows, n, speed[k], limit, work, vector)
+            if found >= 0.0:
+                least = min(found, share)
+        measures[k, 0], measures[k, 1], measures[k, 2], measures[k, 3], measures[k, 4] = low, high, abs(determinant), share, least
+        measures[k, 5] = 1.0 if determinant > 0.0 else -1.0
+
+
+def rates(chain, length, rows, limit, joints, twist, twist_rate, slope, bend):
+    """Joint rates and measures at joints (N, n), rows with NaN left out.
+
+    length in m scales the linear rows; limit (n,) joint speeds; twist and twist_rate (N, 6) of the tool in part axes; slope and bend
+    (N, n) the followed joints' own first and second time derivatives, which decide only what the tool motion leaves open. Returns
+    speed, acceleration (N, n) and measures (N, 6): smallest and largest singular value of the scaled task Jacobian, |determinant|
+    (1 where not square), largest |speed| / limit, the least that this could be for the same tool motion, sign of the determinant.
+    """
+    flat = [np.ascontiguousarray(a, dtype=float) for a in (joints, twist, twist_rate, slope, bend)]
+    n, samples = chain.prismatic.shape[0], flat[0].shape[0]
+    speed, acceleration, measures = np.empty((samples, n)), np.empty((samples, n)), np.empty((samples, 6))
+    _rates(
+        np.ascontiguousarray(chain.links, dtype=float), np.ascontiguousarray(chain.prismatic, dtype=np.uint8), float(length), rows,
+        np.ascontiguousarray(limit, dtype=float), *flat, speed, acceleration, measures,
+    )  # fmt: skip
+    return speed, acceleration, measures

@@ -1,0 +1,295 @@
+"""Inverse kinematics by damped Jacobian pseudo-inverse (Newton) steps: one pose, and a whole path followed sample by sample.
+
+Step and damping: Whitney 1969; Wampler 1986; Nakamura and Hanafusa 1986. Damping by trial: Levenberg 1944, Marquardt 1963. Step control
+along a branch of solutions: Allgower and Georg 1990.
+"""
+
+from math import sqrt
+
+import numpy as np
+
+from .compiled import helper, kernel
+from .linkage import place
+from .task import damped_step, eliminate, pose_error, rotation_log, task_jacobian
+
+TOLERANCE = 1e-10  # of a solved pose, metres and radians: ten times tighter than what is promised
+REACHED, CROSSED, JUMPED, UNREACHED = 0, 1, 2, 3
+
+
+@helper
+def largest_of(a, n):
+    largest = 0.0
+    for i in range(n):
+        largest = max(largest, abs(a[i]))
+    return largest
+
+
+@helper
+def largest_move(a, b):
+    largest = 0.0
+    for i in range(a.shape[0]):
+        largest = max(largest, abs(a[i] - b[i]))
+    return largest
+
+
+@helper
+def copy(source, target, count):
+    # an element at a time: assigning a slice would compile Numba's messages on unequal shapes into every kernel
+    for i in range(count):
+        target[i] = source[i]
+
+
+@helper
+def scratch(n):
+    """Room for everything that a step needs, as one array: many small ones make the kernels slow to compile."""
+    return np.empty((7, max(n, 6) + 1, max(n, 6) + 1))
+
+
+@helper
+def settle(links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, most, room):
+    """Steps on q (n,) in place towards one pose; returns (solved, sign of the determinant, metres left, radians left).
+
+    Plain Newton steps where the Jacobian is square and regular, damped ones elsewhere; no joint moves more than `limit` in a step.
+    Guarded, a step that does not come closer is taken back and damped more (Levenberg-Marquardt), so that q ends at the pose or as
+    close to it as can be. The sign is 0 where the Jacobian is near singular or not square.
+    """
+    axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
+    error, step, vector, base, kept = room[6, 0], room[6, 1], room[6, 2], room[6, 3], room[6, 4]
+    n = q.shape[0]
+    sign, damping, cost, best_far, best_turned, dull = 0.0, (1e-3 if guarded else 0.0), np.inf, np.inf, np.inf, 0
+    for turn in range(most + 1):
+        place(links, prismatic, q, axes, origins, tool)
+        far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
+        if far < TOLERANCE and turned < TOLERANCE and turn > 0:
+            return True, sign, far, turned
+        now = (far * inverse_length) ** 2 + turned**2
+        if guarded and not now < cost:
+            copy(base, q, n)
+            copy(kept, error, 6)
+            damping = 10.0 * max(damping, 1e-9)
+            if damping > 1e6:
+                break
+        else:
+            dull = dull + 1 if now > 0.999999 * cost else 0
+            if turn == most or dull > 5 or not far < 1e6:
+                return False, sign, far, turned
+            cost, best_far, best_turned, damping = now, far, turned, 0.1 * damping
+            copy(q, base, n)
+            copy(error, kept, 6)
+            task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian)
+        within = False
+        if n == rows and damping < 1e-6:
+            determinant, smallest = eliminate(jacobian, error, n, work, step)
+            sign = 0.0 if smallest < 1e-7 else (1.0 if determinant > 0.0 else -1.0)
+            within = smallest > 1e-6 and largest_of(step, n) < limit
+        lift = damping if guarded or n != rows else 1e-8
+        while not within and lift < 1e8:
+            damped_step(jacobian, error, rows, n, lift, work, vector, step)
+            within = largest_of(step, n) < limit
+            lift = 10.0 * max(lift, 1e-10)
+        for i in range(n):
+            q[i] += step[i]
+    copy(base, q, n)
+    return False, sign, best_far, best_turned
+
+
+@helper
+def rotate(v, out):
+    """Fill out (3, 3) with the rotation whose rotation vector is v (3,); Rodrigues' formula by half angles, exact near zero."""
+    x, y, z = v[0], v[1], v[2]
+    square = x * x + y * y + z * z
+    angle = sqrt(square)
+    half = np.sin(0.5 * angle)
+    s = np.sin(angle) / angle if angle > 1e-8 else 1.0
+    c = 2.0 * half * half / square if angle > 1e-8 else 0.5
+    out[0, 0], out[0, 1], out[0, 2] = 1.0 - c * (y * y + z * z), c * x * y - s * z, c * x * z + s * y
+    out[1, 0], out[1, 1], out[1, 2] = c * x * y + s * z, 1.0 - c * (x * x + z * z), c * y * z - s * x
+    out[2, 0], out[2, 1], out[2, 2] = c * x * z - s * y, c * y * z + s * x, 1.0 - c * (x * x + y * y)
+
+
+@helper
+def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare):
+    """The pose at the fraction u of an interval of `span` seconds: cubic Hermite in position and in the rotation vector from r0.
+
+    v0 and v1 (6,) are the tool twists at the ends, in part axes.
+    """
+    h00, h10 = (1.0 + 2.0 * u) * (1.0 - u) ** 2, u * (1.0 - u) ** 2
+    h01, h11 = u * u * (3.0 - 2.0 * u), u * u * (u - 1.0)
+    for i in range(3):
+        position[i] = h00 * p0[i] + h10 * span * v0[i] + h01 * p1[i] + h11 * span * v1[i]
+        for j in range(3):
+            spare[i, j] = r0[0, i] * r1[0, j] + r0[1, i] * r1[1, j] + r0[2, i] * r1[2, j]
+    phi, w0, w1, vector = np.empty(3), np.empty(3), np.empty(3), np.empty(3)
+    rotation_log(spare, phi)
+    for i in range(3):
+        w0[i] = r0[0, i] * v0[3] + r0[1, i] * v0[4] + r0[2, i] * v0[5]
+        w1[i] = r1[0, i] * v1[3] + r1[1, i] * v1[4] + r1[2, i] * v1[5]
+    # rate of the rotation vector at the far end: inverse right Jacobian to second order (the interval turns little)
+    c = (phi[1] * w1[2] - phi[2] * w1[1], phi[2] * w1[0] - phi[0] * w1[2], phi[0] * w1[1] - phi[1] * w1[0])
+    d = (phi[1] * c[2] - phi[2] * c[1], phi[2] * c[0] - phi[0] * c[2], phi[0] * c[1] - phi[1] * c[0])
+    for i in range(3):
+        vector[i] = h10 * span * w0[i] + h01 * phi[i] + h11 * span * (w1[i] + 0.5 * c[i] + d[i] / 12.0)
+    rotate(vector, spare)
+    for i in range(3):
+        for j in range(3):
+            rotation[i, j] = r0[i, 0] * spare[0, j] + r0[i, 1] * spare[1, j] + r0[i, 2] * spare[2, j]
+
+
+@helper
+def creep(links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, room):
+    """Follow the motion between two samples in small steps, q in place; (done, steps). Not done: a singular place, or no way on."""
+    position, rotation, spare, trial = np.empty(3), np.empty((3, 3)), np.empty((3, 3)), np.empty(q.shape[0])
+    u, h, steps = 0.0, 0.25, 0
+    while u < 1.0 and steps < 4000:
+        steps += 1
+        goal = min(1.0, u + h)
+        between(p0, r0, v0, p1, r1, v1, span, goal, position, rotation, spare)
+        if goal == 1.0:
+            copy(p1, position, 3)
+            for i in range(3):
+                copy(r1[i], rotation[i], 3)
+        copy(q, trial, q.shape[0])
+        solved, now, _, _ = settle(links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 4, room)
+        if solved and largest_move(trial, q) < 0.1 and (now == sign or now == 0.0 or sign == 0.0):
+            copy(trial, q, q.shape[0])
+            u = goal
+            h *= 2.0
+        else:
+            h *= 0.5
+            if h < 3e-6:
+                return False, steps
+    return u >= 1.0, steps
+
+
+@helper
+def lean(jacobian, rows, n, lower, upper, q, move, work, vector, step, pull):
+    """Fill pull (n,): null-space motion away from travel limits, as large as `move` at a limit, none in the middle 70 % of the travel."""
+    near = False
+    for i in range(n):
+        pull[i] = 0.0
+        if np.isfinite(lower[i]) and np.isfinite(upper[i]):
+            share = (2.0 * q[i] - lower[i] - upper[i]) / (upper[i] - lower[i])
+            if abs(share) > 0.7:
+                near = True
+                pull[i] = -move * min((abs(share) - 0.7) / 0.3, 2.0) * (1.0 if share > 0.0 else -1.0)
+    if not near:
+        return False
+    for i in range(rows):
+        vector[i] = 0.0
+        for j in range(n):
+            vector[i] += jacobian[i, j] * pull[j]
+    damped_step(jacobian, vector, rows, n, 0.0, work, vector, step)
+    for i in range(n):
+        pull[i] -= step[i]
+    return True
+
+
+@helper
+def extrapolate(time, joints, k, guess):
+    """Fill guess (n,) with the parabola through the three joint rows before k, unless the time step grows too fast to trust it."""
+    t0, t1, t2, t = time[k - 3], time[k - 2], time[k - 1], time[k]
+    if t - t2 < 3.0 * (t2 - t1) and t2 - t1 < 3.0 * (t1 - t0):
+        a = (t - t1) * (t - t2) / ((t0 - t1) * (t0 - t2))
+        b = (t - t0) * (t - t2) / ((t1 - t0) * (t1 - t2))
+        c = (t - t0) * (t - t1) / ((t2 - t0) * (t2 - t1))
+        for i in range(guess.shape[0]):
+            guess[i] = a * joints[k - 3, i] + b * joints[k - 2, i] + c * joints[k - 1, i]
+
+
+@kernel(
+    "void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[::1], f8[::1], f8[:,::1], f8[:,:,::1], f8[:,::1],"
+    " f8[::1], f8[:,::1], u1[::1], f8[:,::1], i8[::1])"
+)
+def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, joints, outcome, left, steps):
+    n = prismatic.shape[0]
+    room = scratch(n)
+    axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
+    error, step, vector = room[6, 0], room[6, 1], room[6, 2]
+    inverse = 1.0 / length
+    guess, walked, pull, q = np.empty(n), np.empty(n), np.empty(n), np.empty(n)
+    copy(start, q, n)
+    sign, known = 0.0, 0  # known: how many samples just before this one were followed smoothly
+    for k in range(time.shape[0]):
+        copy(q, guess, n)
+        if n <= rows and known >= 3:
+            extrapolate(time, joints, k, guess)
+        elif n > rows and known >= 1:
+            place(links, prismatic, q, axes, origins, tool)
+            far, turned = pose_error(tool, position[k], rotation[k], rows, inverse, spare, error)
+            task_jacobian(prismatic, axes, origins, tool, rows, inverse, jacobian)
+            if lean(jacobian, rows, n, lower, upper, q, far * inverse + turned, work, vector, step, pull):
+                for i in range(n):
+                    guess[i] += pull[i]
+        here = joints[k]
+        copy(guess, here, n)
+        solved, now, far, turned = settle(links, prismatic, position[k], rotation[k], rows, inverse, 0.5, False, here, 8, room)
+        near = solved and largest_move(here, guess) < 0.05 and largest_move(here, q) < 0.5
+        same = now == sign or now == 0.0 or sign == 0.0
+        outcome[k] = REACHED
+        if known == 0:
+            followed = solved and k == 0  # after a gap there is nothing to be continuous with
+        elif near and same:
+            followed = True
+        else:
+            copy(q, walked, n)
+            followed, steps[k] = creep(
+                links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], position[k], rotation[k], twist[k],
+                time[k] - time[k - 1], rows, inverse, sign, walked, room,
+            )  # fmt: skip
+            if followed:
+                copy(walked, here, n)
+                now, known, far, turned = sign, 0, 0.0, 0.0
+            elif near:
+                followed, outcome[k], known = True, CROSSED, 0
+        if not followed:
+            copy(q, here, n)
+            solved, now, far, turned = settle(links, prismatic, position[k], rotation[k], rows, inverse, 0.7, True, here, 300, room)
+            outcome[k] = JUMPED if solved else UNREACHED
+            known = 0 if solved else -1
+        left[k, 0], left[k, 1] = far, turned
+        if now != 0.0:
+            sign = now
+        copy(here, q, n)
+        known += 1
+
+
+@kernel("void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[:,::1], f8[:,::1], f8[:,::1])")
+def _solve(links, prismatic, length, rows, position, rotation, joints, left):
+    n = prismatic.shape[0]
+    room = scratch(n)
+    for k in range(joints.shape[0]):
+        _, _, far, turned = settle(links, prismatic, position, rotation, rows, 1.0 / length, 0.7, True, joints[k], 300, room)
+        left[k, 0], left[k, 1] = far, turned
+
+
+def follow(chain, length, rows, limits, time, position, rotation, twist, start):
+    """Follow a path from `start` (n,), a solution of its first pose or close to one.
+
+    chain (links, prismatic), length in m, rows 6 or 5 (spin free), limits (lower, upper) of the joints, the path as time (N,),
+    position (N, 3), rotation (N, 3, 3) and twist (N, 6) in part axes. Returns joints (N, n), outcome (N,) uint8 (REACHED; CROSSED: a
+    singular place was passed on the smooth branch; JUMPED: reached, though not from the sample before; UNREACHED: the closest found),
+    left (N, 2), the metres and radians left to the pose, and steps (N,), the small steps that were walked to the sample.
+    """
+    samples, n = time.shape[0], chain.prismatic.shape[0]
+    joints, outcome = np.empty((samples, n)), np.zeros(samples, np.uint8)
+    left, steps = np.zeros((samples, 2)), np.zeros(samples, np.int64)
+    _follow(
+        *_chain(chain), float(length), rows, *_flat(*limits), *_flat(time, position, rotation, twist, start), joints, outcome, left, steps
+    )
+    return joints, outcome, left, steps
+
+
+def solve(chain, length, rows, position, rotation, seeds):
+    """From each of seeds (M, n) to one pose: joints (M, n) and left (M, 2), the metres and radians that remain."""
+    joints = np.array(seeds, dtype=float, order="C")
+    left = np.empty((joints.shape[0], 2))
+    _solve(*_chain(chain), float(length), rows, *_flat(position, rotation), joints, left)
+    return joints, left
+
+
+def _chain(chain):
+    return np.ascontiguousarray(chain.links, dtype=float), np.ascontiguousarray(chain.prismatic, dtype=np.uint8)
+
+
+def _flat(*arrays):
+    return [np.ascontiguousarray(a, dtype=float) for a in arrays]

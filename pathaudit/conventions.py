@@ -26,6 +26,9 @@ UNIT_TOLERANCE = 1e-3
 SHORTEST_STEP = 1e-9
 """Least time between two samples, s: far below any controller's clock, and no rate overflows above it."""
 
+LATEST = 1e10
+"""Largest time of a path, s: enough for a clock that counts from 1970."""
+
 FARTHEST = 1e4
 """Largest coordinate of a path, m: what lies beyond is a mistake in the unit."""
 

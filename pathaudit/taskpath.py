@@ -10,7 +10,7 @@ from functools import cached_property
 
 import numpy as np
 
-from .conventions import FARTHEST, INCH, SHORTEST_STEP, UNIT_TOLERANCE, frozen
+from .conventions import FARTHEST, INCH, LATEST, SHORTEST_STEP, UNIT_TOLERANCE, frozen
 from .errors import ReadError, quoted
 from .kernels import rotations
 
@@ -187,6 +187,10 @@ def _either(names):
 
 
 def _check_time(source, time):
+    far = ~(np.abs(time) <= LATEST)
+    if far.any():
+        row = int(np.argmax(far))
+        raise source.error(row, f"time {time[row]:g} s", f"times within {LATEST:g} s (check the unit of the column)")
     late = ~(np.diff(time) >= SHORTEST_STEP)
     if late.any():
         row = int(np.argmax(late)) + 1
@@ -226,7 +230,8 @@ def _no_orientation(source, groups, there):
 def _unit(source, columns, title):
     """(N, len(columns)) of unit length; what is within the tolerance of 1 is scaled to it."""
     vectors = np.stack([source.column(c) for c in columns], axis=-1)
-    length = np.linalg.norm(vectors, axis=-1)
+    with np.errstate(over="ignore"):
+        length = np.linalg.norm(vectors, axis=-1)
     bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
     if bad.any():
         row = int(np.argmax(bad))

@@ -7,7 +7,7 @@ from typing import NamedTuple
 import numpy as np
 
 from .conventions import DEG, MAX_JOINTS, MM, frozen
-from .errors import ModelError, quoted
+from .errors import ModelError, first_repeated, quoted
 from .kernels import rotations
 
 
@@ -42,9 +42,9 @@ class Arm:
         n = len(self.joint_names)
         if not 1 <= n <= MAX_JOINTS:
             raise ModelError("joints", n, f"1 to {MAX_JOINTS} moving joints between base and tip")
-        for name in self.joint_names:
-            if self.joint_names.count(name) > 1:
-                raise ModelError("joints", f"{quoted(name)} twice", "a name of its own for every joint")
+        twice = first_repeated(self.joint_names)
+        if twice is not None:
+            raise ModelError("joints", f"{quoted(twice)} twice", "a name of its own for every joint")
         object.__setattr__(self, "chain", Chain(frozen(self.chain.links), frozen(self.chain.prismatic, np.uint8)))
         if self.chain.links.shape != (n + 1, 4, 4) or self.chain.prismatic.shape != (n,):
             raise ModelError("chain", f"links of shape {self.chain.links.shape}", f"{(n + 1, 4, 4)} for {n} joints")

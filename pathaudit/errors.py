@@ -19,6 +19,12 @@ def quoted(text) -> str:
     return f"'{line}'" if len(line) <= LONGEST_QUOTE else f"'{line[:LONGEST_QUOTE]}…'"
 
 
+def first_repeated(names):
+    """The first name that stands a second time, or None."""
+    seen = set()
+    return next((name for name in names if name in seen or seen.add(name)), None)
+
+
 class PathAuditError(Exception):
     """Something given to pathaudit cannot be used; `str(error)` is one plain line."""
 

@@ -11,7 +11,7 @@ from functools import cached_property
 import numpy as np
 
 from .conventions import FARTHEST, INCH, LATEST, SHORTEST_STEP, UNIT_TOLERANCE, frozen
-from .errors import ReadError, quoted
+from .errors import ReadError, first_repeated, quoted
 from .kernels import rotations
 
 TIME = {"t_s": lambda v: v, "t_ms": lambda v: v / 1000.0}
@@ -83,9 +83,9 @@ def path_from(columns, *, name: str = "arrays") -> Path:
     `name` stands where errors name a file. Raises ReadError.
     """
     header = tuple(str(key) for key in columns.keys())
-    for column in header:
-        if header.count(column) > 1:
-            raise ReadError(name, f"column {column}", "the column twice", "each column once")
+    twice = first_repeated(header)
+    if twice is not None:
+        raise ReadError(name, f"column {twice}", "the column twice", "each column once")
     values = {str(key): np.array(columns[key]) for key in columns.keys()}
     digest = hashlib.sha256()
     for column, array in values.items():

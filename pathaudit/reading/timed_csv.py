@@ -8,7 +8,7 @@ import csv
 
 import numpy as np
 
-from ..errors import ReadError, one_line, quoted
+from ..errors import ReadError, first_repeated, one_line, quoted
 from ..taskpath import MEANING, Path, assemble
 from .sources import decode, read_bytes
 
@@ -40,11 +40,11 @@ class _Table:
         self.cells = tuple(tuple(cells[k :: len(self.header)]) for k in range(len(self.header)))
 
     def _check_header(self):
-        for column in self.header:
-            if column and self.header.count(column) > 1:
-                raise ReadError(self.file, "header", f"the column {quoted(column)} twice", "each column once")
         if not MEANING.intersection(self.header):
             raise ReadError(self.file, "header", quoted(", ".join(self.header)), "column names such as t_s,x_mm,y_mm,z_mm,qw,qx,qy,qz")
+        twice = first_repeated(filter(None, self.header))
+        if twice:
+            raise ReadError(self.file, "header", f"the column {quoted(twice)} twice", "each column once")
 
     def _split(self, lines, delimiter):
         """How many cells each line has, and all cells in one list."""
@@ -61,7 +61,7 @@ class _Table:
             try:
                 next(csv.reader([line], delimiter=delimiter, strict=True))
             except csv.Error as error:
-                return ReadError(self.file, self.place(row), f"quotes that do not pair ({error})", "every quoted cell closed on its own line")
+                return ReadError(self.file, self.place(row), f"quotes that cannot be read ({error})", "every quoted cell closed on its own line")
 
     def _check_widths(self, widths, delimiter):
         wanted = len(self.header)

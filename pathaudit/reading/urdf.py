@@ -14,7 +14,7 @@ import numpy as np
 from defusedxml import DefusedXmlException
 
 from ..arm import Arm, Chain
-from ..errors import ModelError, ReadError, one_line, quoted
+from ..errors import ModelError, ReadError, first_repeated, one_line, quoted
 from ..kernels import rotations
 from .sources import read_bytes
 
@@ -56,8 +56,9 @@ def _parse(file, data):
     try:
         robot = ElementTree.fromstring(data, forbid_dtd=True)
     except ElementTree.ParseError as error:
-        line = f"line {error.position[0]}" if getattr(error, "position", None) else ""
-        raise ReadError(file, line, f"text that is not XML ({error})", EXPECTED) from None
+        if "unbound prefix" in str(error) and b"xacro" in data:
+            raise ReadError(file, f"line {error.position[0]}", "an element of a template", XACRO) from None
+        raise ReadError(file, f"line {error.position[0]}", f"text that is not XML ({error})", EXPECTED) from None
     except DefusedXmlException:
         raise ReadError(file, "", "a document type or entities", f"{EXPECTED} without them (they are refused for safety)") from None
     except (ValueError, LookupError) as error:
@@ -72,28 +73,31 @@ def _parse(file, data):
 
 def _tree(file, robot):
     """The joints by child link, after checking that links and joints are one tree."""
-    links, joints, names = [link.get("name") for link in robot.findall("link")], {}, set()
-    for link in links:
-        if not link or links.count(link) > 1:
-            raise ReadError(file, f"link {quoted(link)}" if link else "", "the link twice" if link else "a link without a name", "a name of its own for every link")
+    links, joints = _names(file, robot, "link"), {}
+    _names(file, robot, "joint")
     known = set(links)
     for element in robot.findall("joint"):
         joint = _joint(file, element, known)
-        if joint.name in names:
-            raise ReadError(file, f"joint {quoted(joint.name)}", "the joint twice", "a name of its own for every joint")
         if joint.child in joints:
             both = f"{quoted(joints[joint.child].name)} and {quoted(joint.name)}"
             raise ReadError(file, f"link {quoted(joint.child)}", f"two parents (joints {both})", "one parent for every link: a tree")
-        names.add(joint.name)
         joints[joint.child] = joint
     _check_one_root(file, links, joints)
     return joints
 
 
+def _names(file, robot, tag):
+    names = [element.get("name") for element in robot.findall(tag)]
+    if not all(names):
+        raise ReadError(file, "", f"a {tag} without a name", f"a name of its own for every {tag}")
+    twice = first_repeated(names)
+    if twice:
+        raise ReadError(file, f"{tag} {quoted(twice)}", f"the {tag} twice", f"a name of its own for every {tag}")
+    return names
+
+
 def _joint(file, element, known):
     name, kind = element.get("name"), element.get("type")
-    if not name:
-        raise ReadError(file, "", "a joint without a name", "a name of its own for every joint")
     ends = [getattr(element.find(end), "attrib", {}).get("link") for end in ("parent", "child")]
     for end, link in zip(("parent", "child"), ends):
         if link not in known:
@@ -112,45 +116,45 @@ def _check_one_root(file, links, joints):
         raise ReadError(file, "", f"several root links: {_list(roots)}", "one tree with a single root link")
     settled = set(roots)
     for link in links:
-        trail = []
+        trail = set()
         while link not in settled:
             if link in trail:
                 raise ReadError(file, "", f"a cycle of joints through the link {quoted(link)}", "one tree with a single root link")
-            trail.append(link)
+            trail.add(link)
             link = joints[link].parent
         settled.update(trail)
 
 
 def _between(file, joints, base, tip):
     """The joints from base to tip, in order."""
-    parents = {joint.parent for joint in joints.values()}
-    links = parents | set(joints)
+    links = {joint.parent for joint in joints.values()} | set(joints)
     for title, link in (("base", base), ("tip", tip)):
         if link is not None and link not in links:
             raise ReadError(file, title, f"{quoted(link)}, which is no link of a joint here", f"one of {_list(sorted(links))}")
     if tip is None:
-        tip = _only_leaf(file, joints, parents, base)
+        tip = _only_leaf(file, joints, base)
     chain, link = [], tip
     while link in joints and link != base:
         chain.append(joints[link])
         link = joints[link].parent
     if base is not None and link != base:
         raise ReadError(file, "base, tip", f"no way down from {quoted(base)} to {quoted(tip)}", f"a base among the links above the tip: {_list([j.parent for j in chain])}")
-    if not any(joint.kind in MOVING for joint in chain):
+    if all(joint.kind == "fixed" for joint in chain):
         raise ReadError(file, "base, tip", f"no moving joint between {quoted(link)} and {quoted(tip)}", "a chain with at least one moving joint")
     return chain[::-1]
 
 
-def _only_leaf(file, joints, parents, base):
+def _only_leaf(file, joints, base):
     """The one link without children that a moving joint carries below the base."""
-    leaves = []
-    for leaf in joints:
-        link, moved = leaf, False
-        while link in joints and link != base:
-            moved = moved or joints[link].kind != "fixed"
-            link = joints[link].parent
-        if leaf not in parents and moved and base in (None, link):
-            leaves.append(leaf)
+    below = {}
+    for joint in joints.values():
+        below.setdefault(joint.parent, []).append(joint)
+    leaves, stack = [], [(base, False)] if base else [(link, False) for link in below if link not in joints]
+    while stack:
+        link, moved = stack.pop()
+        if moved and link not in below:
+            leaves.append(link)
+        stack.extend((joint.child, moved or joint.kind != "fixed") for joint in reversed(below.get(link, [])))
     if len(leaves) != 1:
         found = f"{len(leaves)} possible tips" if leaves else "no link that a joint moves"
         raise ReadError(file, "tip", found, f"tip to name one of {_list(leaves)}" if leaves else EXPECTED)

@@ -1,0 +1,1 @@
+"""Stands here so that tests in subfolders can import the helpers of this folder (outside.py, open_arms.py, ...)."""

@@ -9,7 +9,7 @@ takes the largest b that stays below: exact two-variable linear programmes, a co
 
 import numpy as np
 
-from .compiled import helper, kernel
+from .compiled import dense, helper, kernel
 
 
 @helper
@@ -96,12 +96,12 @@ def sweep(u, rate, bend, limit, ceiling):
     u (N,) increasing, rate and bend (N, n) the first and second derivative of the joints by u, limit (N, n) or (n,) joint accelerations
     (inf where there is none), ceiling (N,), which holds the speed limits: b <= (limit / |q'|)^2.
     """
-    rate = np.ascontiguousarray(rate, dtype=float)
-    limit = np.ascontiguousarray(np.broadcast_to(np.asarray(limit, dtype=float), rate.shape))
+    rate = dense(rate)
+    limit = dense(np.broadcast_to(limit, rate.shape))
     b = np.empty(rate.shape[0])
     _sweep(
-        np.ascontiguousarray(u, dtype=float), rate, np.ascontiguousarray(bend, dtype=float), limit,
-        np.ascontiguousarray(ceiling, dtype=float), b,
+        dense(u), rate, dense(bend), limit,
+        dense(ceiling), b,
     )  # fmt: skip
     return b
 

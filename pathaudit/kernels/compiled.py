@@ -22,6 +22,11 @@ helper = numba.njit(**OPTIONS)
 """Decorator of a function that only kernels call; it is compiled into its callers."""
 
 
+def dense(values, dtype=np.float64):
+    """`values` as a kernel takes them: C order, and writable, which read-only arrays are not to a compiled signature."""
+    return np.require(values, dtype, ["C", "W"])
+
+
 def kernel(signature):
     """Decorator of an entry point: compiled for `signature` when its module is imported, or loaded from the cache folder."""
 

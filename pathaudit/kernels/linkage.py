@@ -8,7 +8,7 @@ from math import cos, sin
 
 import numpy as np
 
-from .compiled import helper, kernel
+from .compiled import dense, helper, kernel
 
 
 @helper
@@ -80,9 +80,7 @@ def _locate(links, prismatic, q, poses, jacobians, points):
 
 def locate(links, prismatic, q):
     """Poses (M, 4, 4), Jacobians (M, 6, n) and joint origins (M, n, 3) of the chain at q (M, n), in the chain's first frame."""
-    links = np.ascontiguousarray(links, dtype=float)
-    prismatic = np.ascontiguousarray(prismatic, dtype=np.uint8)
-    q = np.ascontiguousarray(q, dtype=float)
+    links, prismatic, q = dense(links), dense(prismatic, np.uint8), dense(q)
     n = prismatic.shape[0]
     if links.shape != (n + 1, 4, 4):
         raise ValueError(f"links have shape {links.shape}, expected {(n + 1, 4, 4)} for {n} joints")

@@ -7,7 +7,7 @@ from math import sqrt
 
 import numpy as np
 
-from .compiled import helper, kernel
+from .compiled import dense, helper, kernel
 from .linkage import place
 from .task import damped_step, eliminate, rotation_log, task_jacobian
 
@@ -132,9 +132,9 @@ def _turning(time, rotation, first, second):
 
 def derivatives(time, values):
     """First and second time derivative of values (N, c): the quartic through five samples, the parabola through three at a kink."""
-    values = np.ascontiguousarray(values, dtype=float)
+    values = dense(values)
     first, second = np.empty_like(values), np.empty_like(values)
-    _derivatives(np.ascontiguousarray(time, dtype=float), values, first, second)
+    _derivatives(dense(time), values, first, second)
     return first, second
 
 
@@ -144,10 +144,10 @@ def twists(time, position, rotation):
     Rotations are differentiated in the chart of rotation vectors around each sample, where the first two derivatives at the centre are
     the angular velocity and acceleration exactly.
     """
-    time = np.ascontiguousarray(time, dtype=float)
+    time = dense(time)
     linear, linear_rate = derivatives(time, position)
     angular, angular_rate = np.empty((time.shape[0], 3)), np.empty((time.shape[0], 3))
-    _turning(time, np.ascontiguousarray(rotation, dtype=float), angular, angular_rate)
+    _turning(time, dense(rotation), angular, angular_rate)
     return np.hstack([linear, angular]), np.hstack([linear_rate, angular_rate])
 
 
@@ -450,11 +450,11 @@ def rates(chain, length, rows, limit, joints, twist, twist_rate, slope, bend):
     speed, acceleration (N, n) and measures (N, 6): smallest and largest singular value of the scaled task Jacobian, |determinant|
     (1 where not square), largest |speed| / limit, the least that this could be for the same tool motion, sign of the determinant.
     """
-    flat = [np.ascontiguousarray(a, dtype=float) for a in (joints, twist, twist_rate, slope, bend)]
+    flat = [dense(a) for a in (joints, twist, twist_rate, slope, bend)]
     n, samples = chain.prismatic.shape[0], flat[0].shape[0]
     speed, acceleration, measures = np.empty((samples, n)), np.empty((samples, n)), np.empty((samples, 6))
     _rates(
-        np.ascontiguousarray(chain.links, dtype=float), np.ascontiguousarray(chain.prismatic, dtype=np.uint8), float(length), rows,
-        np.ascontiguousarray(limit, dtype=float), *flat, speed, acceleration, measures,
+        dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows,
+        dense(limit), *flat, speed, acceleration, measures,
     )  # fmt: skip
     return speed, acceleration, measures

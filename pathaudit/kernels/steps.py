@@ -8,11 +8,12 @@ from math import sqrt
 
 import numpy as np
 
-from .compiled import helper, kernel
+from .compiled import dense, helper, kernel
 from .linkage import place
 from .task import damped_step, eliminate, pose_error, rotation_log, task_jacobian
 
 TOLERANCE = 1e-10  # of a solved pose, metres and radians: ten times tighter than what is promised
+LOOSE = 1e-5  # of an arm with fewer joints than the task has rows, which can only come close to rounded poses
 REACHED, CROSSED, JUMPED, UNREACHED = 0, 1, 2, 3
 
 
@@ -61,6 +62,8 @@ def settle(links, prismatic, position, rotation, rows, inverse_length, limit, gu
         place(links, prismatic, q, axes, origins, tool)
         far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
         if far < TOLERANCE and turned < TOLERANCE and turn > 0:
+            return True, sign, far, turned
+        if n < rows and turn > 0 and far < LOOSE and turned < LOOSE and largest_of(step, n) < 1e-9:
             return True, sign, far, turned
         now = (far * inverse_length) ** 2 + turned**2
         if guarded and not now < cost:
@@ -198,9 +201,9 @@ def extrapolate(time, joints, k, guess):
 
 @kernel(
     "void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[::1], f8[::1], f8[:,::1], f8[:,:,::1], f8[:,::1],"
-    " f8[::1], f8[:,::1], u1[::1], f8[:,::1], i8[::1])"
+    " f8[::1], f8[::1], f8[:,::1], u1[::1], f8[:,::1], i8[::1])"
 )
-def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, joints, outcome, left, steps):
+def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, allow, joints, outcome, left, steps):
     n = prismatic.shape[0]
     room = scratch(n)
     axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
@@ -244,8 +247,12 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
         if not followed:
             copy(q, here, n)
             solved, now, far, turned = settle(links, prismatic, position[k], rotation[k], rows, inverse, 0.7, True, here, 300, room)
-            outcome[k] = JUMPED if solved else UNREACHED
-            known = 0 if solved else -1
+            if not (solved or (far < allow[0] and turned < allow[1])):
+                outcome[k], known = UNREACHED, -1
+            else:
+                if known > 0:
+                    outcome[k] = JUMPED
+                known = 0
         left[k, 0], left[k, 1] = far, turned
         if now != 0.0:
             sign = now
@@ -262,20 +269,22 @@ def _solve(links, prismatic, length, rows, position, rotation, joints, left):
         left[k, 0], left[k, 1] = far, turned
 
 
-def follow(chain, length, rows, limits, time, position, rotation, twist, start):
+def follow(chain, length, rows, limits, time, position, rotation, twist, start, allow):
     """Follow a path from `start` (n,), a solution of its first pose or close to one.
 
     chain (links, prismatic), length in m, rows 6 or 5 (spin free), limits (lower, upper) of the joints, the path as time (N,),
-    position (N, 3), rotation (N, 3, 3) and twist (N, 6) in part axes. Returns joints (N, n), outcome (N,) uint8 (REACHED; CROSSED: a
-    singular place was passed on the smooth branch; JUMPED: reached, though not from the sample before; UNREACHED: the closest found),
-    left (N, 2), the metres and radians left to the pose, and steps (N,), the small steps that were walked to the sample.
+    position (N, 3), rotation (N, 3, 3) and twist (N, 6) in part axes; allow (m, rad) is how far off still counts as reached where no
+    exact solution is found. Returns joints (N, n), outcome (N,) uint8 (REACHED; CROSSED: a singular place was passed on the smooth
+    branch; JUMPED: reached, though not from the sample before; UNREACHED: the closest found), left (N, 2), the metres and radians left
+    to the pose, and steps (N,), the small steps that were walked to the sample.
     """
     samples, n = time.shape[0], chain.prismatic.shape[0]
     joints, outcome = np.empty((samples, n)), np.zeros(samples, np.uint8)
     left, steps = np.zeros((samples, 2)), np.zeros(samples, np.int64)
     _follow(
-        *_chain(chain), float(length), rows, *_flat(*limits), *_flat(time, position, rotation, twist, start), joints, outcome, left, steps
-    )
+        dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows, *map(dense, (*limits, time, position, rotation, twist, start, allow)),
+        joints, outcome, left, steps,
+    )  # fmt: skip
     return joints, outcome, left, steps
 
 
@@ -283,13 +292,5 @@ def solve(chain, length, rows, position, rotation, seeds):
     """From each of seeds (M, n) to one pose: joints (M, n) and left (M, 2), the metres and radians that remain."""
     joints = np.array(seeds, dtype=float, order="C")
     left = np.empty((joints.shape[0], 2))
-    _solve(*_chain(chain), float(length), rows, *_flat(position, rotation), joints, left)
+    _solve(dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows, dense(position), dense(rotation), joints, left)
     return joints, left
-
-
-def _chain(chain):
-    return np.ascontiguousarray(chain.links, dtype=float), np.ascontiguousarray(chain.prismatic, dtype=np.uint8)
-
-
-def _flat(*arrays):
-    return [np.ascontiguousarray(a, dtype=float) for a in arrays]

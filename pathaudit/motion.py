@@ -1,0 +1,205 @@
+"""Following a path: the joint motion that keeps the tool on it, sample by sample, and what happened where it could not."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from .arm import Chain
+from .cell import Cell
+from .conventions import frozen
+from .taskpath import Path
+
+TURN = 2.0 * np.pi
+STARTS = 64  # random starts for the postures of the first pose; seeded, so that the same input gives the same answer
+TRIED = 400  # samples of the path on which postures are compared
+
+
+@dataclass(frozen=True, eq=False)
+class Motion:
+    """The joint motion along a path of N samples, for n joints.
+
+    joints (N, n) rad or m, rows of NaN where the pose cannot be reached; closest (N, n), the same with the closest posture there.
+    outcome (N,) one of kernels.steps.REACHED, CROSSED, JUMPED, UNREACHED. deviation_m, deviation_rad (N,): what is left to the pose.
+    rows: 6, or 5 where the spin about the tool axis is free. twist, twist_rate (N, 6): the tool's motion in part axes.
+    start_reason: why it starts in this posture.
+    """
+
+    path: Path
+    cell: Cell
+    joints: np.ndarray
+    closest: np.ndarray
+    outcome: np.ndarray
+    deviation_m: np.ndarray
+    deviation_rad: np.ndarray
+    rows: int
+    twist: np.ndarray
+    twist_rate: np.ndarray
+    start_reason: str
+
+    @cached_property
+    def reached(self) -> np.ndarray:
+        """(N,) bool"""
+        from .kernels.steps import UNREACHED
+
+        return frozen(self.outcome != UNREACHED, bool)
+
+    @cached_property
+    def jumps(self) -> tuple:
+        """Numbers of the samples that were reached, though not by a continuous motion from the sample before."""
+        from .kernels.steps import JUMPED
+
+        return tuple(int(k) for k in np.flatnonzero(self.outcome == JUMPED))
+
+    @cached_property
+    def reasons(self) -> Mapping:
+        """For each sample that cannot be reached, a sentence."""
+        return {int(k): self.reason(int(k)) for k in np.flatnonzero(~self.reached)}
+
+    def reason(self, k: int) -> str:
+        """Why sample k cannot be reached, in a sentence."""
+        from .kernels.linkage import locate
+
+        far, turned = self.deviation_m[k] * 1000.0, np.degrees(self.deviation_rad[k])
+        off = f"at the closest the tool stays {far:.3g} mm and {turned:.2g} deg off the path"
+        n = self.cell.arm.n
+        if n < self.rows:
+            return f"An arm with {n} joints cannot hold all {self.rows} directions of this task; {off}."
+        pose, _, points = locate(*self.cell.chain, self.closest[k : k + 1])
+        shoulder = points[0, min(1, n - 1)]
+        wanted, got = np.linalg.norm(self.path.position[k] - shoulder), np.linalg.norm(pose[0, :3, 3] - shoulder)
+        if far < 0.1:
+            return f"The tool can stand there, but not at this angle; {off}."
+        side = f"too far away by {far:.3g} mm" if wanted > got else f"inside the arm's inner bound by {far:.3g} mm"
+        return f"The pose is {side}: {wanted * 1000:.0f} mm from joint {self.cell.arm.joint_names[min(1, n - 1)]}; {off}."
+
+
+def follow(path: Path, cell: Cell, *, start=None) -> Motion:
+    """Follow `path` with the arm of `cell` by damped Jacobian pseudo-inverse steps.
+
+    start (n,) rad or m: the posture to start near; else cell.start; else of all postures found for the first pose the one with the
+    best worst reserve over the path.
+    """
+    from .kernels import rates
+
+    twist, twist_rate = rates.twists(path.time, path.position, path.rotation)
+    task = _Task(path, cell, 5 if path.spin_free else 6, twist, twist_rate)
+    start = cell.start if start is None else np.asarray(start, dtype=float)
+    first, reason = task.best_posture() if start is None else task.posture_near(start)
+    joints, outcome, left, _ = task.follow(first, slice(None))
+    closest = joints.copy()
+    joints[outcome == 3] = np.nan
+    values = (joints, closest, outcome, left[:, 0], left[:, 1])
+    frozen_values = (frozen(values[0]), frozen(values[1]), frozen(outcome, np.uint8), frozen(values[3]), frozen(values[4]))
+    return Motion(path, cell, *frozen_values, task.rows, frozen(twist), frozen(twist_rate), reason)
+
+
+@dataclass(frozen=True, eq=False)
+class _Task:
+    """A path to follow with a cell: the search for the posture to start in."""
+
+    path: Path
+    cell: Cell
+    rows: int
+    twist: np.ndarray
+    twist_rate: np.ndarray
+
+    @property
+    def chain(self) -> Chain:
+        return self.cell.chain
+
+    def follow(self, start, samples):
+        from .kernels import steps
+
+        path, cell = self.path, self.cell
+        allow = np.array([cell.thresholds.deviation_mm / 1000.0, np.radians(cell.thresholds.deviation_deg)])
+        return steps.follow(
+            self.chain, cell.characteristic_length, self.rows, (cell.arm.lower, cell.arm.upper), path.time[samples],
+            path.position[samples], path.rotation[samples], self.twist[samples], start, allow,
+        )  # fmt: skip
+
+    def solve(self, seeds):
+        from .kernels import steps
+
+        return steps.solve(self.chain, self.cell.characteristic_length, self.rows, self.path.position[0], self.path.rotation[0], seeds)
+
+    def posture_near(self, start):
+        """The solution of the first pose next to `start`, and the reason to give for it."""
+        joints, left = self.solve(start[None])
+        named = "near the stated start posture"
+        if left[0].max() > 1e-9 or np.abs(joints[0] - start).max() > 1.0:
+            found = self.postures()
+            if len(found):
+                found = found + TURN * np.round((start - found) / TURN) * ~self.cell.arm.prismatic
+                best = found[np.argmin(np.abs(found - start).max(axis=1))]
+                if left[0].max() > 1e-9 or np.abs(best - start).max() < np.abs(joints[0] - start).max():
+                    return best, f"Starts in the posture nearest to the stated one, of {len(found)} found for the first pose."
+            elif left[0].max() > 1e-9:
+                return joints[0], "The first pose cannot be reached; the motion starts as close to it as the arm comes from the stated start posture."
+        return joints[0], f"Starts {named}."
+
+    def seeds(self):
+        arm, rng = self.cell.arm, np.random.default_rng(20)
+        lower = np.where(np.isfinite(arm.lower), np.maximum(arm.lower, -np.pi), -np.pi)
+        upper = np.where(np.isfinite(arm.upper), np.minimum(arm.upper, np.pi), np.pi)
+        turned = lower >= upper  # a travel that lies outside one turn about zero
+        lower, upper = np.where(turned, arm.lower, lower), np.where(turned, arm.upper, upper)
+        return lower + (upper - lower) * rng.random((STARTS, arm.n))
+
+    def postures(self):
+        """The distinct joint solutions (M, n) of the first pose, each joint turned to lie in its travel where it can."""
+        joints, left = self.solve(self.seeds())
+        joints = joints[left.max(axis=1) < 1e-9]
+        distinct = []
+        for q in (self.into_travel(q, q, q) for q in joints):
+            if all(np.abs(_apart(q, other, self.cell.arm.prismatic)).max() > (1e-3 if self.rows >= len(q) else 0.5) for other in distinct):
+                distinct.append(q)
+        return np.array(distinct[:24]).reshape(-1, self.cell.arm.n)
+
+    def into_travel(self, q, low, high):
+        """q moved by full turns so that low..high (n,), where the joints go to, lies best inside the travel."""
+        arm = self.cell.arm
+        free = ~arm.prismatic & np.isfinite(arm.lower) & np.isfinite(arm.upper)
+        middle = np.where(free, arm.lower + arm.upper, 0.0) / 2.0
+        turns = np.round((middle - (low + high) / 2.0) / TURN)
+        return q + TURN * np.where(arm.prismatic, 0.0, turns)
+
+    def best_posture(self):
+        """The posture of the first pose with the best worst reserve over the path, and the reason to give for it."""
+        found = self.postures()
+        if len(found) == 0:
+            joints, left = self.solve(self.seeds())
+            best = np.argmin(left[:, 0] / self.cell.characteristic_length + left[:, 1])
+            return joints[best], "The first pose cannot be reached; the motion starts as close to it as was found from 64 starts."
+        if len(found) == 1:
+            return self.judged(found[0])[1], "Starts in the only posture found for the first pose."
+        judged = [self.judged(q) for q in found]
+        best = min(range(len(found)), key=lambda i: judged[i][0])
+        samples = "all samples" if self.path.samples <= TRIED else f"{TRIED} of the samples"
+        return judged[best][1], f"Starts in the posture with the best worst reserve of {len(found)} found for the first pose, compared on {samples}."
+
+    def judged(self, start):
+        """A score of following the path from `start`, smaller is better, and the start moved by full turns to suit the travel."""
+        from .kernels import rates
+
+        arm = self.cell.arm
+        count = min(TRIED, self.path.samples)
+        samples = np.unique(np.linspace(0, self.path.samples - 1, count).astype(int))
+        joints, outcome, _, _ = self.follow(start, samples)
+        low, high = joints.min(axis=0), joints.max(axis=0)
+        moved = self.into_travel(start, low, high)
+        over = np.maximum(arm.lower - (low + moved - start), (high + moved - start) - arm.upper)
+        zero = np.zeros_like(joints)
+        _, _, measures = rates.rates(
+            self.chain, self.cell.characteristic_length, self.rows, arm.speed, joints, self.twist[samples], self.twist_rate[samples], zero, zero
+        )
+        bound = max(self.cell.thresholds.sigma_min_fail, 1e-9)
+        worst = max(measures[:, 3].max(), (bound / np.maximum(measures[:, 0], 1e-12)).max())
+        lost, jumps = int((outcome == 3).sum()), int((outcome == 2).sum())
+        return (lost, jumps, round(max(0.0, over.max()), 6), worst), moved
+
+
+def _apart(a, b, prismatic):
+    difference = a - b
+    return np.where(prismatic, difference, (difference + np.pi) % TURN - np.pi)

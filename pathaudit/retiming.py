@@ -1,0 +1,213 @@
+"""Other times for the same poses: one even slower speed, or the least time under joint limits; never faster than programmed.
+
+The programmed time is the path parameter: with the factor f = du/dt <= 1 on it, joint speed is q' f and joint acceleration q'' f^2 + q' f f'
+(Hollerbach 1984), so a path that nothing limits keeps its times exactly, and dwells need no special case.
+"""
+
+from dataclasses import dataclass, replace
+from functools import cached_property
+
+import numpy as np
+
+from .conventions import frozen
+from .findings import peak_share
+from .measures import Rates, measure
+
+AIM = 1.0 - 1e-6  # share of the limits that a retiming aims at, so that rounding never shows as an overrun
+ROUNDS = 12  # of tightening before the rest is given as one even factor
+STANDSTILL = 1e-3  # a factor below this is no speed to weld or dispense at, but a stop
+EVEN_ENOUGH = 0.7  # an even factor below this costs so much that the local retiming is offered first
+
+
+@dataclass(frozen=True, eq=False)
+class Retiming:
+    """Times for the same poses. time (N,) s from the path's own start; factor (N,) fraction of the programmed speed, in (0, 1].
+
+    style "even" or "local"; feasible: the joint speed and acceleration limits hold everywhere; why: a sentence.
+    speed_share, acceleration_share (N, n) at the new times.
+    """
+
+    rates: Rates
+    style: str
+    time: np.ndarray
+    factor: np.ndarray
+    feasible: bool
+    why: str
+    speed_share: np.ndarray
+    acceleration_share: np.ndarray
+
+    @property
+    def duration(self) -> float:
+        """s"""
+        return float(self.time[-1] - self.time[0])
+
+    @property
+    def slowest(self) -> float:
+        """Smallest fraction of the programmed speed"""
+        return float(self.factor.min())
+
+    @cached_property
+    def binding(self) -> tuple:
+        """For each sample what limits it there, in words; '' where the programmed speed stands."""
+        names = self.rates.motion.cell.arm.joint_names
+        shares = np.nan_to_num(np.hstack([self.speed_share, self.acceleration_share]))
+        worst, slowed = shares.argmax(axis=1), self.factor < 1.0 - 1e-9
+        n = len(names)
+        words = [f"speed of joint {name}" for name in names] + [f"acceleration of joint {name}" for name in names]
+        if self.style == "even":
+            top = int(shares.max(axis=1).argmax())
+            return tuple(words[worst[top]] if k == top else "one even speed" if slow else "" for k, slow in enumerate(slowed))
+        limited = shares.max(axis=1) > 0.99
+        return tuple(("" if not s else words[worst[k]] if limited[k] else "ramp") for k, s in enumerate(slowed.tolist())) if n else ()
+
+    def path(self):
+        """The path with the new times."""
+        return replace(self.rates.motion.path, time=self.time)
+
+    def audit(self):
+        """The retimed path audited with the same cell, starting in the same posture."""
+        from .pipeline import audit
+
+        motion = self.rates.motion
+        start = motion.closest[0] if motion.reached[0] else None
+        return audit(self.path(), motion.cell, start=start)
+
+
+def retime(rates: Rates, style=None) -> Retiming:
+    """The retiming of `style` "even" or "local"; without one, the better suited of the two, with the reason."""
+    if style not in (None, "even", "local"):
+        raise ValueError(f"style is {style!r}, expected 'even', 'local' or None")
+    plan = _Plan.of(rates)
+    if not plan.needed:
+        return plan.finish("even" if style is None else style, np.ones(len(plan.u)), "Nothing has to be slowed down: no joint speed or acceleration limit is passed.")
+    if style is not None:
+        return plan.even() if style == "even" else plan.local()
+    even, local = plan.even(), plan.local()
+    process = rates.motion.path.process
+    slowed = local.factor[process].min() < 1.0 - 1e-6 if process.any() else False
+    times = f"{even.duration:.2f} s with one even speed, {local.duration:.2f} s slowing only where needed, {plan.u[-1] - plan.u[0]:.2f} s as programmed"
+    if not slowed:
+        return replace(local, why=f"{local.why} Only air moves are slowed, so the process keeps its speed ({times}).")
+    factor = even.factor[process].min()
+    if factor < EVEN_ENOUGH:
+        return replace(local, why=f"{local.why} One even speed would have to be {100 * factor:.0f} % of programmed all along ({times}).")
+    return replace(even, why=f"{even.why} An even speed keeps heat input and bead size even ({times}).")
+
+
+@dataclass(frozen=True, eq=False)
+class _Plan:
+    """What a retiming works with: programmed times u (N,), joint rates and their rates (N, n), limits, ceilings of b = f^2."""
+
+    rates: Rates
+    u: np.ndarray
+    speed: np.ndarray
+    bend: np.ndarray
+    limit: np.ndarray
+    ceiling: np.ndarray
+
+    @classmethod
+    def of(cls, rates):
+        arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
+        share = np.stack([peak_share(rates, j) for j in range(arm.n)], axis=1)
+        worst = np.nan_to_num(share).max(axis=1) / min(limits.speed_share_fail, 1.0)
+        ceiling = np.where(worst > 1.0, (AIM / np.maximum(worst, 1.0)) ** 2, 1.0)
+        limit = np.where(np.isnan(arm.acceleration), np.inf, arm.acceleration * min(limits.acceleration_share_fail, 1.0) * AIM)
+        return cls(rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit, ceiling)
+
+    @property
+    def needed(self):
+        return bool((self.ceiling < 1.0).any() or (np.abs(self.bend) > self.limit / AIM).any())
+
+    def local(self):
+        """Least time with the programmed speed as ceiling."""
+        b, over = self.settle(self.ceiling)
+        slow = np.flatnonzero(b < 1.0 - 1e-9)
+        path = self.rates.motion.path
+        length = 1000.0 * np.diff(path.distance)[np.unique(np.clip(np.r_[slow - 1, slow], 0, path.samples - 2))].sum() if len(slow) else 0.0
+        why = f"Slows {length:.0f} mm of the path, down to {100 * np.sqrt(b.min()):.0f} % of programmed at {self.u[np.argmin(b)]:.2f} s."
+        return self.finish("local", b, why)
+
+    def even(self):
+        """One factor for each process stretch; air moves are slowed only where they need it."""
+        process = self.rates.motion.path.process
+        with np.errstate(divide="ignore"):
+            own = np.minimum(self.ceiling, (self.limit / np.abs(self.bend)).min(axis=1))
+        cuts = np.flatnonzero(np.diff(process.astype(int))) + 1
+        runs = [r for r in np.split(np.arange(len(process)), cuts) if process[r[0]]]
+        ceiling = self.ceiling.copy()
+        for run in runs:
+            ceiling[run] = min(1.0, own[run].min())
+        for _ in range(ROUNDS):
+            b, _ = self.settle(ceiling, even=True)
+            uneven = [run for run in runs if b[run].min() < b[run].max() * (1.0 - 1e-9)]
+            if not uneven:
+                break
+            for run in uneven:
+                ceiling[run] = b[run].min()
+        else:
+            # ramps of air moves still reach into the process: one factor for the whole path settles it
+            b = np.full(len(b), b.min())
+        k = int(np.argmin(own)) if process.any() else int(np.argmin(b))
+        factor = np.sqrt(b[process].min()) if process.any() else np.sqrt(b.min())
+        return self.finish("even", b, f"One even speed of {100 * factor:.1f} % of programmed, which the place at {self.u[k]:.2f} s asks for.")
+
+    def settle(self, ceiling, even=False):
+        """The fastest b below `ceiling`, tightened until the audit's own measures of the new times keep the limits."""
+        from .kernels import clocks
+
+        ceiling, margin, flat = ceiling.copy(), np.ones_like(self.speed), None
+        for _ in range(ROUNDS):
+            b = np.maximum(clocks.sweep(self.u, self.speed, self.bend, self.limit * margin, ceiling), 1e-12)
+            speed, acceleration = self.shares(self.times(b))
+            flat = max(speed.max(), np.sqrt(acceleration.max()))
+            if flat <= 1.0 or even:
+                break
+            ceiling = np.where(speed.max(axis=1) > 1.0, np.minimum(ceiling, b) / np.maximum(speed.max(axis=1), 1.0) ** 2, ceiling)
+            wide = acceleration.copy()
+            wide[1:] = np.maximum(wide[1:], acceleration[:-1])
+            wide[:-1] = np.maximum(wide[:-1], acceleration[1:])
+            margin /= np.where(wide > 1.0, np.minimum(1.02 * wide, 4.0), 1.0)
+        if flat > 1.0:
+            # a factor on all times scales every share exactly: speeds by it, accelerations by its square
+            b = b / flat**2
+        return b, flat
+
+    def times(self, b):
+        from .kernels import clocks
+
+        return self.u[0] + np.concatenate([[0.0], np.cumsum(clocks.durations(self.u, b))])
+
+    def shares(self, time):
+        """Speed and acceleration shares (N, n) at new times, of what the retiming aims at, measured as an audit would."""
+        again = self.measured(time)
+        arm, limits = self.rates.motion.cell.arm, self.rates.motion.cell.thresholds
+        speed = np.stack([peak_share(again, j) for j in range(arm.n)], axis=1) / (AIM * min(limits.speed_share_fail, 1.0))
+        acceleration = again.acceleration_share / (AIM * min(limits.acceleration_share_fail, 1.0))
+        return np.nan_to_num(speed), np.nan_to_num(acceleration)
+
+    def measured(self, time):
+        from .kernels.rates import twists
+
+        motion = self.rates.motion
+        twist, twist_rate = twists(time, motion.path.position, motion.path.rotation)
+        path = replace(motion.path, time=frozen(time))
+        return measure(replace(motion, path=path, twist=frozen(twist), twist_rate=frozen(twist_rate)))
+
+    def finish(self, style, b, why):
+        motion = self.rates.motion
+        untouched = bool((b == 1.0).all())
+        time = self.u if untouched else self.times(b)
+        again = self.rates if untouched else self.measured(time)
+        hindered = []
+        lost = int((~motion.reached).sum())
+        if lost:
+            hindered.append(f"{lost} samples cannot be reached at any speed")
+        if motion.jumps:
+            hindered.append(f"the posture jumps at {self.u[motion.jumps[0]]:.2f} s, which takes the arm off the path at any speed")
+        if b.min() < STANDSTILL**2:
+            hindered.append(f"the arm would have to come to a stop at {self.u[np.argmin(b)]:.2f} s")
+        if hindered:
+            why = f"No retiming can help: {'; '.join(hindered)}. {why}"
+        return Retiming(
+            self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, again.speed_share, again.acceleration_share
+        )

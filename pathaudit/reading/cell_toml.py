@@ -118,11 +118,14 @@ def nearest(key, known):
 
 
 def _shown(value):
+    """A TOML value as it is named in messages."""
     if isinstance(value, dict):
         return "a table"
     if isinstance(value, list):
         return f"a list of {len(value)}"
-    return quoted(value) if isinstance(value, str) else str(value).lower() if isinstance(value, bool) else quoted(value)
+    if isinstance(value, bool):
+        return str(value).lower()
+    return quoted(value) if isinstance(value, str) else quoted(value)[1:-1]
 
 
 def _frame(table):

@@ -1,9 +1,10 @@
-"""Arms of the outside values, built from their Denavit-Hartenberg rows."""
+"""Arms of the outside values, built from their Denavit-Hartenberg rows, and paths made by moving an arm."""
 
 import numpy as np
 from outside import inputs
 
 import pathaudit as pa
+from pathaudit.kernels import linkage, rotations
 
 
 def dh_rows(a_mm, alpha_deg, d_mm, range_deg=None, speed_deg_s=None):
@@ -44,3 +45,22 @@ def sixteen():
 def square(rows):
     """A 3 x 4 pose with its last row."""
     return np.vstack([rows, [0.0, 0.0, 0.0, 1.0]])
+
+
+def cell_of(arm, tool_z=0.0, start=None, **thresholds):
+    """The arm at the world's origin, which is the part frame too, with the tool centre point `tool_z` m along the flange's +Z."""
+    tool = rotations.pose(np.eye(3), [0.0, 0.0, tool_z])
+    return pa.Cell("bench", arm, np.eye(4), tool, np.eye(4), start=start, thresholds=pa.Thresholds(**thresholds))
+
+
+def path_of_poses(time, poses, spin_free=False, **columns):
+    """A path through poses (N, 4, 4); only the tool axis is given where the spin is free."""
+    columns = {"t_s": time} | dict(zip(("x_m", "y_m", "z_m"), poses[:, :3, 3].T, strict=True)) | columns
+    if spin_free:
+        return pa.path_from(columns | dict(zip("ijk", poses[:, :3, 2].T, strict=True)))
+    return pa.path_from(columns | dict(zip(("qw", "qx", "qy", "qz"), rotations.wxyz_from_matrix(poses[:, :3, :3]).T, strict=True)))
+
+
+def path_of_motion(cell, time, joints, **options):
+    """The path that the tool of a cell draws when its arm moves through joints (N, n)."""
+    return path_of_poses(time, linkage.poses(*cell.chain, joints), **options)

@@ -1,0 +1,116 @@
+"""The findings, the retiming and what was given, as plain HTML tables: shared by the one-page report and the notebook's still form.
+
+Only table, tr, td, th, b and inline styles are used, because readers that do not trust a notebook strip everything else.
+"""
+
+from html import escape
+from pathlib import PurePath
+
+import numpy as np
+
+from .scene import significant, worst_text
+
+_LEFT = "text-align:left;vertical-align:top;padding:3px 14px 3px 0"
+_NUMBER = _LEFT + ";white-space:nowrap;font-variant-numeric:tabular-nums"
+_SHORT = _LEFT + ";white-space:nowrap"
+_SEVERITY = {"warn": "WARN", "fail": "FAIL"}
+
+_THRESHOLDS = {      # name in [thresholds]: (what it is, unit)
+    "sigma_min_warn": ("sigma_min of the scaled Jacobian, warn below", ""),
+    "sigma_min_fail": ("sigma_min of the scaled Jacobian, fail below", ""),
+    "speed_share_warn": ("joint speed as share of its limit, warn above", ""),
+    "speed_share_fail": ("joint speed as share of its limit, fail above", ""),
+    "acceleration_share_warn": ("joint acceleration as share of its limit, warn above", ""),
+    "acceleration_share_fail": ("joint acceleration as share of its limit, fail above", ""),
+    "travel_warn_deg": ("travel left, turning joints, warn below", "deg"),
+    "travel_warn_mm": ("travel left, sliding joints, warn below", "mm"),
+    "deviation_mm": ("tool off the path, fail above", "mm"),
+    "deviation_deg": ("tool turned off the path, fail above", "deg"),
+    "tool_speed_mm_s": ("tool speed, fail above", "mm/s"),
+}
+
+
+def table(head, rows, styles=()):
+    """An HTML table of plain text cells; `styles` gives a column its style."""
+    style = [*styles, *[_LEFT] * (len(head) - len(styles))]
+    first = "".join(f'<th style="{_LEFT};font-weight:normal">{escape(name)}</th>' for name in head)
+    body = "".join("<tr>" + "".join(f'<td style="{s}">{_cell(cell)}</td>' for s, cell in zip(style, row)) + "</tr>" for row in rows)
+    return f'<table style="border-collapse:collapse;text-align:left"><tr>{first}</tr>{body}</table>'
+
+
+def _cell(value):
+    return f"<b>{escape(value)}</b>" if value in _SEVERITY.values() else escape(str(value))
+
+
+def verdict_line(audit):
+    path = audit.path
+    return (f"<p><b>{escape(audit.verdict.upper())}</b> &nbsp; {escape(audit.cell.name)} &nbsp; {escape(PurePath(path.file).name)}: "
+            f"{path.samples:,} samples, {path.duration:.2f} s, {1e3 * path.length:.0f} mm</p>")
+
+
+def findings_table(audit):
+    start = audit.time[0]
+    rows = [(str(k), _SEVERITY.get(f.severity, f.severity), f"{f.kind}, {f.joint}" if f.joint else f.kind,
+             f"{f.t_start - start:.2f} - {f.t_end - start:.2f}", f"{f.from_mm:.0f} - {f.to_mm:.0f}", worst_text(f), f.why)
+            for k, f in enumerate(audit.finding_list, 1)]
+    if not rows:
+        return "<p>No findings.</p>"
+    head = ("", "", "finding", "from - to, s", "from - to, mm", "worst", "why")
+    return table(head, rows, (_NUMBER, _SHORT, _SHORT, _NUMBER, _NUMBER, _SHORT))
+
+
+def retiming_table(audit):
+    again = audit.suggestion
+    if not again.feasible:
+        return f"<p>No retiming helps: {escape(again.why)}</p>"
+    rows = [("duration as programmed", f"{audit.path.duration:.3f} s"), ("duration retimed", f"{again.duration:.3f} s"),
+            ("slowest place", f"{100 * again.slowest:.1f} % of the programmed speed"), ("kind", again.style), ("why", again.why)]
+    return table(("suggested retiming", ""), rows, (_LEFT, _LEFT))
+
+
+# JupyterLab says so where it has no live widget for the first of our three outputs; the picture and the tables behind it say more.
+_HIDE_MISSING = ("<style>.jp-OutputArea-child:has(+ .jp-OutputArea-child + .jp-OutputArea-child .pathaudit-tables) "
+                 "> .jupyter-widgets:not(:has(.pa)) { display: none; }</style>")
+
+
+def still_tables(audit):
+    """The tables of the notebook's still form; the class marks them for the live timeline, which hides them."""
+    again = "" if audit.verdict == "pass" else retiming_table(audit)
+    return f'<div class="pathaudit-tables">{_HIDE_MISSING}{verdict_line(audit)}{findings_table(audit)}{again}{inputs_table(audit)}{cautions_list(audit)}</div>'
+
+
+def inputs_table(audit):
+    given = [("path", audit.path.file, audit.path.sha256)]
+    given += [("cell" if file == audit.cell.file else "arm", file, sha256) for file, sha256 in audit.cell.sources]
+    rows = [(what, PurePath(file).name, sha256) for what, file, sha256 in given]
+    return table(("", "file", "sha256"), rows, (_LEFT, _LEFT, _NUMBER + ";font-family:monospace"))
+
+
+def limits_table(audit):
+    arm = audit.cell.arm
+    rows = []
+    for j, name in enumerate(arm.joint_names):
+        slides = bool(np.asarray(arm.chain.prismatic)[j])
+        unit, scale = ("mm", 1e3) if slides else ("deg", 180 / np.pi)
+        low, high, speed, acceleration = (significant(scale * values[j]) for values in (arm.lower, arm.upper, arm.speed, arm.acceleration))
+        travel = f"{low} to {high} {unit}" if low and high else "unlimited"
+        rows.append((name, travel, f"{speed} {unit}/s" if speed else "not given", f"{acceleration} {unit}/s²" if acceleration else "not given"))
+    return table(("joint", "travel", "speed", "acceleration"), rows, (_LEFT, _NUMBER, _NUMBER, _NUMBER))
+
+
+def thresholds_table(audit):
+    thresholds = audit.cell.thresholds
+    values = [(words, significant(getattr(thresholds, name)), unit) for name, (words, unit) in _THRESHOLDS.items()]
+    rows = [(words, f"{value} {unit}" if value else "not used") for words, value, unit in values]
+    rows.append(("characteristic length of the scaled Jacobian", f"{1e3 * audit.cell.characteristic_length:.0f} mm"))
+    return table(("threshold", ""), rows, (_LEFT, _NUMBER))
+
+
+def not_judged_table(audit):
+    return table(("not judged", "because"), audit.not_judged) if audit.not_judged else ""
+
+
+def cautions_list(audit):
+    return "".join(f"<p>{escape(words)}</p>" for words in audit.cautions)
+
+

@@ -1,0 +1,147 @@
+"""An audit as what a timeline draws: the kept samples as float32 columns, and everything said once as plain JSON values.
+
+The live timeline, the one-page HTML and the still pictures are all drawn from this one value.
+"""
+
+import zlib
+from dataclasses import dataclass
+from pathlib import PurePath
+
+import numpy as np
+
+from .rows import row_index, rows_of
+from .skeleton import joint_points
+from .thinning import kept_samples, runs, spans
+
+MOST_SAMPLES = 5000
+_FINEST = 2000           # stretches nearer to each other than duration / this are drawn as one
+_EXACT = ("sample", "time_s")
+_ROUNDING = 10           # trailing mantissa bits dropped from everything else: 6e-5 of the value, far below a pixel
+
+
+@dataclass(frozen=True, eq=False)
+class Scene:
+    """arrays: name -> (M, ...) float32, M kept samples; facts: JSON values, times in s after the first sample."""
+
+    facts: dict
+    arrays: dict
+
+    def packed(self):
+        """(bytes, layout): all columns in one compressed block. data.js holds the reverse; layout lists (name, columns)."""
+        columns = [(name, values.reshape(len(values), -1).T) for name, values in self.arrays.items()]
+        words = [_rounded(block, 0 if name in _EXACT else _ROUNDING) for name, block in columns]
+        steps = np.diff(np.concatenate([w.ravel() for w in words]), prepend=np.uint32(0))
+        planes = np.ascontiguousarray(steps.astype("<u4").view(np.uint8).reshape(-1, 4).T)
+        return zlib.compress(planes.tobytes(), 6), [[name, len(block)] for name, block in columns]
+
+
+def _rounded(block, bits):
+    words = np.ascontiguousarray(block, dtype=np.float32).view(np.uint32)
+    if not bits:
+        return words
+    mask = np.uint32((0xFFFFFFFF >> bits) << bits)
+    return np.where(np.isfinite(block), (words + np.uint32(1 << (bits - 1))) & mask, words)
+
+
+def scene(audit, most=MOST_SAMPLES, *, applied=None):
+    """The Scene of an audit: at most `most` samples, with every peak and every finding's worst sample among them.
+
+    applied: the Retiming that made this audit, where it is one of retimed times; its factor is shown instead of a suggestion's.
+    """
+    again = applied or audit.suggestion
+    full = _full_arrays(audit, again.factor)
+    kept = _kept(audit, full, most)
+    arrays = {"sample": kept.astype(float), **{name: values[kept] for name, values in full.items()}}
+    cell = audit.cell
+    arrays["points_m"], arrays["axes"] = joint_points(cell.arm.chain, cell.placement, cell.tool, audit.joints[kept])
+    arrays["path_m"] = audit.path.position[kept] @ cell.part[:3, :3].T + cell.part[:3, 3]
+    arrays = {name: np.ascontiguousarray(values, dtype=np.float32) for name, values in arrays.items()}
+    return Scene(plain(_facts(audit, arrays, again, applied is not None)), arrays)
+
+
+def _full_arrays(audit, factor):
+    path, rates = audit.path, audit.rates
+    severity = np.zeros(path.samples)
+    for finding in audit.finding_list:
+        stretch = slice(finding.first, finding.last + 1)
+        severity[stretch] = np.maximum(severity[stretch], 2 if finding.severity == "fail" else 1)
+    return {
+        "time_s": audit.time - audit.time[0],
+        "distance_mm": 1e3 * path.distance,
+        "share_percent": 100 * rates.speed_share,
+        "sigma_min": rates.sigma_min,
+        "speed_mm_s": 1e3 * rates.tool_speed,
+        "speed_limit_mm_s": 1e3 * rates.tool_speed_limit,
+        "reserve": rates.reserve,
+        "factor_percent": 100 * np.asarray(factor, dtype=float),
+        "severity": severity,
+        "process": path.process.astype(float),
+    }
+
+
+def _kept(audit, full, most):
+    drawn = ("share_percent", "sigma_min", "speed_mm_s", "speed_limit_mm_s", "factor_percent")
+    series = np.column_stack([full[name] for name in drawn])
+    findings = audit.finding_list
+    always = [f.worst for f in findings] + [f.first for f in findings] + [f.last for f in findings]
+    edges = runs(~audit.motion.reached)
+    always += [*edges[:, 0], *edges[:, 1], *(edges[:, 0] - 1), *(edges[:, 1] + 1)]
+    return kept_samples(np.where(np.isfinite(series), series, np.nan), most, always)
+
+
+def _facts(audit, arrays, again, is_applied):
+    path, cell = audit.path, audit.cell
+    names = tuple(cell.arm.joint_names)
+    time, gap = audit.time - audit.time[0], path.duration / _FINEST
+    return {
+        "name": cell.name, "file": PurePath(path.file).name, "verdict": audit.verdict,
+        "samples": int(path.samples), "shown": len(arrays["sample"]), "start_s": float(audit.time[0]),
+        "duration_s": float(path.duration), "length_mm": 1e3 * float(path.length), "joints": list(names),
+        "rows": [row.as_dict() for row in rows_of(names, cell.thresholds, arrays, is_applied)],
+        "findings": [_finding(k, f, audit, arrays, names) for k, f in enumerate(audit.finding_list, 1)],
+        "air": spans(~path.process, time, gap).tolist(), "gaps": spans(~audit.motion.reached, time, gap).tolist(),
+        "retiming": _retiming(again, is_applied), "base": cell.placement.tolist(), "part": cell.part.tolist(),
+    }
+
+
+def _finding(number, finding, audit, arrays, names):
+    start = audit.time[0]
+    return {
+        "number": number, "kind": finding.kind, "severity": finding.severity, "joint": finding.joint or "",
+        "from_s": float(finding.t_start - start), "to_s": float(finding.t_end - start), "worst_s": float(finding.worst_t - start),
+        "from_mm": float(finding.from_mm), "to_mm": float(finding.to_mm), "worst": worst_text(finding), "why": finding.why,
+        "at": int(np.abs(arrays["sample"] - finding.worst).argmin()), "row": row_index(finding, names),
+    }
+
+
+def worst_text(finding):
+    """The worst value beside its limit, in the finding's unit: "213 deg/s (limit 180)"."""
+    value, limit, unit = significant(finding.value), significant(finding.limit), finding.unit.strip()
+    if not value:
+        return ""
+    return f"{value} {unit}".strip() + (f" (limit {limit})" if limit else "")
+
+
+def significant(number, digits=4):
+    """A number as people write it: so many significant digits, no exponent, nothing for NaN and infinity."""
+    if number is None or not np.isfinite(number):
+        return ""
+    if number == 0 or abs(number) < 1e-9:
+        return "0"
+    places = max(0, digits - 1 - int(np.floor(np.log10(abs(number)))))
+    text = f"{number:.{min(places, 9)}f}"
+    return text.rstrip("0").rstrip(".") if "." in text else text
+
+
+def plain(value):
+    """Nested lists and dicts without NaN and infinity, which JSON does not have: None stands for them."""
+    if isinstance(value, dict):
+        return {key: plain(item) for key, item in value.items()}
+    if isinstance(value, (list, tuple)):
+        return [plain(item) for item in value]
+    return None if isinstance(value, float) and not np.isfinite(value) else value
+
+
+def _retiming(again, is_applied):
+    return {"style": again.style, "feasible": bool(again.feasible), "why": again.why, "duration_s": float(again.duration),
+            "slowest_percent": 100 * float(again.slowest), "applied": is_applied}

@@ -1,0 +1,53 @@
+"""Which samples of a long path are drawn: few enough to send and to hold, chosen so that no peak is lost."""
+
+import numpy as np
+
+
+def kept_samples(series, most, always=()):
+    """Sample numbers, increasing, at most `most` of them.
+
+    series (N, S): what is drawn; NaN where there is nothing. The path is cut into equal pieces and each piece keeps the place of the
+    least and of the greatest value of every series. `always`: sample numbers that stay whatever happens, the more important first.
+    """
+    samples = len(series)
+    if samples <= most:
+        return np.arange(samples)
+    anchors = np.unique(np.clip(np.r_[0, samples - 1, np.asarray(always, dtype=int)[: most // 2]], 0, samples - 1))
+    pieces = most // 2
+    while True:
+        kept = np.union1d(_extremes(series, pieces), anchors)
+        if len(kept) <= most or pieces == 1:
+            break
+        pieces = max(1, min(pieces - 1, int(0.97 * pieces * most / len(kept))))
+    return kept if len(kept) <= most else anchors
+
+
+def _extremes(series, pieces):
+    samples, width = series.shape
+    size = -(-samples // pieces)
+    padded = np.full((pieces * size, width), np.nan)
+    padded[:samples] = series
+    blocks = padded.reshape(pieces, size, width)
+    empty = np.isnan(blocks)
+    least = np.where(empty, np.inf, blocks).argmin(axis=1)
+    greatest = np.where(empty, -np.inf, blocks).argmax(axis=1)
+    starts = size * np.arange(pieces)[:, None]
+    found = np.unique(np.concatenate([starts + least, starts + greatest]))
+    return found[found < samples]
+
+
+def runs(mask):
+    """(K, 2) first and last sample of every unbroken run of True in mask (N,)."""
+    edges = np.flatnonzero(np.diff(np.r_[False, np.asarray(mask, dtype=bool), False]))
+    return np.stack([edges[::2], edges[1::2] - 1], axis=1)
+
+
+def spans(mask, time, gap):
+    """(K, 2) start and end times of the runs of mask; each reaches half way to its neighbours, and runs nearer than `gap` (s) are joined."""
+    borders = np.r_[time[0], 0.5 * (time[1:] + time[:-1]), time[-1]]
+    found = runs(mask)
+    if not len(found):
+        return np.empty((0, 2))
+    starts, ends = borders[found[:, 0]], borders[found[:, 1] + 1]
+    apart = starts[1:] - ends[:-1] > gap
+    return np.stack([starts[np.r_[True, apart]], ends[np.r_[apart, True]]], axis=1)

@@ -1,0 +1,1 @@
+"""An audit on show in a notebook."""

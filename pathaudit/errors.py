@@ -65,3 +65,7 @@ class WriteError(PathAuditError):
 
     def __str__(self):
         return one_line(f"{self.file}: cannot be written: {self.reason}")
+
+
+class UsageError(PathAuditError):
+    """The command line cannot be understood."""

@@ -1,0 +1,94 @@
+"""An audit as JSON and CSV text."""
+
+import csv
+import io
+import json
+import math
+
+import numpy as np
+
+from ..taskpath import TIME
+from .scene import plain
+
+FORMAT = "pathaudit.check/1"
+
+
+def check_json(audit) -> str:
+    """The verdict, the findings and the suggested retiming as JSON; null where a number is not known or not finite."""
+    return json.dumps(plain(check_values(audit)), indent=1, allow_nan=False, ensure_ascii=False) + "\n"
+
+
+def check_values(audit) -> dict:
+    """What `check_json` writes."""
+    path, cell, again = audit.path, audit.cell, audit.suggestion
+    return {
+        "format": FORMAT,
+        "path": {
+            "file": path.file, "sha256": path.sha256, "samples": path.samples, "duration_s": path.duration,
+            "length_mm": 1000.0 * path.length, "samples_unreached": int((~audit.motion.reached).sum()),
+        },
+        "cell": {
+            "name": cell.name, "joints": list(cell.arm.joint_names), "characteristic_length_mm": 1000.0 * cell.characteristic_length,
+            "sources": [{"file": file, "sha256": sha256} for file, sha256 in cell.sources], "start": audit.motion.start_reason,
+        },
+        "verdict": audit.verdict,
+        "findings": [_finding(finding) for finding in audit.finding_list],
+        "not_judged": [{"rule": rule, "why": why} for rule, why in audit.not_judged],
+        "retiming": {
+            "style": again.style, "duration_s": again.duration, "slowest_fraction_of_programmed_speed": again.slowest,
+            "feasible": bool(again.feasible), "why": again.why,
+        },
+        "cautions": list(audit.cautions),
+    }  # fmt: skip
+
+
+def _finding(finding):
+    return {
+        "kind": finding.kind, "severity": finding.severity, "joint": finding.joint,
+        "t_start_s": finding.t_start, "t_end_s": finding.t_end, "worst_t_s": finding.worst_t,
+        "value": finding.value, "limit": finding.limit, "unit": finding.unit, "why": finding.why,
+        "from_mm": finding.from_mm, "to_mm": finding.to_mm,
+    }  # fmt: skip
+
+
+def joints_csv(audit) -> str:
+    """One row a sample: t_s, each joint in deg or mm, each joint's speed, sigma_min, speed_use; empty where nothing was reached."""
+    rates, arm = audit.rates, audit.cell.arm
+    slides = arm.prismatic
+    scale = np.where(slides, 1000.0, 180.0 / np.pi)
+    units = ["mm" if s else "deg" for s in slides]
+    header = ["t_s", *(f"{name}_{unit}" for name, unit in zip(arm.joint_names, units))]
+    header += [*(f"{name}_{unit}_s" for name, unit in zip(arm.joint_names, units)), "sigma_min", "speed_use"]
+    measured = [*(audit.joints * scale).T, *(rates.joint_speed * scale).T, rates.sigma_min, rates.speed_share.max(axis=1)]
+    return _csv(header, [map(repr, audit.time.tolist()), *(map(_digits, column.tolist()) for column in measured)])
+
+
+def _digits(value):
+    """12 significant digits: 1e-9 deg and better, far below what a joint can do."""
+    return format(value, ".12g") if math.isfinite(value) else ""
+
+
+def retimed_csv(retiming) -> str:
+    """The path's own columns, in their order and units, with the retiming's times in place of the programmed ones."""
+    path = retiming.rates.motion.path
+    name = next(name for name in TIME if name in path.columns)
+    per_second = 1000.0 if name == "t_ms" else 1.0
+    columns = [_texts(cells) for cells in path.cells]
+    columns[path.columns.index(name)] = list(map(repr, (retiming.time * per_second).tolist()))
+    return _csv(path.columns, columns)
+
+
+def _texts(cells):
+    """The values of a column as text: as it was read, or as numbers are written (1 and 0 for yes and no)."""
+    if isinstance(cells, np.ndarray):
+        cells = (cells.astype(int) if cells.dtype == bool else cells).tolist()
+    return list(map(str, cells))
+
+
+def _csv(header, columns):
+    rows = [header, *zip(*columns)]
+    # a first cell that begins with '#' would make its line a comment
+    quoting = csv.QUOTE_ALL if any(row[0].lstrip().startswith("#") for row in rows) else csv.QUOTE_MINIMAL
+    stream = io.StringIO()
+    csv.writer(stream, lineterminator="\n", quoting=quoting).writerows(rows)
+    return stream.getvalue()

@@ -1,0 +1,63 @@
+"""An audit as a short plain text for a terminal."""
+
+import os
+import textwrap
+
+from .scene import worst_text
+
+WIDTH = 110
+SHARES = ("joint speed", "joint acceleration", "joint torque", "tool speed")
+"""Kinds whose value is a share of their limit."""
+
+
+def summary(audit) -> str:
+    """Verdict, findings with where, how much and why, the suggested retiming, what was not judged, cautions."""
+    parts = [_head(audit), *map(_finding, audit.finding_list), _retiming(audit), _not_judged(audit), _cautions(audit)]
+    return "\n\n".join(part for part in parts if part) + "\n"
+
+
+def _head(audit):
+    path, findings = audit.path, audit.finding_list
+    fails = sum(finding.severity == "fail" for finding in findings)
+    counts = f"{fails} fail, {len(findings) - fails} warn" if findings else "nothing flagged"
+    line = f"{audit.verdict.upper()}  {os.path.basename(path.file)} in {audit.cell.name}: {counts}"
+    given = f"{path.samples} samples, {path.duration:.2f} s, {1000 * path.length:.1f} mm. {audit.motion.start_reason}"
+    return f"{line}\n{_indented(given)}"
+
+
+def _finding(finding):
+    who = f"{finding.kind}, {finding.joint}" if finding.joint else finding.kind
+    where = f"{finding.t_start:.3f} to {finding.t_end:.3f} s, {finding.from_mm:.1f} to {finding.to_mm:.1f} mm"
+    return f"{finding.severity.upper():4s}  {who}: {where}: {_measure(finding)}\n{_indented(finding.why)}"
+
+
+def _measure(finding):
+    """The worst value, its limit, and how much over."""
+    text = worst_text(finding)
+    text = f"sigma_min {text}" if finding.kind == "near-singular" else text
+    if finding.kind in SHARES and finding.limit > 0:
+        share = finding.value / finding.limit
+        text += f", {100 * (share - 1):.3g} % over" if share > 1 else f", {100 * share:.3g} % of the limit"
+    return f"{text} at {finding.worst_t:.3f} s"
+
+
+def _retiming(audit):
+    again, programmed = audit.suggestion, audit.path.duration
+    if not again.feasible:
+        return f"No retiming helps\n{_indented(again.why)}"
+    if again.slowest == 1.0 and again.duration == programmed:
+        return ""
+    line = f"Suggested retiming ({again.style}): {again.duration:.3f} s in place of {programmed:.3f} s, at the slowest {100 * again.slowest:.3g} % of the programmed speed"
+    return f"{line}\n{_indented(again.why)}"
+
+
+def _not_judged(audit):
+    return "\n".join(["Not judged", *(_indented(f"{rule}: {why}") for rule, why in audit.not_judged)]) if audit.not_judged else ""
+
+
+def _cautions(audit):
+    return "\n".join(["Cautions", *map(_indented, audit.cautions)])
+
+
+def _indented(text):
+    return textwrap.fill(text, WIDTH, initial_indent="      ", subsequent_indent="      ", break_long_words=False, break_on_hyphens=False)

@@ -62,7 +62,8 @@ class Motion:
         from .kernels.linkage import locate
 
         far, turned = self.deviation_m[k] * 1000.0, np.degrees(self.deviation_rad[k])
-        off = f"at the closest the tool stays {far:.3g} mm and {turned:.2g} deg off the path"
+        short = f"{far:.0f}" if far >= 100.0 else f"{far:.3g}"
+        off = f"at the closest the tool stays {short} mm and {turned:.2g} deg off the path"
         n = self.cell.arm.n
         if n < self.rows:
             return f"An arm with {n} joints cannot hold all {self.rows} directions of this task; {off}."
@@ -71,7 +72,7 @@ class Motion:
         wanted, got = np.linalg.norm(self.path.position[k] - shoulder), np.linalg.norm(pose[0, :3, 3] - shoulder)
         if far < 0.1:
             return f"The tool can stand there, but not at this angle; {off}."
-        side = f"too far away by {far:.3g} mm" if wanted > got else f"inside the arm's inner bound by {far:.3g} mm"
+        side = f"too far away by {short} mm" if wanted > got else f"inside the arm's inner bound by {short} mm"
         return f"The pose is {side}: {wanted * 1000:.0f} mm from joint {self.cell.arm.joint_names[min(1, n - 1)]}; {off}."
 
 

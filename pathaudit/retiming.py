@@ -156,7 +156,7 @@ class _Plan:
         from .kernels import clocks
 
         ceiling, margin, flat = ceiling.copy(), np.ones_like(self.speed), None
-        for _ in range(ROUNDS):
+        for turn in range(ROUNDS):
             b = np.maximum(clocks.sweep(self.u, self.speed, self.bend, self.limit * margin, ceiling), 1e-12)
             speed, acceleration = self.shares(self.times(b))
             flat = max(speed.max(), np.sqrt(acceleration.max()))
@@ -164,9 +164,10 @@ class _Plan:
                 break
             ceiling = np.where(speed.max(axis=1) > 1.0, np.minimum(ceiling, b) / np.maximum(speed.max(axis=1), 1.0) ** 2, ceiling)
             wide = acceleration.copy()
-            wide[1:] = np.maximum(wide[1:], acceleration[:-1])
-            wide[:-1] = np.maximum(wide[:-1], acceleration[1:])
-            margin /= np.where(wide > 1.0, np.minimum(1.02 * wide, 4.0), 1.0)
+            if turn >= 3:  # where the excess does not give in at its own sample, it comes from the ones beside it
+                wide[1:] = np.maximum(wide[1:], acceleration[:-1])
+                wide[:-1] = np.maximum(wide[:-1], acceleration[1:])
+            margin /= np.where(wide > 1.0, np.minimum(1.005 * wide, 2.0), 1.0)
         if flat > 1.0:
             # a factor on all times scales every share exactly: speeds by it, accelerations by its square
             b = b / flat**2

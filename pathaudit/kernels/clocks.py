@@ -12,6 +12,9 @@ import numpy as np
 from .compiled import dense, helper, kernel
 
 
+LARGEST = 1e12  # of b, where nothing bounds it
+
+
 @helper
 def largest_before(left, right, x, y):
     """Largest b_k in [0, x] with some b_k+1 in [0, y] such that |left[i, 0] b_k + left[i, 1] b_k+1| <= left[i, 2], and so for right.
@@ -26,7 +29,7 @@ def largest_before(left, right, x, y):
                 p, q, c = rows[i, 0], rows[i, 1], rows[i, 2]
                 if q < 0.0:
                     p, q = -p, -q
-                if q > 1e-300:
+                if q * y > 1e-12 * c:  # else rounding, of a joint that stands still at full acceleration: the row binds b_k alone
                     up, down = (c - p * x) / q, (-c - p * x) / q
                     if up < high:
                         high, high_slope = up, -p / q
@@ -78,30 +81,31 @@ def _sweep(u, rate, bend, limit, ceiling, b):
         half = 0.5 / (u[k + 1] - u[k])
         interval_rows(rate[k], bend[k], limit[k], half, 1.0, left)
         interval_rows(rate[k + 1], bend[k + 1], limit[k + 1], half, 0.0, right)
-        high = b[k + 1]
+        low, high, top = 0.0, b[k + 1], b[k + 1]
         for i in range(n):
             for j in range(2):
                 rows = left if j == 0 else right
-                p, q = rows[i, 0], rows[i, 1]
+                p, q, c = rows[i, 0], rows[i, 1], rows[i, 2]
                 if q < 0.0:
                     p, q = -p, -q
-                if q > 1e-300:
-                    high = min(high, (rows[i, 2] - p * b[k]) / q)
-        b[k + 1] = max(high, 0.0)
+                if q * top > 1e-12 * c:
+                    high = min(high, (c - p * b[k]) / q)
+                    low = max(low, (-c - p * b[k]) / q)
+        b[k + 1] = min(max(high, low), top)
 
 
 def sweep(u, rate, bend, limit, ceiling):
     """Largest b (N,) = (du/dt)^2 under |q'' b + q' a| <= limit and 0 <= b <= ceiling.
 
     u (N,) increasing, rate and bend (N, n) the first and second derivative of the joints by u, limit (N, n) or (n,) joint accelerations
-    (inf where there is none), ceiling (N,), which holds the speed limits: b <= (limit / |q'|)^2.
+    (inf where there is none), ceiling (N,), which holds the speed limits: b <= (limit / |q'|)^2, inf where nothing moves.
     """
     rate = dense(rate)
     limit = dense(np.broadcast_to(limit, rate.shape))
     b = np.empty(rate.shape[0])
     _sweep(
         dense(u), rate, dense(bend), limit,
-        dense(ceiling), b,
+        dense(np.minimum(ceiling, LARGEST)), b,
     )  # fmt: skip
     return b
 

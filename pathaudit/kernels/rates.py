@@ -9,7 +9,7 @@ import numpy as np
 
 from .compiled import dense, helper, kernel
 from .linkage import place
-from .task import damped_step, eliminate, rotation_log, task_jacobian
+from .task import damped_step, eliminate, in_tool_axes, rotation_log, task_jacobian
 
 
 @helper
@@ -325,13 +325,6 @@ def smallest_share(jacobian, rows, n, speed, limit, work, null):
             if size > 0.0:
                 best = max(best, abs(work[rows, b] * speed[i] - work[rows, a] * speed[j]) / size)
     return best
-
-
-@helper
-def in_tool_axes(v, tool, inverse_length, out):
-    for i in range(3):
-        out[i] = (tool[0, i] * v[0] + tool[1, i] * v[1] + tool[2, i] * v[2]) * inverse_length
-        out[3 + i] = tool[0, i] * v[3] + tool[1, i] * v[4] + tool[2, i] * v[5]
 
 
 @helper

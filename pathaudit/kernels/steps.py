@@ -10,7 +10,7 @@ import numpy as np
 
 from .compiled import dense, helper, kernel
 from .linkage import place
-from .task import damped_step, eliminate, pose_error, rotation_log, task_jacobian
+from .task import damped_step, eliminate, in_tool_axes, pose_error, rotation_log, task_jacobian
 
 TOLERANCE = 1e-10  # of a solved pose, metres and radians: ten times tighter than what is promised
 LOOSE = 1e-5  # of an arm with fewer joints than the task has rows, which can only come close to rounded poses
@@ -139,9 +139,38 @@ def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare):
 
 
 @helper
-def creep(links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, room):
-    """Follow the motion between two samples in small steps, q in place; (done, steps). Not done: a singular place, or no way on."""
-    position, rotation, spare, trial = np.empty(3), np.empty((3, 3)), np.empty((3, 3)), np.empty(q.shape[0])
+def tangent(links, prismatic, twist, span, rows, inverse_length, time, joints, k, known, q, room, slope):
+    """Fill slope (n,): joint change per `span` seconds just after sample k - 1, from the Jacobian, or on a singular place from the samples before."""
+    axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
+    error, step, vector = room[6, 0], room[6, 1], room[6, 2]
+    n = q.shape[0]
+    place(links, prismatic, q, axes, origins, tool)
+    task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian)
+    in_tool_axes(twist, tool, inverse_length, error)
+    smallest = 0.0
+    if n == rows:
+        _, smallest = eliminate(jacobian, error, n, work, step)
+    if smallest < 1e-3 and known >= 3:
+        t0, t1, t2 = time[k - 3], time[k - 2], time[k - 1]
+        a = (t2 - t1) / ((t0 - t1) * (t0 - t2))
+        b = (t2 - t0) / ((t1 - t0) * (t1 - t2))
+        for i in range(n):
+            step[i] = a * (joints[k - 3, i] - joints[k - 1, i]) + b * (joints[k - 2, i] - joints[k - 1, i])
+    elif smallest < 1e-6:
+        damped_step(jacobian, error, rows, n, 1e-10, work, vector, step)
+    for i in range(n):
+        slope[i] = span * step[i]
+
+
+@helper
+def creep(links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, slope, room):
+    """Follow the motion between two samples in small steps, q in place; (done, steps, sign). Not done: no smooth way on was found.
+
+    Each step starts from the last one carried on, and is taken only where the solution is close to that, so that speeds stay
+    continuous. A singular place is crossed (the sign of the determinant changes) only in a step too small to leap to another branch.
+    """
+    position, rotation, spare, trial, ahead = np.empty(3), np.empty((3, 3)), np.empty((3, 3)), np.empty(q.shape[0]), np.empty(q.shape[0])
+    n = q.shape[0]
     u, h, steps = 0.0, 0.25, 0
     while u < 1.0 and steps < 4000:
         steps += 1
@@ -151,17 +180,25 @@ def creep(links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, 
             copy(p1, position, 3)
             for i in range(3):
                 copy(r1[i], rotation[i], 3)
-        copy(q, trial, q.shape[0])
+        for i in range(n):
+            ahead[i] = q[i] + (goal - u) * slope[i]
+            trial[i] = ahead[i]
         solved, now, _, _ = settle(links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 4, room)
-        if solved and largest_move(trial, q) < 0.1 and (now == sign or now == 0.0 or sign == 0.0):
-            copy(trial, q, q.shape[0])
+        move = largest_move(trial, q)
+        smooth = solved and move < 0.1 and largest_move(trial, ahead) < 0.3 * move + 1e-8
+        if smooth and (now == sign or now == 0.0 or sign == 0.0 or move < 2e-5):
+            for i in range(n):
+                slope[i] = (trial[i] - q[i]) / (goal - u)
+            copy(trial, q, n)
             u = goal
-            h *= 2.0
+            h *= 1.7
+            if now != 0.0:
+                sign = now
         else:
-            h *= 0.5
-            if h < 3e-6:
-                return False, steps
-    return u >= 1.0, steps
+            h *= 0.4
+            if h < 1e-7:
+                return False, steps, sign
+    return u >= 1.0, steps, sign
 
 
 @helper
@@ -235,13 +272,16 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             followed = True
         else:
             copy(q, walked, n)
-            followed, steps[k] = creep(
+            span = time[k] - time[k - 1]
+            tangent(links, prismatic, twist[k - 1], span, rows, inverse, time, joints, k, known, q, room, pull)
+            followed, steps[k], arrived = creep(
                 links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], position[k], rotation[k], twist[k],
-                time[k] - time[k - 1], rows, inverse, sign, walked, room,
+                span, rows, inverse, sign, walked, pull, room,
             )  # fmt: skip
             if followed:
                 copy(walked, here, n)
-                now, known, far, turned = sign, 0, 0.0, 0.0
+                outcome[k] = CROSSED if arrived != sign and sign != 0.0 else REACHED
+                now, known, far, turned = arrived, 0, 0.0, 0.0
             elif near:
                 followed, outcome[k], known = True, CROSSED, 0
         if not followed:

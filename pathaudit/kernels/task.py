@@ -59,6 +59,14 @@ def pose_error(tool, position, rotation, rows, inverse_length, spare, error):
 
 
 @helper
+def in_tool_axes(v, tool, inverse_length, out):
+    """Fill out (6,) with the twist v (6,) in the axes of tool (3, 4), linear rows times inverse_length."""
+    for i in range(3):
+        out[i] = (tool[0, i] * v[0] + tool[1, i] * v[1] + tool[2, i] * v[2]) * inverse_length
+        out[3 + i] = tool[0, i] * v[3] + tool[1, i] * v[4] + tool[2, i] * v[5]
+
+
+@helper
 def task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian):
     """Fill jacobian (rows, n) in tool axes, linear rows times inverse_length."""
     t00, t10, t20 = tool[0, 0], tool[1, 0], tool[2, 0]

@@ -64,3 +64,19 @@ def path_of_poses(time, poses, spin_free=False, **columns):
 def path_of_motion(cell, time, joints, **options):
     """The path that the tool of a cell draws when its arm moves through joints (N, n)."""
     return path_of_poses(time, linkage.poses(*cell.chain, joints), **options)
+
+
+SWAY_TIME = np.linspace(0.0, 3.0, 301)
+
+
+def swaying(seed, scale=1.0, time=SWAY_TIME):
+    """A cell, and a smooth motion (N, 6) of its arm well inside its travel, random by the seed, that passes some of its limits."""
+    random = np.random.default_rng(seed)
+    table = [0.0, 431.8, -20.32, 0.0, 0.0, 0.0], [-90.0, 0.0, 90.0, -90.0, 90.0, 0.0], [0.0, 149.09, 0.0, 433.07, 0.0, 56.25]
+    rows = dh_rows(scale * np.array(table[0]), table[1], scale * np.array(table[2]), speed_deg_s=[22.0, 22.0, 22.0, 30.0, 30.0, 40.0])
+    for row in rows:
+        row["acceleration_deg_s2"] = 50.0
+    middle = np.array([0.2, -0.4, 0.2, 0.5, 0.9, 0.3])
+    size, rate, phase = random.uniform(0.05, 0.25, 6), random.uniform(0.5, 4.0, 6), random.uniform(0, 6.3, 6)
+    joints = middle + size * np.sin(np.outer(time, rate) + phase)
+    return cell_of(pa.Arm.from_dh(rows), 0.1 * scale, start=joints[0]), joints

@@ -2,10 +2,12 @@
 
 import numpy as np
 import pytest
+from example_arms import SWAY_TIME, path_of_motion, swaying
 from optimal_timing import Problem, by_cvxpy, by_native_matrices, duration
 from outside import agrees, inputs
 from scipy.optimize import brentq
 
+import pathaudit as pa
 from pathaudit.kernels import clocks
 
 
@@ -155,3 +157,18 @@ def test_reversed_paths_take_the_same_time():
         problem.end, problem.start, problem.ceiling[::-1],
     )  # fmt: skip
     np.testing.assert_allclose(fastest(back)[0][::-1], fastest(problem)[0], rtol=1e-9)
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_a_local_retiming_is_close_to_the_optimum(seed):
+    """The suggestion also passes the audit's own measures of its new times, which costs a little on coarse samples."""
+    cell, joints = swaying(seed)
+    audit = pa.audit(path_of_motion(cell, 0.8 * SWAY_TIME, joints), cell)
+    retiming = audit.retime("local")
+    b = retiming.factor**2
+    problem = Problem(
+        audit.time, audit.rates.joint_speed, audit.rates.joint_acceleration, cell.arm.speed, cell.arm.acceleration, b[0], b[-1], 1.0
+    )
+    _, least, status = by_native_matrices(problem)
+    assert status == "Solved" and retiming.slowest < 0.9
+    assert least * (1 - 1e-7) <= retiming.duration <= least * 1.0003

@@ -23,32 +23,30 @@ def largest_before(left, right, x, y):
     it from the right end in its root, exactly, in a few turns.
     """
     for _ in range(100):
-        low, low_slope, high, high_slope = 0.0, 0.0, y, 0.0
+        low, low_slope, low_base = 0.0, 0.0, 0.0
+        high, high_slope, high_base = y, 0.0, y
+        alone = False
         for rows in (left, right):
             for i in range(rows.shape[0]):
                 p, q, c = rows[i, 0], rows[i, 1], rows[i, 2]
                 if q < 0.0:
                     p, q = -p, -q
                 if q * y > 1e-12 * c:  # else rounding, of a joint that stands still at full acceleration: the row binds b_k alone
-                    up, down = (c - p * x) / q, (-c - p * x) / q
+                    slope = -p / q
+                    up, down = c / q + slope * x, -c / q + slope * x
                     if up < high:
-                        high, high_slope = up, -p / q
+                        high, high_slope, high_base = up, slope, c / q
                     if down > low:
-                        low, low_slope = down, -p / q
-                elif abs(p) * x > c:
-                    x = c / abs(p)
-                    low, high, low_slope, high_slope = 1.0, 0.0, 0.0, 0.0
-                    break
-        gap = high - low
-        if gap >= -1e-14 * (abs(high) + abs(low)):
+                        low, low_slope, low_base = down, slope, -c / q
+                elif abs(p) * x > c * (1.0 + 1e-12):
+                    x, alone = c / abs(p), True
+        if alone:
+            continue
+        if high - low >= -1e-14 * (abs(high) + abs(low)):
             return x
-        slope = high_slope - low_slope
-        if slope < 0.0:
-            x -= gap / slope
-            if x <= 0.0:
-                return 0.0
-        elif slope > 0.0:
+        if not high_slope < low_slope:
             return 0.0
+        x = max((high_base - low_base) / (low_slope - high_slope), 0.0)
     return x
 
 

@@ -130,7 +130,7 @@ class Arm:
             raise ModelError("q", f"shape {q.shape}", f"(..., {self.n}), one number a joint")
         from .kernels import linkage  # loads Numba: only where numbers are wanted
 
-        out = getattr(linkage, kernel)(self.chain.links.copy(), self.chain.prismatic.copy(), q.reshape(-1, self.n).copy())
+        out = getattr(linkage, kernel)(*self.chain, q.reshape(-1, self.n))
         return out.reshape(q.shape[:-1] + out.shape[1:])
 
 

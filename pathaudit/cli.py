@@ -8,7 +8,7 @@ import os
 import sys
 
 from . import __version__
-from .errors import PathAuditError, UsageError, WriteError
+from .errors import PathAuditError, UsageError, WriteError, quoted
 
 EXAMPLE = """example:
   pathaudit demo my-cell
@@ -106,7 +106,7 @@ def _check_outputs(outputs, inputs):
         if file == "-" and name == "json":
             continue
         if file in ("", "-"):
-            raise UsageError(f"--{name}: found {file or 'nothing'!r}, expected a file name")
+            raise UsageError(f"--{name}: found {quoted(file)}, expected a file name")
         place = os.path.realpath(file)
         if place in taken:
             raise UsageError(f"--{name} {file}: found the same file as {taken[place]}, expected a file of its own")

@@ -69,3 +69,6 @@ class WriteError(PathAuditError):
 
 class UsageError(PathAuditError):
     """The command line cannot be understood."""
+
+    def __str__(self):
+        return one_line(super().__str__())

@@ -5,6 +5,8 @@ the column names of a timed path get their meaning.
 """
 
 import hashlib
+import re
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -86,30 +88,42 @@ def path_from(columns, *, name: str = "arrays") -> Path:
     twice = first_repeated(header)
     if twice is not None:
         raise ReadError(name, f"column {twice}", "the column twice", "each column once")
-    values = {str(key): np.array(columns[key]) for key in columns.keys()}
-    digest = hashlib.sha256()
-    for column, array in values.items():
-        if array.ndim != 1:
-            raise ReadError(name, f"column {column}", f"an array of shape {array.shape}", "one number a sample")
-        array.flags.writeable = False
-        digest.update(repr((column, array.dtype.str)).encode())
-        digest.update("\0".join(map(str, array)).encode() if array.dtype == object else array.tobytes())
+    values = {str(key): _column_array(name, str(key), columns[key]) for key in columns.keys()}
     lengths = {len(array) for array in values.values()}
     if len(lengths) > 1:
         raise ReadError(name, "", f"columns of {min(lengths)} and {max(lengths)} values", "the same number of values in every column")
     return assemble(
-        header, tuple(values.values()), _array_numbers(name, values), name=name, sha256=digest.hexdigest(), place=lambda row: f"row {row + 1}"
-    )
+        header, tuple(values.values()), lambda column: _numbers(name, column, values[column]),
+        name=name, sha256=_hash(values), place=lambda row: f"row {row + 1}",
+    )  # fmt: skip
 
 
-def _array_numbers(name, values):
-    def numbers(column):
-        try:
-            return values[column].astype(np.float64)
-        except (TypeError, ValueError, OverflowError):
-            raise ReadError(name, f"column {column}", f"values of type {values[column].dtype}", "numbers") from None
+def _column_array(name, column, values):
+    try:
+        array = np.array(values)
+    except ValueError:
+        raise ReadError(name, f"column {column}", "values of different shapes", "one number a sample") from None
+    if array.ndim != 1:
+        raise ReadError(name, f"column {column}", f"an array of shape {array.shape}", "one number a sample")
+    array.flags.writeable = False
+    return array
 
-    return numbers
+
+def _numbers(name, column, array):
+    try:
+        if array.dtype.kind in "biufOU":
+            return array.astype(np.float64)
+    except (TypeError, ValueError, OverflowError):
+        pass
+    raise ReadError(name, f"column {column}", f"values of type {array.dtype}", "numbers")
+
+
+def _hash(values):
+    digest = hashlib.sha256()
+    for column, array in values.items():
+        digest.update(repr((column, array.dtype.str)).encode())
+        digest.update("\0".join(map(str, array)).encode() if array.dtype == object else array.tobytes())
+    return digest.hexdigest()
 
 
 def assemble(header, cells, numbers, *, name, sha256, place) -> Path:
@@ -143,9 +157,9 @@ class _Source:
     """The named columns of one source and the words for its places."""
 
     header: tuple
-    numbers: object
+    numbers: Callable
     name: str
-    place: object
+    place: Callable
 
     def error(self, row, found, expected):
         return ReadError(self.name, self.place(int(row)), found, expected)
@@ -171,7 +185,7 @@ class _Source:
         """What to say was found where none of the `wanted` columns is there: a column that looks like a try at one."""
         stem = next(iter(wanted)).split("_")[0]
         names = {stem, "time"} if stem == "t" else {stem}
-        near = [c for c in self.header if c not in MEANING and c.lower().replace("[", "_").replace(" ", "_").replace("(", "_").split("_")[0] in names]
+        near = [c for c in self.header if c not in MEANING and re.match("[a-z]*", c.lower())[0] in names]
         if near:
             return f"a column {quoted(near[0])}" + (" without a unit" if near[0].lower() in names else "")
         return f"the columns {quoted(', '.join(self.header))}"

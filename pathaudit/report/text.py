@@ -3,7 +3,7 @@
 import os
 import textwrap
 
-from .scene import worst_text
+from .scene import significant, worst_text
 
 WIDTH = 110
 SHARES = ("joint speed", "joint acceleration", "joint torque", "tool speed")
@@ -32,13 +32,21 @@ def _finding(finding):
 
 
 def _measure(finding):
-    """The worst value, its limit, and how much over."""
+    """The worst value, its limit, how much over, and when."""
     text = worst_text(finding)
-    text = f"sigma_min {text}" if finding.kind == "near-singular" else text
-    if finding.kind in SHARES and finding.limit > 0:
-        share = finding.value / finding.limit
-        text += f", {100 * (share - 1):.3g} % over" if share > 1 else f", {100 * share:.3g} % of the limit"
+    if finding.kind == "near-singular":
+        text = f"sigma_min {text}"
+    elif finding.kind == "unreachable":
+        text = f"off the path by {significant(finding.value)} {finding.unit}"
+    elif finding.kind in SHARES and finding.limit > 0:
+        text += f", {_share(finding.value / finding.limit)}"
     return f"{text} at {finding.worst_t:.3f} s"
+
+
+def _share(share):
+    if share <= 1:
+        return f"{significant(100 * share, 3)} % of the limit"
+    return f"{significant(100 * (share - 1), 3)} % over" if share < 3 else f"{significant(share, 3)} times the limit"
 
 
 def _retiming(audit):

@@ -3,6 +3,7 @@
 import csv
 import io
 import json
+import re
 
 import numpy as np
 import pytest
@@ -148,7 +149,7 @@ def test_the_summary_says_what_where_how_much_and_why(slow_needed):
         assert f"{finding.severity.upper()} {who}: {finding.t_start:.3f} to {finding.t_end:.3f} s" in flat
         assert " ".join(finding.why.split()) in flat
     worst = max((f for f in slow_needed.finding_list if f.kind == "joint speed"), key=lambda f: f.value / f.limit)
-    assert f"{100 * (worst.value / worst.limit - 1):.3g} % over" in flat
+    assert f"{worst.value:.1f} mm/s (limit 400), {100 * (worst.value / worst.limit - 1):.0f} % over at {worst.worst_t:.3f} s" in flat
     assert "Suggested retiming" in flat and f"{slow_needed.suggestion.duration:.3f} s in place of 0.500 s" in flat
     assert all(" ".join(caution.split()) in flat for caution in slow_needed.cautions)
     assert max(map(len, said.splitlines())) <= 200 and not said.endswith("\n\n")
@@ -156,7 +157,10 @@ def test_the_summary_says_what_where_how_much_and_why(slow_needed):
 
 def test_the_summary_of_a_path_that_cannot_be_run(broken):
     flat = " ".join(text.summary(broken).split())
-    assert "unreachable" in flat and "No retiming helps" in flat and " ".join(broken.suggestion.why.split()) in flat
+    worst = next(f for f in broken.finding_list if f.kind == "unreachable")
+    assert f"off the path by {worst.value:.0f} mm at {worst.worst_t:.3f} s" in flat
+    assert re.search(r"\d times the limit at", flat) and "e+" not in flat
+    assert "No retiming helps" in flat and " ".join(broken.suggestion.why.split()) in flat
 
 
 def test_the_summary_of_a_clean_path(clean):

@@ -16,7 +16,7 @@ import numba
 import numpy as np
 from numba.core import config
 
-OPTIONS = {"error_model": "numpy", "nogil": True}
+OPTIONS = {"error_model": "numpy", "nogil": True, "fastmath": {"contract"}}
 
 helper = numba.njit(**OPTIONS)
 """Decorator of a function that only kernels call; it is compiled into its callers."""

@@ -42,26 +42,31 @@ def copy(source, target, count):
 
 @helper
 def scratch(n):
-    """Room for everything that a step needs, as one array: many small ones make the kernels slow to compile."""
-    return np.empty((7, max(n, 6) + 1, max(n, 6) + 1))
+    """Room for what a step needs. It is handed on array by array: taking one out of a bundle counts references, which costs as much as a step."""
+    wide = max(n, 6)
+    return (
+        np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((6, n)), np.empty((wide, wide)), np.empty((3, 3)),
+        np.empty(6), np.empty(n), np.empty(wide), np.empty(n), np.empty(6),
+    )  # fmt: skip
 
 
 @helper
-def settle(links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, most, room):
+def settle(
+    links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, most,
+    axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+):  # fmt: skip
     """Steps on q (n,) in place towards one pose; returns (solved, sign of the determinant, metres left, radians left).
 
     Plain Newton steps where the Jacobian is square and regular, damped ones elsewhere; no joint moves more than `limit` in a step.
     Guarded, a step that does not come closer is taken back and damped more (Levenberg-Marquardt), so that q ends at the pose or as
     close to it as can be. The sign is 0 where the Jacobian is near singular or not square.
     """
-    axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
-    error, step, vector, base, kept = room[6, 0], room[6, 1], room[6, 2], room[6, 3], room[6, 4]
     n = q.shape[0]
     sign, damping, cost, best_far, best_turned, dull = 0.0, (1e-3 if guarded else 0.0), np.inf, np.inf, np.inf, 0
     for turn in range(most + 1):
         place(links, prismatic, q, axes, origins, tool)
         far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
-        if far < TOLERANCE and turned < TOLERANCE and turn > 0:
+        if far < TOLERANCE and turned < TOLERANCE:
             return True, sign, far, turned
         if n < rows and turn > 0 and far < LOOSE and turned < LOOSE and largest_of(step, n) < 1e-9:
             return True, sign, far, turned
@@ -139,10 +144,11 @@ def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare):
 
 
 @helper
-def tangent(links, prismatic, twist, span, rows, inverse_length, time, joints, k, known, q, room, slope):
+def tangent(
+    links, prismatic, twist, span, rows, inverse_length, time, joints, k, known, q, slope,
+    axes, origins, tool, jacobian, work, error, step, vector,
+):  # fmt: skip
     """Fill slope (n,): joint change per `span` seconds just after sample k - 1, from the Jacobian, or on a singular place from the samples before."""
-    axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
-    error, step, vector = room[6, 0], room[6, 1], room[6, 2]
     n = q.shape[0]
     place(links, prismatic, q, axes, origins, tool)
     task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian)
@@ -163,14 +169,17 @@ def tangent(links, prismatic, twist, span, rows, inverse_length, time, joints, k
 
 
 @helper
-def creep(links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, slope, room):
+def creep(
+    links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, slope,
+    axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+):  # fmt: skip
     """Follow the motion between two samples in small steps, q in place; (done, steps, sign). Not done: no smooth way on was found.
 
     Each step starts from the last one carried on, and is taken only where the solution is close to that, so that speeds stay
     continuous. A singular place is crossed (the sign of the determinant changes) only in a step too small to leap to another branch.
     """
-    position, rotation, spare, trial, ahead = np.empty(3), np.empty((3, 3)), np.empty((3, 3)), np.empty(q.shape[0]), np.empty(q.shape[0])
     n = q.shape[0]
+    position, rotation, trial, ahead = np.empty(3), np.empty((3, 3)), np.empty(n), np.empty(n)
     u, h, steps = 0.0, 0.25, 0
     while u < 1.0 and steps < 4000:
         steps += 1
@@ -183,7 +192,10 @@ def creep(links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, 
         for i in range(n):
             ahead[i] = q[i] + (goal - u) * slope[i]
             trial[i] = ahead[i]
-        solved, now, _, _ = settle(links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 4, room)
+        solved, now, _, _ = settle(
+            links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 4,
+            axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+        )  # fmt: skip
         move = largest_move(trial, q)
         smooth = solved and move < 0.1 and largest_move(trial, ahead) < 0.3 * move + 1e-8
         if smooth and (now == sign or now == 0.0 or sign == 0.0 or move < 2e-5):
@@ -225,15 +237,29 @@ def lean(jacobian, rows, n, lower, upper, q, move, work, vector, step, pull):
 
 
 @helper
-def extrapolate(time, joints, k, guess):
-    """Fill guess (n,) with the parabola through the three joint rows before k, unless the time step grows too fast to trust it."""
-    t0, t1, t2, t = time[k - 3], time[k - 2], time[k - 1], time[k]
-    if t - t2 < 3.0 * (t2 - t1) and t2 - t1 < 3.0 * (t1 - t0):
-        a = (t - t1) * (t - t2) / ((t0 - t1) * (t0 - t2))
-        b = (t - t0) * (t - t2) / ((t1 - t0) * (t1 - t2))
-        c = (t - t0) * (t - t1) / ((t2 - t0) * (t2 - t1))
-        for i in range(guess.shape[0]):
-            guess[i] = a * joints[k - 3, i] + b * joints[k - 2, i] + c * joints[k - 1, i]
+def extrapolate(time, joints, k, count, weight, guess):
+    """Fill guess (n,) with the polynomial through the `count` joint rows before k, unless the time step grows too fast to trust it."""
+    first, step, even = k - count, time[k] - time[k - 1], True
+    for i in range(first, k - 1):
+        if time[i + 2] - time[i + 1] > 3.0 * (time[i + 1] - time[i]):
+            return
+        even = even and abs(time[i + 1] - time[i] - step) < 1e-6 * step
+    if even:
+        size = -1.0 if count % 2 == 0 else 1.0  # binomial numbers of changing sign
+        for i in range(count):
+            weight[i] = size
+            size *= -(count - i) / (i + 1.0)
+    else:
+        for i in range(count):
+            weight[i] = 1.0
+            for j in range(count):
+                if j != i:
+                    weight[i] *= (time[k] - time[first + j]) / (time[first + i] - time[first + j])
+    for i in range(guess.shape[0]):
+        total = 0.0
+        for j in range(count):
+            total += weight[j] * joints[first + j, i]
+        guess[i] = total
 
 
 @kernel(
@@ -242,9 +268,7 @@ def extrapolate(time, joints, k, guess):
 )
 def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, allow, joints, outcome, left, steps):
     n = prismatic.shape[0]
-    room = scratch(n)
-    axes, origins, tool, jacobian, work, spare = room[0], room[1], room[2], room[3], room[4], room[5]
-    error, step, vector = room[6, 0], room[6, 1], room[6, 2]
+    axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept = scratch(n)
     inverse = 1.0 / length
     guess, walked, pull, q = np.empty(n), np.empty(n), np.empty(n), np.empty(n)
     copy(start, q, n)
@@ -252,7 +276,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
     for k in range(time.shape[0]):
         copy(q, guess, n)
         if n <= rows and known >= 3:
-            extrapolate(time, joints, k, guess)
+            extrapolate(time, joints, k, 5 if known >= 5 else 3, vector, guess)
         elif n > rows and known >= 1:
             place(links, prismatic, q, axes, origins, tool)
             far, turned = pose_error(tool, position[k], rotation[k], rows, inverse, spare, error)
@@ -262,7 +286,10 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                     guess[i] += pull[i]
         here = joints[k]
         copy(guess, here, n)
-        solved, now, far, turned = settle(links, prismatic, position[k], rotation[k], rows, inverse, 0.5, False, here, 8, room)
+        solved, now, far, turned = settle(
+            links, prismatic, position[k], rotation[k], rows, inverse, 0.5, False, here, 8,
+            axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+        )  # fmt: skip
         near = solved and largest_move(here, guess) < 0.05 and largest_move(here, q) < 0.5
         same = now == sign or now == 0.0 or sign == 0.0
         outcome[k] = REACHED
@@ -273,10 +300,13 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
         else:
             copy(q, walked, n)
             span = time[k] - time[k - 1]
-            tangent(links, prismatic, twist[k - 1], span, rows, inverse, time, joints, k, known, q, room, pull)
+            tangent(
+                links, prismatic, twist[k - 1], span, rows, inverse, time, joints, k, known, q, pull,
+                axes, origins, tool, jacobian, work, error, step, vector,
+            )  # fmt: skip
             followed, steps[k], arrived = creep(
                 links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], position[k], rotation[k], twist[k],
-                span, rows, inverse, sign, walked, pull, room,
+                span, rows, inverse, sign, walked, pull, axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
             )  # fmt: skip
             if followed:
                 copy(walked, here, n)
@@ -286,7 +316,10 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                 followed, outcome[k], known = True, CROSSED, 0
         if not followed:
             copy(q, here, n)
-            solved, now, far, turned = settle(links, prismatic, position[k], rotation[k], rows, inverse, 0.7, True, here, 300, room)
+            solved, now, far, turned = settle(
+                links, prismatic, position[k], rotation[k], rows, inverse, 0.7, True, here, 300,
+                axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+            )  # fmt: skip
             if not (solved or (far < allow[0] and turned < allow[1])):
                 outcome[k], known = UNREACHED, -1
             else:
@@ -303,9 +336,12 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
 @kernel("void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[:,::1], f8[:,::1], f8[:,::1])")
 def _solve(links, prismatic, length, rows, position, rotation, joints, left):
     n = prismatic.shape[0]
-    room = scratch(n)
+    axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept = scratch(n)
     for k in range(joints.shape[0]):
-        _, _, far, turned = settle(links, prismatic, position, rotation, rows, 1.0 / length, 0.7, True, joints[k], 300, room)
+        _, _, far, turned = settle(
+            links, prismatic, position, rotation, rows, 1.0 / length, 0.7, True, joints[k], 300,
+            axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+        )  # fmt: skip
         left[k, 0], left[k, 1] = far, turned
 
 

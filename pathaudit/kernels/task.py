@@ -13,11 +13,17 @@ from .compiled import helper
 def rotation_log(r, out):
     """Fill out (3,) with the rotation vector of r (3, 3), angle in [0, pi]."""
     x, y, z = 0.5 * (r[2, 1] - r[1, 2]), 0.5 * (r[0, 2] - r[2, 0]), 0.5 * (r[1, 0] - r[0, 1])
-    sine = sqrt(x * x + y * y + z * z)
+    square = x * x + y * y + z * z
     cosine = 0.5 * (r[0, 0] + r[1, 1] + r[2, 2] - 1.0)
+    if square < 1e-4 and cosine > 0.0:
+        # asin(s) / s to s^6; the next term, 35 s^8 / 1152, is below 4e-18 here
+        scale = 1.0 + square * (1.0 / 6.0 + square * (3.0 / 40.0 + square * (15.0 / 336.0)))
+        out[0], out[1], out[2] = x * scale, y * scale, z * scale
+        return
+    sine = sqrt(square)
     angle = atan2(sine, cosine)
     if sine > 1e-6 or cosine > 0.0:
-        scale = angle / sine if sine > 1e-12 else 1.0
+        scale = angle / sine
         out[0], out[1], out[2] = x * scale, y * scale, z * scale
         return
     # Close to half a turn the sine says nothing of the axis; the symmetric part does, up to a sign that then does not matter.

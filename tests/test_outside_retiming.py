@@ -90,7 +90,7 @@ def test_circle_under_joint_acceleration_limits():
 
 def test_radial_line_of_a_planar_arm():
     given = inputs("RET-015")
-    r = np.linspace(*given["r"], 20_001)
+    r = np.linspace(*given["r"], 60_001)
     reach = 2.0 * given["l"]
     elbow = -2.0 / np.sqrt(reach**2 - r**2)  # th2 = 2 acos(r / reach), th1 = phi - th2 / 2
     bend = r * elbow / (reach**2 - r**2)

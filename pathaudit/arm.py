@@ -6,9 +6,17 @@ from typing import NamedTuple
 
 import numpy as np
 
-from .conventions import DEG, MAX_JOINTS, MM, frozen
+from .conventions import DEG, FARTHEST, MAX_JOINTS, MM, frozen
 from .errors import ModelError, first_repeated, quoted
 from .kernels import rotations
+
+
+LIMIT_KEYS = ("lower", "upper", "speed", "acceleration", "effort")
+TURN_UNITS = {"lower_deg": DEG, "upper_deg": DEG, "speed_deg_s": DEG, "acceleration_deg_s2": DEG, "effort_nm": 1.0}
+SLIDE_UNITS = {"lower_mm": MM, "upper_mm": MM, "speed_mm_s": MM, "acceleration_mm_s2": MM, "effort_n": 1.0}
+GEOMETRY_KEYS = ("a_mm", "alpha_deg", "d_mm", "theta_deg")
+ROW_KEYS = ("name", "type", *GEOMETRY_KEYS, *TURN_UNITS, *SLIDE_UNITS)
+"""Every key of a Denavit-Hartenberg row."""
 
 
 class Chain(NamedTuple):
@@ -48,7 +56,9 @@ class Arm:
         object.__setattr__(self, "chain", Chain(frozen(self.chain.links), frozen(self.chain.prismatic, np.uint8)))
         if self.chain.links.shape != (n + 1, 4, 4) or self.chain.prismatic.shape != (n,):
             raise ModelError("chain", f"links of shape {self.chain.links.shape}", f"{(n + 1, 4, 4)} for {n} joints")
-        for field in ("lower", "upper", "speed", "acceleration", "effort"):
+        if not (np.abs(self.chain.links) <= FARTHEST).all():
+            raise ModelError("chain", "a link that is not finite or longer than 10 km", "lengths in the stated unit")
+        for field in LIMIT_KEYS:
             object.__setattr__(self, field, frozen(getattr(self, field)))
             if getattr(self, field).shape != (n,):
                 raise ModelError(field, f"shape {getattr(self, field).shape}", f"one number for each of {n} joints")
@@ -134,14 +144,6 @@ class Arm:
         return out.reshape(q.shape[:-1] + out.shape[1:])
 
 
-LIMIT_KEYS = ("lower", "upper", "speed", "acceleration", "effort")
-TURN_UNITS = {"lower_deg": DEG, "upper_deg": DEG, "speed_deg_s": DEG, "acceleration_deg_s2": DEG, "effort_nm": 1.0}
-SLIDE_UNITS = {"lower_mm": MM, "upper_mm": MM, "speed_mm_s": MM, "acceleration_mm_s2": MM, "effort_n": 1.0}
-GEOMETRY_KEYS = ("a_mm", "alpha_deg", "d_mm", "theta_deg")
-ROW_KEYS = ("name", "type", *GEOMETRY_KEYS, *TURN_UNITS, *SLIDE_UNITS)
-"""Every key of a Denavit-Hartenberg row."""
-
-
 class _Row:
     """One Denavit-Hartenberg row, checked."""
 
@@ -159,10 +161,13 @@ class _Row:
 
     def number(self, key, missing):
         value = self.row.get(key, missing)
-        endless = key in ("lower_deg", "upper_deg")
-        if isinstance(value, (bool, str)) or not np.isscalar(value) or (key in self.row and not (np.isfinite(value) or endless and np.isinf(value))):
-            raise ModelError(f"joint {self.name}, {key}", quoted(value), "a number")
-        return float(value)
+        try:
+            number = np.nan if isinstance(value, (bool, str)) else float(value)
+        except (TypeError, ValueError, OverflowError):
+            number = np.nan
+        if key in self.row and (np.isnan(number) or (np.isinf(number) and key not in ("lower_deg", "upper_deg"))):
+            raise ModelError(f"joint {self.name}, {key}", quoted(value), "a finite number")
+        return number
 
     def limit(self, name):
         key = next(key for key in self.units if key.startswith(name))

@@ -6,7 +6,7 @@ from functools import cached_property
 import numpy as np
 
 from .arm import Arm, Chain
-from .conventions import frozen
+from .conventions import FARTHEST, frozen
 from .errors import ModelError
 from .kernels import rotations
 
@@ -107,4 +107,6 @@ def _rigid(field, pose):
     turn = pose[:3, :3]
     if not (np.allclose(turn @ turn.T, np.eye(3), atol=1e-9) and np.linalg.det(turn) > 0 and (pose[3] == (0, 0, 0, 1)).all() and np.isfinite(pose).all()):
         raise ModelError(field, "a matrix that is not a rigid pose", "a rotation and a translation with the last row 0 0 0 1")
+    if not (np.abs(pose) <= FARTHEST).all():
+        raise ModelError(field, f"a place {np.abs(pose).max():g} m away", f"coordinates within {FARTHEST:g} m (check the unit)")
     return pose

@@ -30,7 +30,7 @@ LATEST = 1e10
 """Largest time of a path, s: enough for a clock that counts from 1970."""
 
 FARTHEST = 1e4
-"""Largest coordinate of a path, m: what lies beyond is a mistake in the unit."""
+"""Largest coordinate of anything given, m: what lies beyond is a mistake in the unit."""
 
 CAUTIONS = (
     "This is not a risk assessment and does not replace one.",

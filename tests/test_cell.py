@@ -7,6 +7,8 @@ from scipy.spatial.transform import Rotation
 import pathaudit as pa
 from pathaudit.kernels import linkage, rotations
 
+pytestmark = pytest.mark.filterwarnings("error")
+
 LIMITS = {"lower_deg": -170, "upper_deg": 170, "speed_deg_s": 180}
 ARM = pa.Arm.from_dh([{"d_mm": 300, "alpha_deg": 90, **LIMITS}, {"a_mm": 500, **LIMITS}, {"a_mm": 400, **LIMITS}])
 
@@ -60,6 +62,7 @@ def test_a_cell_is_a_value():
         ({"tool": np.diag([1, 1, 2, 1])}, ["tool", "rigid"]),
         ({"part": np.diag([1, 1, -1, 1])}, ["part", "rigid"]),
         ({"placement": np.full((4, 4), np.nan)}, ["placement", "rigid"]),
+        ({"placement": rotations.pose(np.eye(3), [0, 2e4, 0])}, ["placement", "20000 m away", "check the unit"]),
         ({"arm": pa.Arm.from_dh([{}])}, ["joint j1", "no travel limits", "travel_deg under [limits]"]),
         ({"arm": pa.Arm.from_dh([{"type": "prismatic"}])}, ["no travel limits", "travel_mm"]),
         ({"arm": pa.Arm.from_dh([{"lower_deg": -1, "upper_deg": 1}])}, ["no speed limit", "speed_deg_s under [limits]"]),

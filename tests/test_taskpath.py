@@ -10,6 +10,8 @@ from scipy.spatial.transform import Rotation
 import pathaudit as pa
 from pathaudit.kernels import rotations as rot
 
+pytestmark = pytest.mark.filterwarnings("error")
+
 BASE = {"t_s": [0.0, 0.5, 2.0], "x_mm": [0.0, 30.0, 30.0], "y_mm": [0.0, 40.0, 40.0], "z_mm": [0.0, 0.0, -10.0]}
 AXIS = {"i": [0.0] * 3, "j": [0.0] * 3, "k": [-1.0] * 3}
 TURNS = Rotation.random(3, rng=np.random.default_rng(0))

@@ -28,7 +28,7 @@ def write_whole(file, content) -> None:
 def _replace(target, data, mode):
     folder = os.path.dirname(target)
     beside = os.path.join(folder, f".pathaudit-{os.urandom(6).hex()}")
-    handle = os.open(beside, os.O_WRONLY | os.O_CREAT | os.O_EXCL, 0o666)
+    handle = os.open(beside, os.O_WRONLY | os.O_CREAT | os.O_EXCL | getattr(os, "O_BINARY", 0), 0o666)
     try:
         with open(handle, "wb") as stream:
             if mode is not None:

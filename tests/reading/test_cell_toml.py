@@ -10,6 +10,8 @@ import pytest
 import pathaudit as pa
 from pathaudit.reading import cell_toml
 
+pytestmark = pytest.mark.filterwarnings("error")
+
 DEG = np.pi / 180
 
 URDF = """<robot name="r"><link name="base"/><link name="l1"/><link name="l2"/><link name="torch"/><link name="camera"/>
@@ -209,7 +211,7 @@ def test_unknown_keys_name_the_nearest_known_one(refused, text, key, nearest):
         ("[arm]\ndh = 'standard'\njoint = []", "arm: joints: found 0, expected 1 to 12"),
         (ROWS.replace('"slide"', "4"), "arm.joint row 1.name: found 4, expected a text"),
         (ROWS.replace('"slide"', '"turn"'), "arm: joints: found 'turn' twice"),
-        (ROWS.replace("a_mm = 120", "a_mm = '120'"), "arm: joint turn, a_mm: found '120', expected a number"),
+        (ROWS.replace("a_mm = 120", "a_mm = '120'"), "arm: joint turn, a_mm: found '120', expected a finite number"),
         (ROWS.replace('"prismatic"', '"screw"'), "arm: joint slide, type: found 'screw'"),
         (ROWS.replace("speed_deg_s = 90", ""), "joint turn: found no speed limit, expected a limit from the arm, or speed_deg_s under [limits]"),
         (ROWS.replace("upper_mm = 1200", ""), "joint slide: found no travel limits, expected limits from the arm, or travel_mm under [limits]"),

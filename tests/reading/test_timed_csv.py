@@ -13,6 +13,8 @@ from hypothesis import strategies as st
 
 import pathaudit as pa
 
+pytestmark = pytest.mark.filterwarnings("error")
+
 HEADER = "t_s,x_mm,y_mm,z_mm,i,j,k,process,label,wire"
 ROWS = ["0.0,0,0,0,0,0,-1,1,start,8.50", "0.5,10.5,0,0,0,0,-1,1,seam,08.5", "1.25,21,-3e0,0,0,0,-1,0,end,?"]
 SEAM = "\n".join([HEADER, *ROWS]) + "\n"

@@ -10,6 +10,8 @@ from outside import agrees, inputs
 import pathaudit as pa
 from pathaudit.kernels import rotations as rot
 
+pytestmark = pytest.mark.filterwarnings("error")
+
 LIMIT = '<limit lower="-1" upper="2" velocity="3" effort="4"/>'
 
 

@@ -59,8 +59,8 @@ def joints_csv(audit) -> str:
     units = ["mm" if s else "deg" for s in slides]
     header = ["t_s", *(f"{name}_{unit}" for name, unit in zip(arm.joint_names, units))]
     header += [*(f"{name}_{unit}_s" for name, unit in zip(arm.joint_names, units)), "sigma_min", "speed_use"]
-    measured = [*(audit.joints * scale).T, *(rates.joint_speed * scale).T, rates.sigma_min, rates.speed_share.max(axis=1)]
-    return _csv(header, [map(repr, audit.time.tolist()), *(map(_digits, column.tolist()) for column in measured)])
+    measured = np.column_stack([audit.joints * scale, rates.joint_speed * scale, rates.sigma_min, rates.speed_share.max(axis=1)])
+    return _csv(header, ((repr(time), *map(_digits, row.tolist())) for time, row in zip(audit.time.tolist(), measured)))
 
 
 def _digits(value):
@@ -74,8 +74,10 @@ def retimed_csv(retiming) -> str:
     name = next(name for name in TIME if name in path.columns)
     per_second = 1000.0 if name == "t_ms" else 1.0
     columns = [_texts(cells) for cells in path.cells]
-    columns[path.columns.index(name)] = list(map(repr, (retiming.time * per_second).tolist()))
-    return _csv(path.columns, columns)
+    columns[path.columns.index(name)] = map(repr, (retiming.time * per_second).tolist())
+    # a first cell that begins with '#' would make its line a comment
+    quoted = any(text.lstrip().startswith("#") for text in (path.columns[0], *_texts(path.cells[0])))
+    return _csv(path.columns, zip(*columns), csv.QUOTE_ALL if quoted else csv.QUOTE_MINIMAL)
 
 
 def _texts(cells):
@@ -85,10 +87,9 @@ def _texts(cells):
     return list(map(str, cells))
 
 
-def _csv(header, columns):
-    rows = [header, *zip(*columns)]
-    # a first cell that begins with '#' would make its line a comment
-    quoting = csv.QUOTE_ALL if any(row[0].lstrip().startswith("#") for row in rows) else csv.QUOTE_MINIMAL
+def _csv(header, rows, quoting=csv.QUOTE_MINIMAL):
     stream = io.StringIO()
-    csv.writer(stream, lineterminator="\n", quoting=quoting).writerows(rows)
+    writer = csv.writer(stream, lineterminator="\n", quoting=quoting)
+    writer.writerow(header)
+    writer.writerows(rows)
     return stream.getvalue()

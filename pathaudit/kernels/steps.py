@@ -13,6 +13,7 @@ from .linkage import place
 from .task import damped_step, eliminate, in_tool_axes, pose_error, rotation_log, task_jacobian
 
 TOLERANCE = 1e-10  # of a solved pose, metres and radians: ten times tighter than what is promised
+RENEW = 32  # samples after which a step is taken even where the prediction hits, to renew the inverse and see the determinant
 LOOSE = 1e-5  # of an arm with fewer joints than the task has rows, which can only come close to rounded poses
 REACHED, CROSSED, JUMPED, UNREACHED = 0, 1, 2, 3
 
@@ -52,21 +53,22 @@ def scratch(n):
 
 @helper
 def settle(
-    links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, most,
+    links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, least, most,
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
 ):  # fmt: skip
     """Steps on q (n,) in place towards one pose; returns (solved, sign of the determinant, metres left, radians left).
 
     Plain Newton steps where the Jacobian is square and regular, damped ones elsewhere; no joint moves more than `limit` in a step.
     Guarded, a step that does not come closer is taken back and damped more (Levenberg-Marquardt), so that q ends at the pose or as
-    close to it as can be. The sign is 0 where the Jacobian is near singular or not square.
+    close to it as can be. Between `least` and `most` steps are taken. The sign is 0 where the Jacobian is near singular, not square or
+    not needed.
     """
     n = q.shape[0]
     sign, damping, cost, best_far, best_turned, dull = 0.0, (1e-3 if guarded else 0.0), np.inf, np.inf, np.inf, 0
     for turn in range(most + 1):
         place(links, prismatic, q, axes, origins, tool)
         far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
-        if far < TOLERANCE and turned < TOLERANCE:
+        if far < TOLERANCE and turned < TOLERANCE and turn >= least:
             return True, sign, far, turned
         if n < rows and turn > 0 and far < LOOSE and turned < LOOSE and largest_of(step, n) < 1e-9:
             return True, sign, far, turned
@@ -193,7 +195,7 @@ def creep(
             ahead[i] = q[i] + (goal - u) * slope[i]
             trial[i] = ahead[i]
         solved, now, _, _ = settle(
-            links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 4,
+            links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 1, 4,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         move = largest_move(trial, q)
@@ -237,29 +239,45 @@ def lean(jacobian, rows, n, lower, upper, q, move, work, vector, step, pull):
 
 
 @helper
-def extrapolate(time, joints, k, count, weight, guess):
+def extrapolate(time, joints, k, count, even, weight, guess):
     """Fill guess (n,) with the polynomial through the `count` joint rows before k, unless the time step grows too fast to trust it."""
-    first, step, even = k - count, time[k] - time[k - 1], True
+    first = k - count
+    if even and count == 5:
+        for i in range(guess.shape[0]):
+            outer, middle = joints[k - 1, i] - joints[k - 4, i], joints[k - 3, i] - joints[k - 2, i]
+            guess[i] = joints[k - 5, i] + 5.0 * outer + 10.0 * middle
+        return
     for i in range(first, k - 1):
         if time[i + 2] - time[i + 1] > 3.0 * (time[i + 1] - time[i]):
             return
-        even = even and abs(time[i + 1] - time[i] - step) < 1e-6 * step
-    if even:
-        size = -1.0 if count % 2 == 0 else 1.0  # binomial numbers of changing sign
-        for i in range(count):
-            weight[i] = size
-            size *= -(count - i) / (i + 1.0)
-    else:
-        for i in range(count):
-            weight[i] = 1.0
-            for j in range(count):
-                if j != i:
-                    weight[i] *= (time[k] - time[first + j]) / (time[first + i] - time[first + j])
+    for i in range(count):
+        weight[i] = 1.0
+        for j in range(count):
+            if j != i:
+                weight[i] *= (time[k] - time[first + j]) / (time[first + i] - time[first + j])
     for i in range(guess.shape[0]):
         total = 0.0
         for j in range(count):
             total += weight[j] * joints[first + j, i]
         guess[i] = total
+
+
+@helper
+def invert(jacobian, n, work, right, column, inverse):
+    for j in range(n):
+        for i in range(n):
+            right[i] = 1.0 if i == j else 0.0
+        eliminate(jacobian, right, n, work, column)
+        for i in range(n):
+            inverse[i, j] = column[i]
+
+
+@helper
+def correct(inverse, error, q):
+    """A step by an inverse that is some samples old: it need not be exact, it only keeps predictions from adding up their errors."""
+    for i in range(q.shape[0]):
+        for j in range(q.shape[0]):
+            q[i] += inverse[i, j] * error[j]
 
 
 @kernel(
@@ -269,25 +287,34 @@ def extrapolate(time, joints, k, count, weight, guess):
 def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, allow, joints, outcome, left, steps):
     n = prismatic.shape[0]
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept = scratch(n)
-    inverse = 1.0 / length
-    guess, walked, pull, q = np.empty(n), np.empty(n), np.empty(n), np.empty(n)
+    scale = 1.0 / length
+    guess, here, walked, pull, q = np.empty(n), np.empty(n), np.empty(n), np.empty(n), np.empty(n)
+    goal_position, goal_rotation = np.empty(3), np.empty((3, 3))
     copy(start, q, n)
+    even = 0  # how many time steps before this sample were alike
+    inverse, age = np.empty((n, n)), RENEW  # of the Jacobian some samples ago, and how many
     sign, known = 0.0, 0  # known: how many samples just before this one were followed smoothly
     for k in range(time.shape[0]):
+        for i in range(3):
+            goal_position[i] = position[k, i]
+            for j in range(3):
+                goal_rotation[i, j] = rotation[k, i, j]
         copy(q, guess, n)
+        if k >= 2:
+            lately = time[k] - time[k - 1]
+            even = even + 1 if abs(lately - (time[k - 1] - time[k - 2])) < 1e-6 * lately else 0
         if n <= rows and known >= 3:
-            extrapolate(time, joints, k, 5 if known >= 5 else 3, vector, guess)
+            extrapolate(time, joints, k, 5 if known >= 5 else 3, even >= 4, vector, guess)
         elif n > rows and known >= 1:
             place(links, prismatic, q, axes, origins, tool)
-            far, turned = pose_error(tool, position[k], rotation[k], rows, inverse, spare, error)
-            task_jacobian(prismatic, axes, origins, tool, rows, inverse, jacobian)
-            if lean(jacobian, rows, n, lower, upper, q, far * inverse + turned, work, vector, step, pull):
+            far, turned = pose_error(tool, goal_position, goal_rotation, rows, scale, spare, error)
+            task_jacobian(prismatic, axes, origins, tool, rows, scale, jacobian)
+            if lean(jacobian, rows, n, lower, upper, q, far * scale + turned, work, vector, step, pull):
                 for i in range(n):
                     guess[i] += pull[i]
-        here = joints[k]
         copy(guess, here, n)
         solved, now, far, turned = settle(
-            links, prismatic, position[k], rotation[k], rows, inverse, 0.5, False, here, 8,
+            links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, False, here, 1 if age >= RENEW or known < 5 or n != rows else 0, 8,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         near = solved and largest_move(here, guess) < 0.05 and largest_move(here, q) < 0.5
@@ -297,16 +324,22 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             followed = solved and k == 0  # after a gap there is nothing to be continuous with
         elif near and same:
             followed = True
+            age += 1
+            if n == rows and now == 0.0 and age < RENEW:
+                correct(inverse, error, here)
+            elif now != 0.0 and age >= RENEW:
+                invert(jacobian, n, work, error, step, inverse)
+                age = 0
         else:
             copy(q, walked, n)
             span = time[k] - time[k - 1]
             tangent(
-                links, prismatic, twist[k - 1], span, rows, inverse, time, joints, k, known, q, pull,
+                links, prismatic, twist[k - 1], span, rows, scale, time, joints, k, known, q, pull,
                 axes, origins, tool, jacobian, work, error, step, vector,
             )  # fmt: skip
             followed, steps[k], arrived = creep(
-                links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], position[k], rotation[k], twist[k],
-                span, rows, inverse, sign, walked, pull, axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+                links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], goal_position, goal_rotation, twist[k],
+                span, rows, scale, sign, walked, pull, axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
             )  # fmt: skip
             if followed:
                 copy(walked, here, n)
@@ -317,7 +350,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
         if not followed:
             copy(q, here, n)
             solved, now, far, turned = settle(
-                links, prismatic, position[k], rotation[k], rows, inverse, 0.7, True, here, 300,
+                links, prismatic, goal_position, goal_rotation, rows, scale, 0.7, True, here, 1, 300,
                 axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
             )  # fmt: skip
             if not (solved or (far < allow[0] and turned < allow[1])):
@@ -329,7 +362,8 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
         left[k, 0], left[k, 1] = far, turned
         if now != 0.0:
             sign = now
-        copy(here, q, n)
+        for i in range(n):
+            joints[k, i] = q[i] = here[i]
         known += 1
 
 
@@ -339,7 +373,7 @@ def _solve(links, prismatic, length, rows, position, rotation, joints, left):
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept = scratch(n)
     for k in range(joints.shape[0]):
         _, _, far, turned = settle(
-            links, prismatic, position, rotation, rows, 1.0 / length, 0.7, True, joints[k], 300,
+            links, prismatic, position, rotation, rows, 1.0 / length, 0.7, True, joints[k], 1, 300,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         left[k, 0], left[k, 1] = far, turned

@@ -7,11 +7,13 @@ import signal
 import subprocess
 import sys
 import time
+from html import escape
 
 import numpy as np
 import pytest
 
 from pathaudit import __version__, cli
+from pathaudit.conventions import CAUTIONS
 
 # An invented arm, as Denavit-Hartenberg rows (a mm, alpha deg, d mm, theta deg), a tool, and where arm and part stand.
 ROWS = [(120, -90, 420, 0), (610, 0, 0, -90), (95, -90, 0, 0), (0, 90, 640, 0), (0, -90, 0, 0), (0, 0, 95, 180)]
@@ -158,6 +160,16 @@ def test_every_output_at_once(bench, capfd):
     assert page.lstrip().lower().startswith("<!doctype html>") and "bench" in page
     out, err = capfd.readouterr()
     assert "seam.csv in bench" in out and "Traceback" not in err
+    for caution in CAUTIONS:  # wherever a verdict stands
+        assert caution in json.loads((bench / "a.json").read_text())["cautions"]
+        assert escape(caution) in page
+        assert caution in " ".join(out.split())
+
+
+def test_the_cautions_say_what_must_not_be_forgotten():
+    said = " ".join(CAUTIONS)
+    for words in ("not a risk assessment", "250 mm/s", "ISO 10218-1", "welding procedure prevail", "controller's own interpolation", "collisions", "taken as given"):
+        assert words in said
 
 
 def test_json_on_stdout_and_the_summary_on_stderr(bench, capfd):

@@ -4,6 +4,8 @@ import numpy as np
 import pytest
 import reference_follower
 from example_arms import cell_of, dh_rows, path_of_motion, path_of_poses, puma
+from hypothesis import given, settings
+from hypothesis import strategies as st
 from open_arms import robot_file
 from outside import agrees, inputs
 
@@ -263,3 +265,40 @@ def test_too_close_to_axis_1_is_out_of_reach():
     poses[:, 0, 3], poses[:, 1, 3], poses[:, 2, 3] = across, 0.0, 0.5
     audit = pa.audit(path_of_poses(time, poses), cell_of(puma(speed_deg_s=FAST), -FLANGE))
     np.testing.assert_array_equal(audit.motion.reached, across >= OFFSET)
+
+
+# ---------------------------------------------------------------------------------------------------------- nothing is hidden
+
+
+@settings(max_examples=60, deadline=None)
+@given(st.integers(0, 2**32 - 1), st.sampled_from([(5, True), (6, False), (6, True), (7, False), (8, True)]), st.integers(20, 120))
+def test_whatever_the_arm_and_the_path_nothing_is_hidden(seed, kind, samples):
+    """Any arm through any path of its own: what counts as reached is reached, and what moves too fast between two samples is a finding."""
+    (n, spin_free), random = kind, np.random.default_rng(seed)
+    rows = dh_rows(random.uniform(-400, 400, n), random.choice([-90.0, 0.0, 90.0, 37.0], n), random.uniform(-300, 300, n))
+    time = np.linspace(0.0, 2.0, samples)
+    joints = random.uniform(-2, 2, n) + random.uniform(0.1, 1.0, n) * np.sin(np.outer(time, random.uniform(0.5, 3.0, n)) + random.uniform(0, 6, n))
+    cell = cell_of(pa.Arm.from_dh(rows), 0.1, start=joints[0])
+    path = path_of_motion(cell, time, joints, spin_free=spin_free)
+    audit = pa.audit(path, cell)
+
+    reached = audit.motion.reached
+    assert reached[0]
+    poses = linkage.poses(*cell.chain, audit.joints[reached])
+    off = np.linalg.norm(poses[:, :3, 3] - path.position[reached], axis=1)
+    np.testing.assert_allclose(off, audit.motion.deviation_m[reached], atol=1e-9)
+    axes = np.einsum("kij,kij->kj", poses[:, :3, :3], path.rotation[reached])
+    turned = np.arccos(np.clip(axes[:, 2] if spin_free else (axes.sum(axis=1) - 1.0) / 2.0, -1.0, 1.0))
+    assert np.all(turned <= audit.motion.deviation_rad[reached] + 5e-8)  # the arc cosine sees no less
+    late = np.flatnonzero(reached & ((audit.motion.deviation_m > 1e-9) | (audit.motion.deviation_rad > 1e-9)))
+    loose = audit.cell.thresholds
+    assert np.all(audit.motion.deviation_m[late] <= loose.deviation_mm / 1000) and np.all(audit.motion.deviation_rad[late] <= np.radians(loose.deviation_deg))
+
+    share = np.abs(np.diff(audit.joints, axis=0)).T / np.diff(time) / cell.arm.speed[:, None]
+    for joint, k in np.argwhere(share > 1.02):  # below that, what the rates at the samples say stands
+        said = [
+            f for f in audit.finding_list
+            if f.severity == "fail" and f.last >= k and f.first <= k + 1
+            and (f.kind == "posture jump" or (f.kind == "joint speed" and f.joint == cell.arm.joint_names[joint]))
+        ]  # fmt: skip
+        assert said, f"joint {joint} moves at {share[joint, k]:.2f} of its limit between samples {k} and {k + 1}, and no finding says so"

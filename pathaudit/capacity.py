@@ -183,14 +183,15 @@ def _within_range(G, direction):
 
 
 def _facet_normals(G):
-    """Unit normals (k, m) of the hyperplanes that m - 1 columns of G (m, n), of full row rank, span; each opposite pair once."""
-    m, n = G.shape
-    choices = np.array(list(combinations(range(n), m - 1)), dtype=int)
+    """Unit vectors (k, m) across m - 1 columns of G (m, n) each, for every choice of columns; each opposite pair once.
+
+    Among them are the normals of all facets. Where the chosen columns span less, the vector is one of many across them: no
+    facet's normal, but h(y) / |y . direction| is an upper bound of the speed for any y, so it does no harm.
+    """
+    choices = np.array(list(combinations(range(G.shape[1]), len(G) - 1)), dtype=int)
     lengths = np.linalg.norm(G, axis=0)
-    columns = np.moveaxis(G[:, choices] / np.where(lengths > 0, lengths, 1.0)[choices], 1, 0)
-    left, sigma, _ = np.linalg.svd(columns)
-    spans = np.ones(len(choices), dtype=bool) if m == 1 else sigma[:, -1] > ROUND_OFF
-    return left[spans, :, -1]
+    columns = np.moveaxis((G / np.where(lengths > 0, lengths, 1.0))[:, choices], 1, 0)
+    return np.linalg.svd(columns)[0][..., -1]
 
 
 def _without_parallels(G):

@@ -15,9 +15,9 @@ class Rates:
 
     joint_speed, joint_acceleration (N, n) rad or m, per second, from the Jacobian and the tool twist. speed_share,
     acceleration_share (N, n): of the limits, the latter NaN where there is none. between (N - 1, n): the mean joint speed over the
-    interval as a share of the limit, which somewhere inside it is reached or passed. sigma_min, sigma_max (N,): of the task Jacobian
-    whose linear rows are divided by characteristic_length (m). manipulability (N,): |det| of the same (Yoshikawa 1985), the product
-    of its singular values. tool_speed (N,) m/s, programmed. travel_left (N, n) rad or m, negative outside.
+    interval as a share of the limit, which somewhere inside it is reached or passed. sigma_min (N,): smallest singular value of the
+    task Jacobian whose linear rows are divided by characteristic_length (m). least_share (N,): the largest speed share when a surplus
+    joint, if there is one, is used as well as it can be. tool_speed (N,) m/s, programmed. travel_left (N, n) rad or m, negative outside.
     """
 
     motion: Motion
@@ -27,7 +27,6 @@ class Rates:
     acceleration_share: np.ndarray
     between: np.ndarray
     sigma_min: np.ndarray
-    sigma_max: np.ndarray
     least_share: np.ndarray
     tool_speed: np.ndarray
     travel_left: np.ndarray
@@ -52,19 +51,29 @@ class Rates:
             return frozen(np.where(self.tool_speed > 1e-9, self.reserve * self.tool_speed, np.nan))
 
     @cached_property
+    def singular_values(self) -> np.ndarray:
+        """(N, min(rows, n)) of the scaled task Jacobian, largest first"""
+        out = np.full((len(self.sigma_min), min(self.motion.rows, self.motion.joints.shape[1])), np.nan)
+        ok = np.flatnonzero(self.motion.reached)
+        if len(ok):
+            out[ok] = np.linalg.svd(task_jacobians(self.motion, ok), compute_uv=False)
+        return frozen(out)
+
+    @property
+    def sigma_max(self) -> np.ndarray:
+        """(N,) largest singular value"""
+        return self.singular_values[:, 0]
+
+    @property
     def condition(self) -> np.ndarray:
         """(N,) sigma_max / sigma_min"""
         with np.errstate(divide="ignore"):
-            return frozen(self.sigma_max / self.sigma_min)
+            return self.sigma_max / self.sigma_min
 
-    @cached_property
+    @property
     def manipulability(self) -> np.ndarray:
-        """(N,) the product of the singular values of the scaled task Jacobian"""
-        out = np.full(len(self.sigma_min), np.nan)
-        ok = self.motion.reached
-        if ok.any():
-            out[ok] = np.linalg.svd(task_jacobians(self.motion, np.flatnonzero(ok)), compute_uv=False).prod(axis=-1)
-        return frozen(out)
+        """(N,) the product of the singular values of the scaled task Jacobian (Yoshikawa 1985)"""
+        return self.singular_values.prod(axis=1)
 
     @cached_property
     def lost_direction(self) -> np.ndarray:
@@ -104,8 +113,8 @@ def measure(motion: Motion) -> Rates:
     between = np.abs(np.diff(motion.joints, axis=0)) / np.diff(path.time)[:, None] / arm.speed
     left = np.minimum(motion.joints - arm.lower, arm.upper - motion.joints)
     arrays = (
-        speed, acceleration, np.abs(speed) / arm.speed, np.abs(acceleration) / arm.acceleration, between, measures[:, 0], measures[:, 1],
-        measures[:, 4], np.linalg.norm(motion.twist[:, :3], axis=1), left,
+        speed, acceleration, np.abs(speed) / arm.speed, np.abs(acceleration) / arm.acceleration, between, measures[:, 0], measures[:, 2],
+        np.linalg.norm(motion.twist[:, :3], axis=1), left,
     )  # fmt: skip
     return Rates(motion, *(frozen(a) for a in arrays), length)
 

@@ -162,7 +162,7 @@ class _Task:
         """q moved by full turns so that low..high (n,), where the joints go to, lies best inside the travel."""
         arm = self.cell.arm
         free = ~arm.prismatic & np.isfinite(arm.lower) & np.isfinite(arm.upper)
-        middle = np.where(free, arm.lower + arm.upper, 0.0) / 2.0
+        middle = (np.where(free, arm.lower, 0.0) + np.where(free, arm.upper, 0.0)) / 2.0
         turns = np.round((middle - (low + high) / 2.0) / TURN)
         return q + TURN * np.where(arm.prismatic, 0.0, turns)
 
@@ -196,7 +196,7 @@ class _Task:
             self.chain, self.cell.characteristic_length, self.rows, arm.speed, joints, self.twist[samples], self.twist_rate[samples], zero, zero
         )
         bound = max(self.cell.thresholds.sigma_min_fail, 1e-9)
-        worst = max(measures[:, 3].max(), (bound / np.maximum(measures[:, 0], 1e-12)).max())
+        worst = max(measures[:, 1].max(), (bound / np.maximum(measures[:, 0], 1e-12)).max())
         lost, jumps = int((outcome == 3).sum()), int((outcome == 2).sum())
         return (lost, jumps, round(max(0.0, over.max()), 6), worst), moved
 

@@ -3,13 +3,17 @@
 Joint rates come from the Jacobian and the tool twist, not from differences of joint angles: beside a singularity those hide the peak.
 """
 
+import os
+from concurrent.futures import ThreadPoolExecutor
 from math import sqrt
 
 import numpy as np
 
 from .compiled import dense, helper, kernel
 from .linkage import place
-from .task import damped_step, eliminate, in_tool_axes, rotation_log, task_jacobian
+from .task import damped_step, factor, in_tool_axes, rotation_log, substitute, task_jacobian
+
+SHARED = 2000  # samples that are worth a thread of their own
 
 
 @helper
@@ -152,97 +156,6 @@ def twists(time, position, rotation):
 
 
 @helper
-def extreme_singular_values(jacobian, rows, n, work, d, e):
-    """Smallest and largest singular value of jacobian (rows, n) over min(rows, n), from the tridiagonal form of the Gram matrix.
-
-    Householder tridiagonalisation, then Laguerre steps on the characteristic polynomial from outside the spectrum, which converge from
-    one side and cubically (Wilkinson 1965, ch. 7). Squaring loses half the digits: the absolute error is about 1e-8 of the largest
-    value near zero, which the caller mends by `jacobi_smallest` where it matters.
-    """
-    size = min(rows, n)
-    trace = 0.0
-    for i in range(size):
-        for j in range(i + 1):
-            total = 0.0
-            if n >= rows:
-                for k in range(n):
-                    total += jacobian[i, k] * jacobian[j, k]
-            else:
-                for k in range(rows):
-                    total += jacobian[k, i] * jacobian[k, j]
-            work[i, j] = total
-            work[j, i] = total
-        trace += work[i, i]
-    if size == 1:
-        return sqrt(work[0, 0]), sqrt(work[0, 0])
-    for k in range(size - 2):
-        norm = 0.0
-        for i in range(k + 1, size):
-            norm += work[i, k] * work[i, k]
-        tail = norm - work[k + 1, k] * work[k + 1, k]
-        e[k] = work[k + 1, k]
-        if tail > 0.0:
-            alpha = -sqrt(norm) if work[k + 1, k] > 0.0 else sqrt(norm)
-            e[k] = alpha
-            # v = x - alpha e1, beta = 2 / v.v; v replaces the column
-            work[k + 1, k] -= alpha
-            beta = 2.0 / (tail + work[k + 1, k] * work[k + 1, k])
-            mean = 0.0
-            for i in range(k + 1, size):
-                total = 0.0
-                for j in range(k + 1, size):
-                    total += work[i, j] * work[j, k]
-                d[i] = beta * total
-                mean += d[i] * work[i, k]
-            mean *= 0.5 * beta
-            for i in range(k + 1, size):
-                d[i] -= mean * work[i, k]
-            for i in range(k + 1, size):
-                for j in range(k + 1, i + 1):
-                    work[i, j] -= work[i, k] * d[j] + d[i] * work[j, k]
-                    work[j, i] = work[i, j]
-    e[size - 2] = work[size - 1, size - 2]
-    high = 0.0
-    for i in range(size):
-        d[i] = work[i, i]
-    for i in range(size):
-        radius = (abs(e[i]) if i < size - 1 else 0.0) + (abs(e[i - 1]) if i > 0 else 0.0)
-        high = max(high, d[i] + radius)
-        if i < size - 1:
-            work[0, i] = e[i] * e[i]
-    low = laguerre(d, work[0], size, 0.0, -1.0, trace)
-    top = laguerre(d, work[0], size, min(high, trace) * (1.0 + 1e-15), 1.0, trace)
-    return sqrt(max(low, 0.0)), sqrt(top)
-
-
-@helper
-def laguerre(d, squares, size, x, side, scale):
-    """The root next to x of the tridiagonal's characteristic polynomial, from below (side -1) or above (side 1) the spectrum."""
-    for _ in range(60):
-        # p, p', p'' by the three-term recurrence, scaled so that nothing overflows (entries are of order one)
-        p0, p1 = 1.0, d[0] - x
-        g0, g1 = 0.0, -1.0
-        h0, h1 = 0.0, 0.0
-        for i in range(1, size):
-            a = d[i] - x
-            p2 = a * p1 - squares[i - 1] * p0
-            g2 = a * g1 - p1 - squares[i - 1] * g0
-            h2 = a * h1 - 2.0 * g1 - squares[i - 1] * h0
-            p0, p1, g0, g1, h0, h1 = p1, p2, g1, g2, h1, h2
-        if p1 == 0.0:
-            return x
-        g = g1 / p1
-        h = g * g - h1 / p1
-        inside = (size - 1.0) * (size * h - g * g)
-        root = sqrt(inside) if inside > 0.0 else 0.0
-        step = -size / (g - root if g < 0.0 else g + root)
-        x += step
-        if not abs(step) > 4e-16 * abs(x) + 1e-18 * scale or step * side > 0.0:
-            return x
-    return x
-
-
-@helper
 def jacobi_smallest(jacobian, rows, n, work):
     """Smallest singular value by one-sided Jacobi rotations (Hestenes 1958), to full relative accuracy; slow, for the few that need it."""
     wide = n >= rows
@@ -278,6 +191,89 @@ def jacobi_smallest(jacobian, rows, n, work):
             total += work[i, k] * work[i, k]
         smallest = min(smallest, sqrt(total))
     return smallest
+
+
+@helper
+def laguerre(d, squares, size, scale):
+    """The smallest eigenvalue, at least 0, of the tridiagonal matrix with diagonal d and squared off-diagonal `squares`."""
+    x = 0.0
+    for _ in range(60):
+        # p, p', p'' by the three-term recurrence (entries are of order one: nothing overflows)
+        p0, p1 = 1.0, d[0] - x
+        g0, g1 = 0.0, -1.0
+        h0, h1 = 0.0, 0.0
+        for i in range(1, size):
+            a, c = d[i] - x, squares[i - 1]
+            p2 = a * p1 - c * p0
+            g2 = a * g1 - p1 - c * g0
+            h2 = a * h1 - 2.0 * g1 - c * h0
+            p0, p1, g0, g1, h0, h1 = p1, p2, g1, g2, h1, h2
+        if p1 == 0.0:
+            return x
+        inside = (size - 1.0) * ((size - 1.0) * g1 * g1 - size * p1 * h1)
+        root = sqrt(inside) if inside > 0.0 else 0.0
+        step = -size * p1 / (g1 - root if g1 < 0.0 else g1 + root)
+        x += step
+        if not step > 4e-16 * x + 1e-18 * scale:
+            return x
+    return x
+
+
+@helper
+def smallest_singular_value(jacobian, rows, n, work, d, e):
+    """Smallest singular value of jacobian (rows, n), of min(rows, n), from the tridiagonal form of the Gram matrix.
+
+    Householder tridiagonalisation, then Laguerre steps on the characteristic polynomial from below the spectrum, which converge from
+    one side and cubically (Wilkinson 1965, ch. 7). Squaring costs half the digits beside zero; there one-sided Jacobi rotations take over.
+    """
+    size = min(rows, n)
+    trace = 0.0
+    for i in range(size):
+        for j in range(i + 1):
+            total = 0.0
+            if n >= rows:
+                for k in range(n):
+                    total += jacobian[i, k] * jacobian[j, k]
+            else:
+                for k in range(rows):
+                    total += jacobian[k, i] * jacobian[k, j]
+            work[i, j] = total
+            work[j, i] = total
+        trace += work[i, i]
+    if size == 1:
+        return sqrt(work[0, 0])
+    for k in range(size - 2):
+        norm = 0.0
+        for i in range(k + 1, size):
+            norm += work[i, k] * work[i, k]
+        tail = norm - work[k + 1, k] * work[k + 1, k]
+        e[k] = work[k + 1, k]
+        if tail > 0.0:
+            alpha = -sqrt(norm) if work[k + 1, k] > 0.0 else sqrt(norm)
+            e[k] = alpha
+            # v = x - alpha e1, beta = 2 / v.v; v replaces the column
+            work[k + 1, k] -= alpha
+            beta = 2.0 / (tail + work[k + 1, k] * work[k + 1, k])
+            mean = 0.0
+            for i in range(k + 1, size):
+                total = 0.0
+                for j in range(k + 1, size):
+                    total += work[i, j] * work[j, k]
+                d[i] = beta * total
+                mean += d[i] * work[i, k]
+            mean *= 0.5 * beta
+            for i in range(k + 1, size):
+                d[i] -= mean * work[i, k]
+            for i in range(k + 1, size):
+                for j in range(k + 1, i + 1):
+                    work[i, j] -= work[i, k] * d[j] + d[i] * work[j, k]
+                    work[j, i] = work[i, j]
+    e[size - 2] = work[size - 1, size - 2]
+    for i in range(size):
+        d[i] = work[i, i]
+        e[i] = e[i] * e[i]
+    low = sqrt(max(laguerre(d, e, size, trace), 0.0))
+    return low if low > 1e-4 * sqrt(trace) else jacobi_smallest(jacobian, rows, n, work)
 
 
 @helper
@@ -328,25 +324,22 @@ def smallest_share(jacobian, rows, n, speed, limit, work, null):
 
 
 @helper
-def match_rates(jacobian, demand, rows, n, low, guess, out, work, vector, step, right):
-    """Fill out (n,): the rates nearest to guess (n,) that give the demand; return the determinant of a square Jacobian, else 1.
+def match_rates(jacobian, demand, rows, n, low, regular, guess, out, work, order, vector, step, right):
+    """Fill out (n,): the rates nearest to guess (n,) that give the demand; regular: work and order hold the factors of the Jacobian.
 
     Where the Jacobian is square and regular the guess does not matter. On a singular place the direction that the Jacobian cannot
     tell is left as the guess has it.
     """
-    determinant = 1.0
-    if n == rows:
-        determinant, smallest = eliminate(jacobian, demand, n, work, out)
-        if low > 1e-6 and smallest > 0.0:
-            return determinant
+    if regular:
+        substitute(work, order, demand, n, out)
+        return
     for i in range(rows):
         right[i] = demand[i]
         for j in range(n):
             right[i] -= jacobian[i, j] * guess[j]
-    damped_step(jacobian, right, rows, n, 1e-12 if low < 1e-6 else 0.0, work, vector, step)
+    damped_step(jacobian, right, rows, n, 1e-10 if low < 1e-4 else 0.0, work, vector, step)
     for i in range(n):
         out[i] = guess[i] + step[i]
-    return determinant
 
 
 @helper
@@ -390,7 +383,6 @@ def coasting(prismatic, axes, origins, tool, speed, out):
             out[4] += by * s
             out[5] += bz * s
             wx, wy, wz = wx + ax * s, wy + ay * s, wz + az * s
-    return True
 
 
 @kernel(
@@ -401,38 +393,49 @@ def _rates(links, prismatic, length, rows, limit, joints, twist, twist_rate, slo
     n = prismatic.shape[0]
     wide = max(n, 7) + 1
     axes, origins, tool, jacobian = np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((rows, n))
-    work, vector, step = np.empty((wide, wide)), np.empty(wide), np.empty(n)
+    work, vector, step, order = np.empty((wide, wide)), np.empty(wide), np.empty(n), np.empty(wide)
     d, e, right, demand = np.empty(wide), np.empty(wide), np.empty(6), np.empty(6)
+    now, change, given, rate = np.empty(6), np.empty(n), np.empty(n), np.empty(n)
+    scale = 1.0 / length
     for k in range(joints.shape[0]):
         if not np.isfinite(joints[k, 0]):
             for i in range(n):
                 speed[k, i], acceleration[k, i] = np.nan, np.nan
-            for i in range(6):
+            for i in range(3):
                 measures[k, i] = np.nan
             continue
-        place(links, prismatic, joints[k], axes, origins, tool)
-        task_jacobian(prismatic, axes, origins, tool, rows, 1.0 / length, jacobian)
-        low, high = extreme_singular_values(jacobian, rows, n, work, d, e)
-        if low < 1e-4 * high:
-            low = jacobi_smallest(jacobian, rows, n, work)
-        in_tool_axes(twist[k], tool, 1.0 / length, demand)
-        determinant = match_rates(jacobian, demand, rows, n, low, slope[k], speed[k], work, vector, step, right)
-        in_tool_axes(twist_rate[k], tool, 1.0 / length, demand)
-        if coasting(prismatic, axes, origins, tool, speed[k], vector):
-            in_tool_axes(vector, tool, 1.0 / length, right)
-            for i in range(rows):
-                demand[i] -= right[i]
-        match_rates(jacobian, demand, rows, n, low, bend[k], acceleration[k], work, vector, step, right)
+        for i in range(n):
+            given[i] = joints[k, i]
+        place(links, prismatic, given, axes, origins, tool)
+        task_jacobian(prismatic, axes, origins, tool, rows, scale, jacobian)
+        low = smallest_singular_value(jacobian, rows, n, work, d, e)
+        regular = False
+        if n == rows and low > 1e-4:
+            _, smallest = factor(jacobian, n, work, order)
+            regular = smallest > 0.0
+        for i in range(6):
+            now[i] = twist[k, i]
+        for i in range(n):
+            given[i] = slope[k, i]
+        in_tool_axes(now, tool, scale, demand)
+        match_rates(jacobian, demand, rows, n, low, regular, given, rate, work, order, vector, step, right)
+        coasting(prismatic, axes, origins, tool, rate, now)
+        for i in range(6):
+            now[i] = twist_rate[k, i] - now[i]
+        for i in range(n):
+            given[i] = bend[k, i]
+        in_tool_axes(now, tool, scale, demand)
+        match_rates(jacobian, demand, rows, n, low, regular, given, change, work, order, vector, step, right)
         share = 0.0
         for i in range(n):
-            share = max(share, abs(speed[k, i]) / limit[i])
+            speed[k, i], acceleration[k, i] = rate[i], change[i]
+            share = max(share, abs(rate[i]) / limit[i])
         least = share
         if n == rows + 1 and share > 0.0:
-            found = smallest_share(jacobian, rows, n, speed[k], limit, work, vector)
+            found = smallest_share(jacobian, rows, n, rate, limit, work, vector)
             if found >= 0.0:
                 least = min(found, share)
-        measures[k, 0], measures[k, 1], measures[k, 2], measures[k, 3], measures[k, 4] = low, high, abs(determinant), share, least
-        measures[k, 5] = 1.0 if determinant > 0.0 else -1.0
+        measures[k, 0], measures[k, 1], measures[k, 2] = low, share, least
 
 
 def rates(chain, length, rows, limit, joints, twist, twist_rate, slope, bend):
@@ -440,14 +443,23 @@ def rates(chain, length, rows, limit, joints, twist, twist_rate, slope, bend):
 
     length in m scales the linear rows; limit (n,) joint speeds; twist and twist_rate (N, 6) of the tool in part axes; slope and bend
     (N, n) the followed joints' own first and second time derivatives, which decide only what the tool motion leaves open. Returns
-    speed, acceleration (N, n) and measures (N, 6): smallest and largest singular value of the scaled task Jacobian, |determinant|
-    (1 where not square), largest |speed| / limit, the least that this could be for the same tool motion, sign of the determinant.
+    speed, acceleration (N, n) and measures (N, 3): smallest singular value of the scaled task Jacobian, largest |speed| / limit, and
+    the least that this could be for the same tool motion. Long paths are shared out to the cores; each sample stands for itself, so
+    the result is the same to the last bit.
     """
-    flat = [dense(a) for a in (joints, twist, twist_rate, slope, bend)]
-    n, samples = chain.prismatic.shape[0], flat[0].shape[0]
-    speed, acceleration, measures = np.empty((samples, n)), np.empty((samples, n)), np.empty((samples, 6))
-    _rates(
-        dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows,
-        dense(limit), *flat, speed, acceleration, measures,
-    )  # fmt: skip
-    return speed, acceleration, measures
+    n, samples = chain.prismatic.shape[0], len(joints)
+    given = [dense(a) for a in (joints, twist, twist_rate, slope, bend)]
+    out = [np.empty((samples, n)), np.empty((samples, n)), np.empty((samples, 3))]
+    head = dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows, dense(limit)
+
+    def run(piece):
+        _rates(*head, *(a[piece] for a in given), *(a[piece] for a in out))
+
+    pieces = min(os.cpu_count() or 1, samples // SHARED)
+    if pieces < 2:
+        run(slice(None))
+    else:
+        cuts = np.linspace(0, samples, pieces + 1).astype(int)
+        with ThreadPoolExecutor(pieces) as pool:
+            list(pool.map(run, map(slice, cuts[:-1], cuts[1:])))
+    return tuple(out)

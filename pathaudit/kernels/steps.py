@@ -10,10 +10,11 @@ import numpy as np
 
 from .compiled import dense, helper, kernel
 from .linkage import place
-from .task import damped_step, eliminate, in_tool_axes, pose_error, rotation_log, task_jacobian
+from .task import damped_step, factor, in_tool_axes, pose_error, rotation_log, substitute, task_jacobian
 
 TOLERANCE = 1e-10  # of a solved pose, metres and radians: ten times tighter than what is promised
 RENEW = 32  # samples after which a step is taken even where the prediction hits, to renew the inverse and see the determinant
+CLEAR = 0.05  # smallest pivot of a Jacobian that is far enough from singular
 LOOSE = 1e-5  # of an arm with fewer joints than the task has rows, which can only come close to rounded poses
 REACHED, CROSSED, JUMPED, UNREACHED = 0, 1, 2, 3
 
@@ -56,22 +57,22 @@ def settle(
     links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, least, most,
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
 ):  # fmt: skip
-    """Steps on q (n,) in place towards one pose; returns (solved, sign of the determinant, metres left, radians left).
+    """Steps on q (n,) in place towards one pose; returns (solved, pivot, metres left, radians left).
 
     Plain Newton steps where the Jacobian is square and regular, damped ones elsewhere; no joint moves more than `limit` in a step.
     Guarded, a step that does not come closer is taken back and damped more (Levenberg-Marquardt), so that q ends at the pose or as
-    close to it as can be. Between `least` and `most` steps are taken. The sign is 0 where the Jacobian is near singular, not square or
-    not needed.
+    close to it as can be. Between `least` and `most` steps are taken. The pivot is the smallest one of the last Jacobian, with the sign
+    of the determinant: 0 where the Jacobian is singular, not square or not needed.
     """
     n = q.shape[0]
-    sign, damping, cost, best_far, best_turned, dull = 0.0, (1e-3 if guarded else 0.0), np.inf, np.inf, np.inf, 0
+    pivot, damping, cost, best_far, best_turned, dull = 0.0, (1e-3 if guarded else 0.0), np.inf, np.inf, np.inf, 0
     for turn in range(most + 1):
         place(links, prismatic, q, axes, origins, tool)
         far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
         if far < TOLERANCE and turned < TOLERANCE and turn >= least:
-            return True, sign, far, turned
+            return True, pivot, far, turned
         if n < rows and turn > 0 and far < LOOSE and turned < LOOSE and largest_of(step, n) < 1e-9:
-            return True, sign, far, turned
+            return True, pivot, far, turned
         now = (far * inverse_length) ** 2 + turned**2
         if guarded and not now < cost:
             copy(base, q, n)
@@ -82,15 +83,17 @@ def settle(
         else:
             dull = dull + 1 if now > 0.999999 * cost else 0
             if turn == most or dull > 5 or not far < 1e6:
-                return False, sign, far, turned
+                return False, pivot, far, turned
             cost, best_far, best_turned, damping = now, far, turned, 0.1 * damping
             copy(q, base, n)
             copy(error, kept, 6)
             task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian)
         within = False
         if n == rows and damping < 1e-6:
-            determinant, smallest = eliminate(jacobian, error, n, work, step)
-            sign = 0.0 if smallest < 1e-7 else (1.0 if determinant > 0.0 else -1.0)
+            determinant, smallest = factor(jacobian, n, work, vector)
+            if smallest > 0.0:
+                substitute(work, vector, error, n, step)
+            pivot = 0.0 if smallest < 1e-7 else (smallest if determinant > 0.0 else -smallest)
             within = smallest > 1e-6 and largest_of(step, n) < limit
         lift = damping if guarded or n != rows else 1e-8
         while not within and lift < 1e8:
@@ -100,7 +103,7 @@ def settle(
         for i in range(n):
             q[i] += step[i]
     copy(base, q, n)
-    return False, sign, best_far, best_turned
+    return False, pivot, best_far, best_turned
 
 
 @helper
@@ -157,7 +160,9 @@ def tangent(
     in_tool_axes(twist, tool, inverse_length, error)
     smallest = 0.0
     if n == rows:
-        _, smallest = eliminate(jacobian, error, n, work, step)
+        _, smallest = factor(jacobian, n, work, vector)
+        if smallest > 0.0:
+            substitute(work, vector, error, n, step)
     if smallest < 1e-3 and known >= 3:
         t0, t1, t2 = time[k - 3], time[k - 2], time[k - 1]
         a = (t2 - t1) / ((t0 - t1) * (t0 - t2))
@@ -200,7 +205,7 @@ def creep(
         )  # fmt: skip
         move = largest_move(trial, q)
         smooth = solved and move < 0.1 and largest_move(trial, ahead) < 0.3 * move + 1e-8
-        if smooth and (now == sign or now == 0.0 or sign == 0.0 or move < 2e-5):
+        if smooth and (now * sign >= 0.0 or move < 2e-5):
             for i in range(n):
                 slope[i] = (trial[i] - q[i]) / (goal - u)
             copy(trial, q, n)
@@ -263,11 +268,12 @@ def extrapolate(time, joints, k, count, even, weight, guess):
 
 
 @helper
-def invert(jacobian, n, work, right, column, inverse):
+def invert(jacobian, n, work, order, right, column, inverse):
+    factor(jacobian, n, work, order)
     for j in range(n):
         for i in range(n):
             right[i] = 1.0 if i == j else 0.0
-        eliminate(jacobian, right, n, work, column)
+        substitute(work, order, right, n, column)
         for i in range(n):
             inverse[i, j] = column[i]
 
@@ -293,7 +299,8 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
     copy(start, q, n)
     even = 0  # how many time steps before this sample were alike
     inverse, age = np.empty((n, n)), RENEW  # of the Jacobian some samples ago, and how many
-    sign, known = 0.0, 0  # known: how many samples just before this one were followed smoothly
+    clear = True  # beside a singular place an error of the pose grows in the joints: there every sample is solved to the last digit
+    sign, known = 0.0, 0  # known: how many samples just before this one were followed smoothly; sign: of the determinant
     for k in range(time.shape[0]):
         for i in range(3):
             goal_position[i] = position[k, i]
@@ -314,11 +321,11 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                     guess[i] += pull[i]
         copy(guess, here, n)
         solved, now, far, turned = settle(
-            links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, False, here, 1 if age >= RENEW or known < 5 or n != rows else 0, 8,
+            links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, False, here, 1 if age >= RENEW or known < 5 or n != rows or not clear else 0, 8,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         near = solved and largest_move(here, guess) < 0.05 and largest_move(here, q) < 0.5
-        same = now == sign or now == 0.0 or sign == 0.0
+        same = now * sign >= 0.0
         outcome[k] = REACHED
         if known == 0:
             followed = solved and k == 0  # after a gap there is nothing to be continuous with
@@ -328,7 +335,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             if n == rows and now == 0.0 and age < RENEW:
                 correct(inverse, error, here)
             elif now != 0.0 and age >= RENEW:
-                invert(jacobian, n, work, error, step, inverse)
+                invert(jacobian, n, work, vector, error, step, inverse)
                 age = 0
         else:
             copy(q, walked, n)
@@ -343,7 +350,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             )  # fmt: skip
             if followed:
                 copy(walked, here, n)
-                outcome[k] = CROSSED if arrived != sign and sign != 0.0 else REACHED
+                outcome[k] = CROSSED if arrived * sign < 0.0 else REACHED
                 now, known, far, turned = arrived, 0, 0.0, 0.0
             elif near:
                 followed, outcome[k], known = True, CROSSED, 0
@@ -361,7 +368,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                 known = 0
         left[k, 0], left[k, 1] = far, turned
         if now != 0.0:
-            sign = now
+            sign, clear = now, abs(now) > CLEAR
         for i in range(n):
             joints[k, i] = q[i] = here[i]
         known += 1

@@ -95,40 +95,49 @@ def task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian
 
 
 @helper
-def eliminate(jacobian, right, n, work, out):
-    """Solve the square system by Gaussian elimination with partial pivoting; return the signed determinant and the smallest pivot."""
+def factor(jacobian, n, work, order):
+    """LU factors of the square jacobian in work (n, n), rows exchanged as order (n,) tells; return the determinant and the smallest pivot."""
     for i in range(n):
         for j in range(n):
             work[i, j] = jacobian[i, j]
-        out[i] = right[i]
     determinant, smallest = 1.0, 1e300
     for k in range(n):
         p, largest = k, abs(work[k, k])
         for i in range(k + 1, n):
             if abs(work[i, k]) > largest:
                 p, largest = i, abs(work[i, k])
+        order[k] = p
         if largest == 0.0:
             return 0.0, 0.0
-        if largest < smallest:
-            smallest = largest
+        smallest = min(smallest, largest)
         if p != k:
             determinant = -determinant
-            out[k], out[p] = out[p], out[k]
-            for j in range(k, n):
+            for j in range(n):
                 work[k, j], work[p, j] = work[p, j], work[k, j]
         determinant *= work[k, k]
         inverse = 1.0 / work[k, k]
         for i in range(k + 1, n):
-            factor = work[i, k] * inverse
+            work[i, k] *= inverse
             for j in range(k + 1, n):
-                work[i, j] -= factor * work[k, j]
-            out[i] -= factor * out[k]
-    for k in range(n - 1, -1, -1):
-        total = out[k]
-        for j in range(k + 1, n):
-            total -= work[k, j] * out[j]
-        out[k] = total / work[k, k]
+                work[i, j] -= work[i, k] * work[k, j]
     return determinant, smallest
+
+
+@helper
+def substitute(work, order, right, n, out):
+    """Fill out (n,) with the solution for the right side, from the factors."""
+    for i in range(n):
+        out[i] = right[i]
+    for k in range(n):
+        p = int(order[k])
+        out[k], out[p] = out[p], out[k]
+    for k in range(n):
+        for j in range(k):
+            out[k] -= work[k, j] * out[j]
+    for k in range(n - 1, -1, -1):
+        for j in range(k + 1, n):
+            out[k] -= work[k, j] * out[j]
+        out[k] /= work[k, k]
 
 
 @helper

@@ -94,11 +94,11 @@ def measuring(samples=20_000):
     sigma = np.linalg.svd(jacobians, compute_uv=False)
     speeds = np.linalg.solve(jacobians, np.concatenate([twist[:, :3] / length, twist[:, 3:]], axis=1)[..., None])[..., 0]
     measures = own()[2]
-    assert np.allclose(measures[:, 0], sigma[:, -1], rtol=1e-8) and np.allclose(measures[:, 3], np.max(np.abs(speeds) / cell.arm.speed, axis=1))
+    assert np.allclose(measures[:, 0], sigma[:, -1], rtol=1e-8) and np.allclose(measures[:, -1], np.max(np.abs(speeds) / cell.arm.speed, axis=1))
     times = side_by_side(own, lambda: np.linalg.svd(jacobians))
     values = seconds(lambda: np.linalg.svd(jacobians, compute_uv=False)) / samples
     note = (
-        "kinematics, joint rates and accelerations included; reference: numpy.linalg.svd of the finished Jacobians, "
+        "kinematics, joint rates and accelerations included, samples shared by the cores; reference: numpy.linalg.svd of the finished Jacobians, "
         f"from which both follow ({1e6 * values:.2f} us for the values alone)"
     )
     return Row("sigma_min and exact directional limit, per sample", *(t / samples for t in times), ">= 10", note)

@@ -54,6 +54,22 @@ def test_great_circle_peak_rate_and_time_over_the_limit():
     assert finding.value == pytest.approx(859.611250, abs=1e-5)
 
 
+def test_great_circle_retimed_in_closed_form():
+    """KIN-021 without acceleration limits: an even factor is limit / peak; slowing locally takes the swing over the limit in between."""
+    given = inputs("KIN-021")
+    speed = [*FAST[:3], given["limit_deg_s"], *FAST[4:]]
+    audit = great_circle(given["delta_deg"], given["omega_deg_s"], np.linspace(-0.3, 0.3, 6001), speed)
+    even, local = audit.retime("even"), audit.retime("local")
+    assert even.slowest == pytest.approx(360.0 / 859.6112504, rel=2e-6) and np.ptp(even.factor) < 1e-12
+    edge = np.radians(given["omega_deg_s"] * 0.15718192640 / 2.0)
+    swing_deg = 2.0 * np.degrees(np.arctan2(np.tan(edge), np.sin(np.radians(given["delta_deg"]))))
+    assert local.duration == pytest.approx(0.6 - 0.15718192640 + swing_deg / 360.0, rel=1e-5)
+    for retiming in (even, local):
+        again = retiming.audit()
+        assert retiming.feasible and again.rates.speed_share.max() <= 1 + 1e-6
+        assert all(finding.severity == "warn" for finding in of_kind(again, "joint speed"))
+
+
 def test_great_circle_swings_the_wrist_by_half_a_turn():
     given = inputs("KIN-022")
     audit = great_circle(given["delta_deg"], given["omega_deg_s"], np.linspace(-3.0, 3.0, 3001))

@@ -5,6 +5,7 @@ Exit status: 0 nothing fails; 1 a finding fails; 2 something given cannot be use
 
 import argparse
 import os
+import shlex
 import sys
 
 from . import __version__
@@ -145,16 +146,17 @@ def _demo(folder):
 
     from .report.files import write_whole
 
-    source = files("pathaudit") / "demo"
-    contents = {item.name: item.read_bytes() for item in source.iterdir() if item.is_file() and not item.name.startswith((".", "__"))}
-    for name in sorted(contents):
-        if os.path.lexists(os.path.join(folder, name)):
-            raise WriteError(os.path.join(folder, name), "it exists already, and nothing is overwritten")
+    items = sorted((files("pathaudit") / "demo").iterdir(), key=lambda item: item.name)
+    contents = {os.path.join(folder, item.name): item.read_bytes() for item in items if item.is_file() and item.name[0] not in "._"}
+    for file in contents:
+        if os.path.lexists(file):
+            raise WriteError(file, "it exists already, and nothing is overwritten")
     try:
         os.makedirs(folder, exist_ok=True)
     except OSError as error:
         raise WriteError(folder, error.strerror or error) from None
-    for name in sorted(contents):
-        write_whole(os.path.join(folder, name), contents[name])
-        _say(os.path.join(folder, name) + "\n", sys.stdout)
+    for file, content in contents.items():
+        write_whole(file, content)
+    path, cell = (shlex.quote(os.path.join(folder, name)) for name in ("seam.csv", "cell.toml"))
+    _say("".join(f"{file}\n" for file in contents) + f"\nNow: pathaudit check {path} --cell {cell}\n", sys.stdout)
     return 0

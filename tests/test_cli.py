@@ -3,6 +3,7 @@
 import csv
 import json
 import os
+import shlex
 import signal
 import subprocess
 import sys
@@ -280,15 +281,17 @@ def test_an_interrupt_is_quiet(bench):
     assert (waiting.returncode, out, err) == (130, b"", b"")
 
 
-def test_the_demo_is_written_and_never_overwrites(tmp_path, capfd):
-    folder = tmp_path / "new" / "cell"
+def test_the_demo_is_written_runs_as_it_says_and_is_never_overwritten(tmp_path, capfd):
+    folder = tmp_path / "a new" / "cell"
     assert cli.main(["demo", str(folder)]) == 0
+    *listed, _, hint = capfd.readouterr().out.splitlines()
     names = sorted(os.listdir(folder))
-    assert {".toml", ".csv"} <= {os.path.splitext(name)[1] for name in names}
-    assert all(name in capfd.readouterr().out for name in names[:1])
+    assert listed == [str(folder / name) for name in names]
+    program, *arguments = shlex.split(hint.removeprefix("Now: "))
+    assert program == "pathaudit" and cli.main(arguments) in (0, 1)
+    capfd.readouterr()
     before = {name: (folder / name).read_bytes() for name in names}
-    message = one_line(capfd, "demo", folder)
-    assert "it exists already, and nothing is overwritten" in message
+    assert "it exists already, and nothing is overwritten" in one_line(capfd, "demo", folder)
     (folder / names[-1]).unlink()
     one_line(capfd, "demo", folder)
     assert {name: (folder / name).read_bytes() for name in os.listdir(folder)} == {name: before[name] for name in names[:-1]}

@@ -2,7 +2,8 @@
 
 import numpy as np
 
-from .drawn_rows import nice_step, thinned
+from .drawn_rows import thinned
+from .rows import nice_step
 from .surfaces import FAINT, GREEN, GROUND, INK, LINE, SEVERITY, SOFT, TUBE
 
 

@@ -2,6 +2,7 @@
 
 import numpy as np
 
+from .rows import nice_step
 from .surfaces import FAINT, GROUND, INK, LANE, LINE, QUIET, SEVERITY, SOFT
 
 HEAD, GAP, BLOCK, AXIS, LEFT, RIGHT = 17, 7, 17, 26, 70, 10
@@ -12,7 +13,7 @@ class Places:
 
     def __init__(self, facts, width, top=0):
         self.left, self.plot = LEFT, width - LEFT - RIGHT
-        self.duration = facts["duration_s"] or 1.0
+        self.duration, self.offset = facts["duration_s"] or 1.0, facts["offset_s"]
         self.strip = top + 14
         self.blocks, levels = self._stack(facts["findings"])
         y = self.strip + (BLOCK + 2) * max(1, levels) + 17
@@ -174,15 +175,9 @@ def thinned(x, y, tolerance=0.3):
 def _draw_axis(surface, places):
     step = nice_step(places.duration, places.plot / 80)
     digits = max(0, -int(np.floor(np.log10(step) + 1e-9)))
-    for k in range(int(places.duration / step * 1.0001) + 1):
-        x = float(places.x(k * step))
+    first, last = places.offset / step, (places.offset + places.duration) / step
+    for k in range(int(np.ceil(first - 1e-4)), int(np.floor(last + 1e-4)) + 1):
+        x = float(places.x(k * step - places.offset))
         surface.line([(x, places.axis), (x, places.axis + 4)], SOFT)
         surface.text(x, places.axis + 13, f"{k * step:.{digits}f}", align="centre")
     surface.text(places.left - 8, places.axis + 13, "time, s", align="right")
-
-
-def nice_step(span, wanted):
-    """A round step, 1, 2 or 5 times a power of ten, that cuts span into about `wanted` pieces."""
-    rough = span / max(1.0, wanted) or 1.0
-    power = 10.0 ** np.floor(np.log10(rough))
-    return float(next(k * power for k in (1, 2, 5, 10) if k * power >= 0.999 * rough))

@@ -8,7 +8,7 @@ from pathlib import PurePath
 
 import numpy as np
 
-from .scene import significant, worst_text
+from .scene import clock_offset, significant, worst_text
 
 _LEFT = "text-align:left;vertical-align:top;padding:3px 14px 3px 0"
 _NUMBER = _LEFT + ";white-space:nowrap;font-variant-numeric:tabular-nums"
@@ -31,11 +31,11 @@ _THRESHOLDS = {      # name in [thresholds]: (what it is, unit)
 
 
 def table(head, rows, styles=()):
-    """An HTML table of plain text cells; `styles` gives a column its style."""
-    style = [*styles, *[_LEFT] * (len(head) - len(styles))]
-    first = "".join(f'<th style="{_LEFT};font-weight:normal">{escape(name)}</th>' for name in head)
+    """An HTML table of plain text cells; `styles` gives a column its style; no head where it is empty."""
+    style = [*styles, *[_LEFT] * len(head or rows[0])]
+    first = "<tr>" + "".join(f'<th style="{_LEFT};font-weight:normal">{escape(name)}</th>' for name in head) + "</tr>" if head else ""
     body = "".join("<tr>" + "".join(f'<td style="{s}">{_cell(cell)}</td>' for s, cell in zip(style, row)) + "</tr>" for row in rows)
-    return f'<table style="border-collapse:collapse;text-align:left"><tr>{first}</tr>{body}</table>'
+    return f'<table style="border-collapse:collapse;text-align:left">{first}{body}</table>'
 
 
 def _cell(value):
@@ -49,9 +49,9 @@ def verdict_line(audit):
 
 
 def findings_table(audit):
-    start = audit.time[0]
+    back = audit.time[0] - clock_offset(audit)
     rows = [(str(k), _SEVERITY.get(f.severity, f.severity), f"{f.kind}, {f.joint}" if f.joint else f.kind,
-             f"{f.t_start - start:.2f} - {f.t_end - start:.2f}", f"{f.from_mm:.0f} - {f.to_mm:.0f}", worst_text(f), f.why)
+             f"{f.t_start - back:.2f} - {f.t_end - back:.2f}", f"{f.from_mm:.0f} - {f.to_mm:.0f}", worst_text(f), f.why)
             for k, f in enumerate(audit.finding_list, 1)]
     if not rows:
         return "<p>No findings.</p>"
@@ -61,22 +61,23 @@ def findings_table(audit):
 
 def retiming_table(audit):
     again = audit.suggestion
-    if not again.feasible:
-        return f"<p>No retiming helps: {escape(again.why)}</p>"
+    if not again.feasible or again.slowest > 0.9995:
+        return f"<p>{escape(again.why)}</p>"
     rows = [("duration as programmed", f"{audit.path.duration:.3f} s"), ("duration retimed", f"{again.duration:.3f} s"),
             ("slowest place", f"{100 * again.slowest:.1f} % of the programmed speed"), ("kind", again.style), ("why", again.why)]
-    return table(("suggested retiming", ""), rows, (_LEFT, _LEFT))
+    return table((), rows, (_SHORT, _LEFT))
 
 
-# JupyterLab says so where it has no live widget for the first of our three outputs; the picture and the tables behind it say more.
-_HIDE_MISSING = ("<style>.jp-OutputArea-child:has(+ .jp-OutputArea-child + .jp-OutputArea-child .pathaudit-tables) "
-                 "> .jupyter-widgets:not(:has(.pa)) { display: none; }</style>")
+# Without its kernel JupyterLab says in the first of our three outputs that it has no widget: the other two say more. The picture keeps to the width.
+_STILL_STYLE = ("<style>.jp-OutputArea-child:has(+ .jp-OutputArea-child + .jp-OutputArea-child .pathaudit-tables) "
+                "> .jupyter-widgets:not(:has(.pa)) { display: none; } "
+                ".jp-OutputArea-child:has(+ .jp-OutputArea-child .pathaudit-tables) .jp-RenderedSVG > img { max-width: 100%; }</style>")
 
 
 def still_tables(audit):
     """The tables of the notebook's still form; the class marks them for the live timeline, which hides them."""
-    again = "" if audit.verdict == "pass" else retiming_table(audit)
-    return f'<div class="pathaudit-tables">{_HIDE_MISSING}{verdict_line(audit)}{findings_table(audit)}{again}{inputs_table(audit)}{cautions_list(audit)}</div>'
+    return (f'<div class="pathaudit-tables">{_STILL_STYLE}{verdict_line(audit)}{findings_table(audit)}<p><b>Suggested retiming</b></p>'
+            f"{retiming_table(audit)}<p><b>What was given</b></p>{inputs_table(audit)}{cautions_list(audit)}</div>")
 
 
 def inputs_table(audit):
@@ -103,7 +104,7 @@ def thresholds_table(audit):
     values = [(words, significant(getattr(thresholds, name)), unit) for name, (words, unit) in _THRESHOLDS.items()]
     rows = [(words, f"{value} {unit}" if value else "not used") for words, value, unit in values]
     rows.append(("characteristic length of the scaled Jacobian", f"{1e3 * audit.cell.characteristic_length:.0f} mm"))
-    return table(("threshold", ""), rows, (_LEFT, _NUMBER))
+    return table((), rows, (_LEFT, _NUMBER))
 
 
 def not_judged_table(audit):

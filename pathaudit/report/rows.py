@@ -64,7 +64,9 @@ def _speed_row(thresholds, speed):
     bounds = () if ceiling is None else ((float(ceiling), "fail"),)
     if ceiling is not None:
         high = max(high, 1.1 * ceiling)
-    ticks = tuple((value, f"{value:g}") for value in (0.0, _round_number(high / 1.6))) if ceiling is None else ((0.0, "0"), (ceiling, f"limit {ceiling:g}"))
+    ticks = tuple((value, f"{value:g}") for value in np.arange(0.0, high, nice_step(high, 3)).tolist())
+    if ceiling is not None:
+        ticks = (0.0, "0"), (float(ceiling), f"limit {ceiling:g}")
     return Row("tool speed", "mm/s", (("speed_limit_mm_s", 0, "ceiling"), ("speed_mm_s", 0, "main")), 0.0, float(high), 72, bounds,
                digits=1, head="Tool speed, mm/s (dashed: the most the joints allow)", ticks=ticks)
 
@@ -75,10 +77,11 @@ def _factor_row(applied):
                head=f"{what}, percent of programmed speed", ticks=((0.0, "0"), (100.0, "100")))
 
 
-def _round_number(value):
-    """The largest 1, 2 or 5 times a power of ten that is not above value."""
-    power = 10.0 ** np.floor(np.log10(value))
-    return float(max(k * power for k in (1, 2, 5) if k * power <= value * (1 + 1e-9)))
+def nice_step(span, wanted):
+    """A round step, 1, 2 or 5 times a power of ten, that cuts span into about `wanted` pieces."""
+    rough = span / max(1.0, wanted) or 1.0
+    power = 10.0 ** np.floor(np.log10(rough))
+    return float(next(k * power for k in (1, 2, 5, 10) if k * power >= 0.999 * rough))
 
 
 def _most(values, default):

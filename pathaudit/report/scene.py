@@ -15,6 +15,7 @@ from .thinning import kept_samples, runs, spans
 
 MOST_SAMPLES = 5000
 _FINEST = 2000           # stretches nearer to each other than duration / this are drawn as one
+_LATEST_START = 1e5      # s; a start beyond is a clock's date, and times are written from the first sample on
 _EXACT = ("sample", "time_s")
 _ROUNDING = 10           # trailing mantissa bits dropped from everything else: 6e-5 of the value, far below a pixel
 
@@ -95,7 +96,7 @@ def _facts(audit, arrays, again, is_applied):
     time, gap = audit.time - audit.time[0], path.duration / _FINEST
     return {
         "name": cell.name, "file": PurePath(path.file).name, "verdict": audit.verdict,
-        "samples": int(path.samples), "shown": len(arrays["sample"]), "start_s": float(audit.time[0]),
+        "samples": int(path.samples), "shown": len(arrays["sample"]), "offset_s": clock_offset(audit),
         "duration_s": float(path.duration), "length_mm": 1e3 * float(path.length), "joints": list(names),
         "rows": [row.as_dict() for row in rows_of(names, cell.thresholds, arrays, is_applied)],
         "findings": [_finding(k, f, audit, arrays, names) for k, f in enumerate(audit.finding_list, 1)],
@@ -112,6 +113,12 @@ def _finding(number, finding, audit, arrays, names):
         "from_mm": float(finding.from_mm), "to_mm": float(finding.to_mm), "worst": worst_text(finding), "why": finding.why,
         "at": int(np.abs(arrays["sample"] - finding.worst).argmin()), "row": row_index(finding, names),
     }
+
+
+def clock_offset(audit):
+    """What is added to times after the first sample before they are written: the path's own start, but not a clock's date."""
+    start = float(audit.time[0])
+    return start if abs(start) < _LATEST_START else 0.0
 
 
 def worst_text(finding):

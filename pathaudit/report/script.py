@@ -1,6 +1,9 @@
 """The timeline's ES modules as one string: what the widget and the one-page report both run."""
 
+import base64
+import hashlib
 import re
+import zlib
 from functools import cache
 from importlib.resources import files
 
@@ -15,6 +18,29 @@ def joined_modules():
     """One ES module whose default export has `render`. The modules keep their names apart, so that joining is leaving out import and export."""
     texts = (_EXPORT.sub("", _IMPORT.sub("", _read(f"{name}.js"))) for name in MODULES)
     return "\n".join(texts)
+
+
+@cache
+def shared_module():
+    """A small module that loads the joined one once in a page, however many timelines are made there.
+
+    A browser never lets an imported module go, so each run of a cell would otherwise keep a copy of it.
+    """
+    source = joined_modules().encode()
+    packed = base64.b64encode(zlib.compress(source, 9)).decode()
+    return _SHARED % {"name": f"pathaudit {hashlib.sha256(source).hexdigest()[:16]}", "packed": packed}
+
+
+_SHARED = """const load = async () => {
+  const packed = Uint8Array.from(atob("%(packed)s"), (c) => c.charCodeAt(0));
+  const inflated = new Blob([packed]).stream().pipeThrough(new DecompressionStream("deflate"));
+  const url = URL.createObjectURL(new Blob([await new Response(inflated).arrayBuffer()], { type: "text/javascript" }));
+  try { return (await import(url)).default; } finally { URL.revokeObjectURL(url); }
+};
+const name = Symbol.for("%(name)s");
+const shared = (globalThis[name] ??= load().catch((error) => { delete globalThis[name]; throw error; }));
+export default { render: async (context) => (await shared).render(context) };
+"""
 
 
 @cache

@@ -30,7 +30,7 @@ export function layOut(facts, width) {
     y += row.height + 2;
     return place;
   });
-  return { left, plot, width, height: y + AXIS, duration, x, strip, blocks, process, rows, axis: y + 2,
+  return { left, plot, width, height: y + AXIS, duration, offset: facts.offset_s, x, strip, blocks, process, rows, axis: y + 2,
            time: (px) => clamp((px - left) / plot, 0, 1) * duration };
 }
 
@@ -269,13 +269,13 @@ export function trace(context, place, time, values, toY) {
 }
 
 function drawAxis(context, place, colours) {
-  const { left, plot, axis, duration } = place;
+  const { plot, axis, duration, offset } = place;
   const step = niceStep(duration, plot / 80);
   const digits = Math.max(0, -Math.floor(Math.log10(step) + 1e-9));
   context.strokeStyle = colours.soft;
   context.beginPath();
-  for (let k = 0; k * step <= duration * 1.0001; k++) {
-    const x = Math.round(place.x(k * step)) + 0.5;
+  for (let k = Math.ceil(offset / step - 1e-4); k * step <= offset + duration + 1e-4 * step; k++) {
+    const x = Math.round(place.x(k * step - offset)) + 0.5;
     context.moveTo(x, axis);
     context.lineTo(x, axis + 4);
     text(context, fixed(k * step, digits), x, axis + 13, { colour: colours.soft, align: "center", family: colours.font });

@@ -7,8 +7,9 @@ import traitlets
 
 from ..report.html_tables import still_tables
 from ..report.scene import scene
-from ..report.script import joined_modules, style_sheet
+from ..report.script import shared_module, style_sheet
 from ..report.still import png_picture, svg_picture
+from ..report.text import summary
 from .session import Session
 
 
@@ -18,7 +19,7 @@ class Timeline(anywidget.AnyWidget):
     facts and block are one Scene (report/scene.py): what is said once, and the columns packed. status: one sentence, shown when not empty.
     """
 
-    _esm = joined_modules()
+    _esm = shared_module()
     _css = style_sheet()
     facts = traitlets.Dict().tag(sync=True)
     block = traitlets.Bytes().tag(sync=True)
@@ -80,7 +81,7 @@ def show(audit):
 
     shell = get_ipython()
     if shell is None or not hasattr(shell, "kernel"):
-        display({"text/plain": _line(audit)}, raw=True)
+        display({"text/plain": summary(audit)}, raw=True)
         return
     shown = scene(audit)
     timeline = Timeline(audit, shown)
@@ -104,7 +105,7 @@ def still_form(audit, shown=None):
     shown = shown or scene(audit)
     picture = {"image/svg+xml": svg_picture(shown), "image/png": base64.b64encode(png_picture(shown)).decode(),
                "text/plain": "(picture of the timeline)"}
-    return picture, {"text/html": still_tables(audit), "text/plain": "(tables of the findings)"}
+    return picture, {"text/html": still_tables(audit), "text/plain": summary(audit)}
 
 
 _ON_SHOW = {}      # cell id -> (execution, timelines): the only way to let the old ones go when a cell is run again

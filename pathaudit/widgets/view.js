@@ -81,7 +81,7 @@ export function mount(root, onCursor, askRetimed) {
   function readOut() {
     const { facts, data, i } = state;
     const time = data.time_s[0][i], worst = worstJoint(data, i), reserve = data.reserve[0][i];
-    const values = [fixed(time, 3), fixed(data.distance_mm[0][i], 1), fixed(data.speed_mm_s[0][i], 1),
+    const values = [fixed(facts.offset_s + time, 3), fixed(data.distance_mm[0][i], 1), fixed(data.speed_mm_s[0][i], 1),
                     worst ? `${facts.joints[worst[0]]} ${worst[1].toFixed(0)} %` : "–",
                     reserve === Infinity ? "at rest" : reserve > 99 ? "> 99" : fixed(reserve, 2), fixed(data.sigma_min[0][i], 3)];
     values.forEach((value, k) => { if (parts.values[k].textContent !== value) parts.values[k].textContent = value; });
@@ -168,6 +168,15 @@ export function mount(root, onCursor, askRetimed) {
     event.stopPropagation();
   }
 
+  // Whoever still holds this view after its end holds no data and no canvas.
+  function close() {
+    watch.disconnect();
+    cancelAnimationFrame(state.frame);
+    root.replaceChildren();
+    for (const name of Object.keys(state)) state[name] = null;
+    for (const name of Object.keys(parts)) delete parts[name];
+  }
+
   parts.rows.addEventListener("keydown", onKey);
   for (const type of ["pointerdown", "pointermove"]) {
     parts.rows.addEventListener(type, onScrub);
@@ -183,7 +192,7 @@ export function mount(root, onCursor, askRetimed) {
   return {
     show, say: (words) => { parts.status.textContent = words; },
     toSample: (sample) => state.data && moveTo(nearest(state.data.sample[0], sample), -1, true),
-    close: () => { watch.disconnect(); cancelAnimationFrame(state.frame); },
+    close,
   };
 }
 
@@ -220,11 +229,9 @@ function fillHead(head, facts, askRetimed) {
   const said = [facts.file, `${facts.samples.toLocaleString("en")} samples`, `${fixed(facts.duration_s, 2)} s`, `${fixed(facts.length_mm, 0)} mm`];
   if (facts.shown < facts.samples) said.push(`${facts.shown.toLocaleString("en")} drawn, every peak kept`);
   const needed = again.feasible && again.slowest_percent < 99.95;
-  const slowest = `slowest ${fixed(again.slowest_percent, 0)} % of the programmed speed`;
-  const retiming = again.applied ? `Shown as retimed (${again.style}): ${slowest}.`
-    : !again.feasible ? `No retiming helps: ${again.why}`
-    : !needed ? "No retiming needed."
-    : `Suggested retiming (${again.style}): ${fixed(again.duration_s, 2)} s, ${slowest}. ${again.why}`;
+  const retiming = again.applied
+    ? `Shown with the suggested retiming (${again.style}), slowest ${fixed(again.slowest_percent, 0)} % of the programmed speed.`
+    : needed ? `Suggested retiming: ${again.why}` : again.why;
   head.replaceChildren(element("span", { class: "pa-verdict" }, element("i", { class: `pa-swatch pa-${facts.verdict}` }), facts.verdict),
     element("b", {}, facts.name), element("span", {}, said.join(" · ")), element("p", {}, retiming));
   if (!askRetimed || !(needed || again.applied)) return;
@@ -238,7 +245,7 @@ function fillFindings(body, facts, choose) {
   const range = (a, b, digits) => `${fixed(a, digits)} – ${fixed(b, digits)}`;
   body.replaceChildren(...facts.findings.map((f, k) => {
     const row = focusable("tr", { "aria-selected": "false" }, cell(String(f.number), "pa-number"), cell(severityMark(f.severity)),
-      cell(f.joint ? `${f.kind}, ${f.joint}` : f.kind), cell(range(f.from_s, f.to_s, 2), "pa-number"),
+      cell(f.joint ? `${f.kind}, ${f.joint}` : f.kind), cell(range(facts.offset_s + f.from_s, facts.offset_s + f.to_s, 2), "pa-number"),
       cell(range(f.from_mm ?? NaN, f.to_mm ?? NaN, 0), "pa-number"), cell(f.worst), cell(f.why, "pa-why"));
     row.addEventListener("click", () => choose(k));
     row.addEventListener("keydown", (event) => {

@@ -33,6 +33,7 @@ async function render({ model, el }) {
   await refresh();
   return () => {
     clearTimeout(timer);
+    shown = -1;
     model.off("change:block", refresh);
     model.off("change:status", status);
     model.off("change:cursor", cursor);

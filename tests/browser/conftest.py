@@ -43,7 +43,7 @@ class Watched:
         self.faults = []
         self.context.route("**/*", self._let)
         self.page = self.context.new_page()
-        self.page.on("pageerror", lambda error: self.faults.append(f"page error: {error}"))
+        self.page.on("pageerror", lambda error: self.faults.append(f"page error: {error.stack}"))
         self.page.on("console", lambda message: message.type == "error" and self.faults.append(f"console: {message.text}"))
 
     def _let(self, route):
@@ -91,6 +91,8 @@ class Lab:
         settings.mkdir(parents=True)
         (settings / "notification.jupyterlab-settings").write_text(
             json.dumps({"fetchNews": "false", "checkForUpdates": False, "doNotDisturbMode": True}))
+        (folder / "config" / "labconfig").mkdir()      # the debugger complains in the console whenever a notebook closes early
+        (folder / "config" / "labconfig" / "page_config.json").write_text(json.dumps({"disabledExtensions": {"@jupyterlab/debugger-extension": True}}))
         self.log = open(folder / "server.log", "w")
         self.process = subprocess.Popen(
             [sys.executable, "-m", "jupyter", "lab", "--no-browser", "--allow-root", "--ip=127.0.0.1", f"--port={self.port}",
@@ -120,7 +122,7 @@ class Lab:
 
     def write(self, name, *sources):
         """A notebook of code cells."""
-        cells = [{"cell_type": "code", "id": f"cell{k}", "metadata": {}, "execution_count": None, "outputs": [], "source": source}
+        cells = [{"cell_type": "code", "id": f"{Path(name).stem}-{k}", "metadata": {}, "execution_count": None, "outputs": [], "source": source}
                  for k, source in enumerate(sources)]
         kernel = {"kernelspec": {"name": "python3", "display_name": "Python 3", "language": "python"}}
         (self.root / name).write_text(json.dumps({"cells": cells, "metadata": kernel, "nbformat": 4, "nbformat_minor": 5}))
@@ -129,7 +131,18 @@ class Lab:
         return json.loads((self.root / name).read_text())
 
     def open(self, page, name, kernel=True):
-        page.goto(f"http://127.0.0.1:{self.port}/lab/tree/{name}?token={self.token}&reset")
+        """Open a notebook; in a page that shows the Lab already, in place of the notebook there and with its kernel (quicker by far)."""
+        if page.url.startswith("http"):
+            page.evaluate("""async (path) => {
+                const before = jupyterapp.shell.currentWidget;
+                const kernel = before.sessionContext.session.kernel.model;
+                await before.context.save();
+                const opened = await jupyterapp.commands.execute('docmanager:open', { path, kernel });
+                await opened.context.ready;
+                before.dispose();
+            }""", name)
+        else:
+            page.goto(f"http://127.0.0.1:{self.port}/lab/tree/{name}?token={self.token}&reset")
         page.wait_for_selector(".jp-NotebookPanel .jp-Notebook .jp-Cell", timeout=30000)
         if kernel:
             self.wait_for_kernel(page)
@@ -160,6 +173,14 @@ def _free_port():
     with socket.socket() as probe:
         probe.bind(("127.0.0.1", 0))
         return probe.getsockname()[1]
+
+
+@pytest.fixture(scope="session")
+def desk(chromium):
+    """One page for all tests in the Lab: opening the Lab takes longest."""
+    page = Watched(chromium)
+    yield page
+    page.close()
 
 
 @pytest.fixture(scope="session")

@@ -113,7 +113,7 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0):
                            distance=distance, length=float(distance[-1]), file="seam.csv", sha256="b" * 64, spin_free=False,
                            rotation=poses[:, :3, :3], label=("",) * samples, columns=(), cells=())
     retiming = SimpleNamespace(time=np.cumsum(np.r_[0, np.diff(time) / factor[1:]]), factor=factor, style="local", feasible=True,
-                               why="joint 4 sets the pace beside the wrist singularity", slowest=float(factor.min()),
+                               why="Slows 130 mm of the path, down to 65 % of programmed at 7.00 s.", slowest=float(factor.min()),
                                duration=float(np.sum(np.diff(time) / factor[1:])), binding=("",) * samples,
                                audit=lambda: fake_audit(samples, n, 1.3 * duration, gap, seed))
     rates = SimpleNamespace(speed_share=share, sigma_min=sigma, tool_speed=tool_speed, tool_speed_limit=tool_speed / worst, reserve=1 / worst)

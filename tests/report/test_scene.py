@@ -1,0 +1,140 @@
+"""What is sent to a picture: kept samples, joint points, packing, plain values."""
+
+import json
+import zlib
+
+import numpy as np
+import pytest
+from fake_audit import fake_audit
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+import pathaudit as pa
+from pathaudit.report.scene import MOST_SAMPLES, scene, significant
+from pathaudit.report.skeleton import joint_points
+from pathaudit.report.thinning import kept_samples, spans
+
+
+def unpacked(block, layout):
+    """The reverse of Scene.packed, written with NumPy alone: name -> (columns, samples)."""
+    planes = np.frombuffer(zlib.decompress(block), dtype=np.uint8).reshape(4, -1)
+    words = np.cumsum(np.ascontiguousarray(planes.T).view("<u4").ravel(), dtype=np.uint32)
+    columns = words.view(np.float32).reshape(sum(count for _, count in layout), -1)
+    starts = np.cumsum([0] + [count for _, count in layout])
+    return {name: columns[start:start + count] for (name, count), start in zip(layout, starts)}
+
+
+@given(seed=st.integers(0, 10_000), samples=st.integers(5001, 30_000), series=st.integers(1, 14))
+@settings(max_examples=15, deadline=None)
+def test_no_peak_is_lost_when_a_long_path_is_thinned(seed, samples, series):
+    rng = np.random.default_rng(seed)
+    values = np.cumsum(rng.standard_normal((samples, series)), axis=0)
+    values[rng.random(samples) < 0.02] = np.nan
+    for column in range(series):
+        values[rng.integers(samples), column] = 1e6
+    always = rng.integers(0, samples, 50)
+    kept = kept_samples(values, MOST_SAMPLES, always)
+    assert len(kept) <= MOST_SAMPLES
+    assert np.all(np.diff(kept) > 0) and kept[0] == 0 and kept[-1] == samples - 1
+    assert np.isin(always, kept).all()
+    np.testing.assert_array_equal(np.nanmax(values[kept], axis=0), np.nanmax(values, axis=0))
+    np.testing.assert_array_equal(np.nanmin(values[kept], axis=0), np.nanmin(values, axis=0))
+
+
+def test_a_long_path_keeps_its_peaks_and_every_findings_worst_sample():
+    audit = fake_audit(200_000)
+    shown = scene(audit)
+    sample = shown.arrays["sample"].astype(int)
+    assert len(sample) <= MOST_SAMPLES
+    assert {f.worst for f in audit.finding_list} <= set(sample.tolist())
+    np.testing.assert_allclose(np.nanmax(shown.arrays["share_percent"], axis=0), 100 * np.nanmax(audit.rates.speed_share, axis=0), rtol=1e-6)
+    np.testing.assert_allclose(np.nanmin(shown.arrays["sigma_min"]), np.nanmin(audit.rates.sigma_min), rtol=1e-6)
+
+
+def test_many_gaps_do_not_break_the_bound():
+    audit = fake_audit(40_000, gap=False)
+    audit.motion.reached[::3] = False
+    audit.joints[::3] = audit.rates.speed_share[::3] = audit.rates.sigma_min[::3] = np.nan
+    shown = scene(audit)
+    assert len(shown.arrays["sample"]) <= MOST_SAMPLES
+    assert len(shown.facts["gaps"]) <= 2001
+
+
+@pytest.mark.parametrize("samples, n", [(2, 1), (2, 6), (3, 12), (500, 12)])
+def test_small_paths_and_any_number_of_joints(samples, n):
+    shown = scene(fake_audit(samples, n))
+    assert shown.arrays["points_m"].shape == (samples, n + 2, 3)
+    assert shown.arrays["axes"].shape == (samples, n, 3)
+    assert len(shown.facts["rows"]) == n + 3
+    json.dumps(shown.facts, allow_nan=False)
+
+
+def test_packing_gives_the_columns_back():
+    shown = scene(fake_audit(1500))
+    back = unpacked(*shown.packed())
+    for name, values in shown.arrays.items():
+        columns = values.reshape(len(values), -1).T
+        assert back[name].shape == columns.shape
+        np.testing.assert_array_equal(np.isnan(back[name]), np.isnan(columns))
+        if name in ("sample", "time_s"):
+            np.testing.assert_array_equal(back[name], columns)
+        else:
+            np.testing.assert_allclose(back[name], columns, rtol=7e-5, atol=1e-30)
+    assert np.isnan(back["sigma_min"]).any()
+
+
+def test_packing_keeps_infinity():
+    audit = fake_audit(50)
+    audit.rates.reserve[3] = np.inf
+    assert unpacked(*scene(audit).packed())["reserve"][0, 3] == np.inf
+
+
+def test_joint_points_agree_with_the_arms_own_kinematics():
+    rows = [{"name": "lift", "type": "prismatic", "a_mm": 0, "alpha_deg": 20, "d_mm": 300, "theta_deg": 10, "lower_mm": -100, "upper_mm": 500, "speed_mm_s": 400}]
+    rows += [{"name": f"j{k}", "type": "revolute", "a_mm": 250 - 30 * k, "alpha_deg": (-1) ** k * 90, "d_mm": 40 * k, "theta_deg": 15 * k,
+              "lower_deg": -170, "upper_deg": 170, "speed_deg_s": 180} for k in range(5)]
+    arm = pa.Arm.from_dh(rows)
+    joints = np.random.default_rng(1).uniform(-1, 1, (40, 6))
+    joints[7] = np.nan
+    points, axes = joint_points(arm.chain, np.eye(4), np.eye(4), joints)
+    good = np.isfinite(joints).all(axis=1)
+    jacobian = arm.jacobian(joints[good])
+    np.testing.assert_allclose(points[good, -2], arm.flange_pose(joints[good])[:, :3, 3], atol=1e-12)
+    np.testing.assert_allclose(axes[good, 0], jacobian[:, :3, 0], atol=1e-12)      # a sliding joint moves the flange along its axis
+    np.testing.assert_allclose(axes[good, 1:], np.moveaxis(jacobian[:, 3:, 1:], 2, 1), atol=1e-12)
+    arms = points[good, -2, None] - points[good, 1:-2]
+    np.testing.assert_allclose(np.cross(axes[good, 1:], arms), np.moveaxis(jacobian[:, :3, 1:], 2, 1), atol=1e-12)
+    assert np.isnan(points[7]).all() and np.isnan(axes[7]).all()
+
+
+def test_the_tool_is_placed_in_the_world():
+    audit = fake_audit(300, gap=False)
+    shown = scene(audit)
+    np.testing.assert_allclose(shown.arrays["points_m"][:, -1], shown.arrays["path_m"], atol=2e-6)
+
+
+def test_times_count_from_the_first_sample_and_a_clocks_date_is_dropped():
+    for start, offset in ((3.5, 3.5), (1.7e9, 0.0)):
+        audit = fake_audit(200)
+        audit.time = audit.time + start
+        for finding in audit.finding_list:
+            finding.t_start, finding.t_end, finding.worst_t = (t + start for t in (finding.t_start, finding.t_end, finding.worst_t))
+        shown = scene(audit)
+        assert shown.arrays["time_s"][0] == 0
+        assert np.all(np.diff(shown.arrays["time_s"]) > 0)
+        assert shown.facts["offset_s"] == offset
+        assert all(0 <= f["from_s"] <= f["to_s"] <= 14.0 for f in shown.facts["findings"])
+
+
+def test_spans_reach_half_way_to_the_neighbours_and_near_ones_are_joined():
+    time = np.arange(8.0)
+    mask = np.array([1, 0, 0, 1, 0, 1, 0, 0], dtype=bool)
+    np.testing.assert_allclose(spans(mask, time, 0.0), [[0, 0.5], [2.5, 3.5], [4.5, 5.5]])
+    np.testing.assert_allclose(spans(mask, time, 1.1), [[0, 0.5], [2.5, 5.5]])
+    assert spans(np.zeros(8, dtype=bool), time, 0.0).shape == (0, 2)
+
+
+@pytest.mark.parametrize("value, text", [(198.7717, "198.8"), (0.0132668, "0.01327"), (180.0, "180"), (-0.0, "0"), (123456.0, "123456"), (np.nan, ""),
+                                         (np.inf, ""), (None, ""), (2e-12, "0"), (-177.642, "-177.6"), (1200.0, "1200")])
+def test_numbers_as_people_write_them(value, text):
+    assert significant(value) == text

@@ -14,6 +14,7 @@ from .findings import peak_share
 from .measures import Rates, measure
 
 AIM = 1.0 - 1e-6  # share of the limits that a retiming aims at, so that rounding never shows as an overrun
+SPARE = 5e-7  # of what AIM leaves, the part that a measured excess may use up
 ROUNDS = 12  # of tightening before the rest is given as one even factor
 STANDSTILL = 1e-3  # a factor below this is no speed to weld or dispense at, but a stop
 EVEN_ENOUGH = 0.7  # an even factor below this costs so much that the local retiming is offered first
@@ -160,15 +161,16 @@ class _Plan:
             b = np.maximum(clocks.sweep(self.u, self.speed, self.bend, self.limit * margin, ceiling), 1e-12)
             speed, acceleration = self.shares(self.times(b))
             flat = max(speed.max(), np.sqrt(acceleration.max()))
-            if flat <= 1.0 or even:
+            if flat <= 1.0 + SPARE or even:
                 break
-            ceiling = np.where(speed.max(axis=1) > 1.0, np.minimum(ceiling, b) / np.maximum(speed.max(axis=1), 1.0) ** 2, ceiling)
+            over = np.maximum(speed.max(axis=1), 1.0)
+            ceiling = np.where(over > 1.0, np.minimum(ceiling, b) / over ** (2 if turn < 2 else 4), ceiling)
             wide = acceleration.copy()
             if turn >= 3:  # where the excess does not give in at its own sample, it comes from the ones beside it
                 wide[1:] = np.maximum(wide[1:], acceleration[:-1])
                 wide[:-1] = np.maximum(wide[:-1], acceleration[1:])
-            margin /= np.where(wide > 1.0, np.minimum(1.005 * wide, 2.0), 1.0)
-        if flat > 1.0:
+            margin /= np.where(wide > 1.0, np.minimum(1.005 * wide**1.5, 2.0), 1.0)
+        if flat > 1.0 + SPARE:
             # a factor on all times scales every share exactly: speeds by it, accelerations by its square
             b = b / flat**2
         return b, flat

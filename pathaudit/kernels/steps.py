@@ -43,29 +43,20 @@ def copy(source, target, count):
 
 
 @helper
-def scratch(n):
-    """Room for what a step needs. It is handed on array by array: taking one out of a bundle counts references, which costs as much as a step."""
-    wide = max(n, 6)
-    return (
-        np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((6, n)), np.empty((wide, wide)), np.empty((3, 3)),
-        np.empty(6), np.empty(n), np.empty(wide), np.empty(n), np.empty(6),
-    )  # fmt: skip
-
-
-@helper
 def settle(
-    links, prismatic, position, rotation, rows, inverse_length, limit, guarded, q, least, most,
+    links, prismatic, position, rotation, rows, inverse_length, limit, damping, q, least, most,
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
 ):  # fmt: skip
     """Steps on q (n,) in place towards one pose; returns (solved, pivot, metres left, radians left).
 
-    Plain Newton steps where the Jacobian is square and regular, damped ones elsewhere; no joint moves more than `limit` in a step.
-    Guarded, a step that does not come closer is taken back and damped more (Levenberg-Marquardt), so that q ends at the pose or as
-    close to it as can be. Between `least` and `most` steps are taken. The pivot is the smallest one of the last Jacobian, with the sign
+    No joint moves more than `limit` in a step. With damping 0 the steps are plain Newton steps where the Jacobian is square and regular
+    and damped ones elsewhere; with a damping to begin with, a step that does not come closer is taken back and damped more
+    (Levenberg-Marquardt), so that q ends at the pose or as close to it as can be. Between `least` and `most` steps are taken. The pivot is the smallest one of the last Jacobian, with the sign
     of the determinant: 0 where the Jacobian is singular, not square or not needed.
     """
     n = q.shape[0]
-    pivot, damping, cost, best_far, best_turned, dull = 0.0, (1e-3 if guarded else 0.0), np.inf, np.inf, np.inf, 0
+    guarded = damping > 0.0
+    pivot, cost, best_far, best_turned, dull = 0.0, np.inf, np.inf, np.inf, 0
     for turn in range(most + 1):
         place(links, prismatic, q, axes, origins, tool)
         far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
@@ -85,8 +76,9 @@ def settle(
             if turn == most or dull > 5 or not far < 1e6:
                 return False, pivot, far, turned
             cost, best_far, best_turned, damping = now, far, turned, 0.1 * damping
-            copy(q, base, n)
-            copy(error, kept, 6)
+            if guarded:
+                copy(q, base, n)
+                copy(error, kept, 6)
             task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian)
         within = False
         if n == rows and damping < 1e-6:
@@ -102,7 +94,8 @@ def settle(
             lift = 10.0 * max(lift, 1e-10)
         for i in range(n):
             q[i] += step[i]
-    copy(base, q, n)
+    if guarded:
+        copy(base, q, n)
     return False, pivot, best_far, best_turned
 
 
@@ -121,7 +114,7 @@ def rotate(v, out):
 
 
 @helper
-def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare):
+def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare, phi, w0, w1, vector):
     """The pose at the fraction u of an interval of `span` seconds: cubic Hermite in position and in the rotation vector from r0.
 
     v0 and v1 (6,) are the tool twists at the ends, in part axes.
@@ -132,7 +125,6 @@ def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare):
         position[i] = h00 * p0[i] + h10 * span * v0[i] + h01 * p1[i] + h11 * span * v1[i]
         for j in range(3):
             spare[i, j] = r0[0, i] * r1[0, j] + r0[1, i] * r1[1, j] + r0[2, i] * r1[2, j]
-    phi, w0, w1, vector = np.empty(3), np.empty(3), np.empty(3), np.empty(3)
     rotation_log(spare, phi)
     for i in range(3):
         w0[i] = r0[0, i] * v0[3] + r0[1, i] * v0[4] + r0[2, i] * v0[5]
@@ -177,7 +169,7 @@ def tangent(
 
 @helper
 def creep(
-    links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, slope,
+    links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, slope, position, rotation, turning, trial, ahead,
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
 ):  # fmt: skip
     """Follow the motion between two samples in small steps, q in place; (done, steps, sign). Not done: no smooth way on was found.
@@ -186,12 +178,12 @@ def creep(
     continuous. A singular place is crossed (the sign of the determinant changes) only in a step too small to leap to another branch.
     """
     n = q.shape[0]
-    position, rotation, trial, ahead = np.empty(3), np.empty((3, 3)), np.empty(n), np.empty(n)
+    least, most = np.int64(1), np.int64(4)
     u, h, steps = 0.0, 0.25, 0
     while u < 1.0 and steps < 4000:
         steps += 1
         goal = min(1.0, u + h)
-        between(p0, r0, v0, p1, r1, v1, span, goal, position, rotation, spare)
+        between(p0, r0, v0, p1, r1, v1, span, goal, position, rotation, spare, error, vector, kept, turning)
         if goal == 1.0:
             copy(p1, position, 3)
             for i in range(3):
@@ -200,7 +192,7 @@ def creep(
             ahead[i] = q[i] + (goal - u) * slope[i]
             trial[i] = ahead[i]
         solved, now, _, _ = settle(
-            links, prismatic, position, rotation, rows, inverse_length, 0.2, False, trial, 1, 4,
+            links, prismatic, position, rotation, rows, inverse_length, 0.2, 0.0, trial, least, most,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         move = largest_move(trial, q)
@@ -292,10 +284,14 @@ def correct(inverse, error, q):
 )
 def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, allow, joints, outcome, left, steps):
     n = prismatic.shape[0]
-    axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept = scratch(n)
+    axes, origins, tool, jacobian = np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((6, n))
+    wide = max(n, 6)
+    work, spare, error, kept = np.empty((wide, wide)), np.empty((3, 3)), np.empty(6), np.empty(6)
+    step, vector, base = np.empty(n), np.empty(wide), np.empty(n)
     scale = 1.0 / length
     guess, here, walked, pull, q = np.empty(n), np.empty(n), np.empty(n), np.empty(n), np.empty(n)
-    goal_position, goal_rotation = np.empty(3), np.empty((3, 3))
+    goal_position, goal_rotation, way_position, way_rotation = np.empty(3), np.empty((3, 3)), np.empty(3), np.empty((3, 3))
+    turning, trial, ahead = np.empty(3), np.empty(n), np.empty(n)
     copy(start, q, n)
     even = 0  # how many time steps before this sample were alike
     inverse, age = np.empty((n, n)), RENEW  # of the Jacobian some samples ago, and how many
@@ -320,8 +316,11 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                 for i in range(n):
                     guess[i] += pull[i]
         copy(guess, here, n)
+        least, most = np.int64(1), np.int64(8)  # of this type, for a literal would have settle compiled once more
+        if clear and n == rows and known >= 5 and age < RENEW:
+            least = np.int64(0)  # a prediction that hits is enough
         solved, now, far, turned = settle(
-            links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, False, here, 1 if age >= RENEW or known < 5 or n != rows or not clear else 0, 8,
+            links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, 0.0, here, least, most,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         near = solved and largest_move(here, guess) < 0.05 and largest_move(here, q) < 0.5
@@ -346,7 +345,8 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             )  # fmt: skip
             followed, steps[k], arrived = creep(
                 links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], goal_position, goal_rotation, twist[k],
-                span, rows, scale, sign, walked, pull, axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+                span, rows, scale, sign, walked, pull, way_position, way_rotation, turning, trial, ahead,
+                axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
             )  # fmt: skip
             if followed:
                 copy(walked, here, n)
@@ -356,8 +356,9 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                 followed, outcome[k], known = True, CROSSED, 0
         if not followed:
             copy(q, here, n)
+            least, most = np.int64(1), np.int64(300)
             solved, now, far, turned = settle(
-                links, prismatic, goal_position, goal_rotation, rows, scale, 0.7, True, here, 1, 300,
+                links, prismatic, goal_position, goal_rotation, rows, scale, 0.7, 1e-3, here, least, most,
                 axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
             )  # fmt: skip
             if not (solved or (far < allow[0] and turned < allow[1])):
@@ -377,10 +378,14 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
 @kernel("void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[:,::1], f8[:,::1], f8[:,::1])")
 def _solve(links, prismatic, length, rows, position, rotation, joints, left):
     n = prismatic.shape[0]
-    axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept = scratch(n)
+    axes, origins, tool, jacobian = np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((6, n))
+    wide = max(n, 6)
+    work, spare, error, kept = np.empty((wide, wide)), np.empty((3, 3)), np.empty(6), np.empty(6)
+    step, vector, base = np.empty(n), np.empty(wide), np.empty(n)
+    least, most = np.int64(1), np.int64(300)
     for k in range(joints.shape[0]):
         _, _, far, turned = settle(
-            links, prismatic, position, rotation, rows, 1.0 / length, 0.7, True, joints[k], 1, 300,
+            links, prismatic, position, rotation, rows, 1.0 / length, 0.7, 1e-3, joints[k], least, most,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         left[k, 0], left[k, 1] = far, turned

@@ -1,6 +1,6 @@
 """The findings, the retiming and what was given, as plain HTML tables: shared by the one-page report and the notebook's still form.
 
-Only table, tr, td, th, b and inline styles are used, because readers that do not trust a notebook strip everything else.
+Only table, tr, td, div, b and inline styles are used: a sanitising export shows any other tag as text, and readers that trust nobody drop it.
 """
 
 from html import escape
@@ -13,6 +13,7 @@ from .scene import clock_offset, significant, worst_text
 _LEFT = "text-align:left;vertical-align:top;padding:3px 14px 3px 0"
 _NUMBER = _LEFT + ";white-space:nowrap;font-variant-numeric:tabular-nums"
 _SHORT = _LEFT + ";white-space:nowrap"
+_HEAD = _SHORT + ";opacity:0.7"
 _SEVERITY = {"warn": "WARN", "fail": "FAIL"}
 
 _THRESHOLDS = {      # name in [thresholds]: (what it is, unit)
@@ -33,7 +34,7 @@ _THRESHOLDS = {      # name in [thresholds]: (what it is, unit)
 def table(head, rows, styles=()):
     """An HTML table of plain text cells; `styles` gives a column its style; no head where it is empty."""
     style = [*styles, *[_LEFT] * len(head or rows[0])]
-    first = "<tr>" + "".join(f'<th style="{_LEFT};font-weight:normal">{escape(name)}</th>' for name in head) + "</tr>" if head else ""
+    first = "<tr>" + "".join(f'<td style="{_HEAD}">{escape(name)}</td>' for name in head) + "</tr>" if head else ""
     body = "".join("<tr>" + "".join(f'<td style="{s}">{_cell(cell)}</td>' for s, cell in zip(style, row)) + "</tr>" for row in rows)
     return f'<table style="border-collapse:collapse;text-align:left">{first}{body}</table>'
 
@@ -44,8 +45,8 @@ def _cell(value):
 
 def verdict_line(audit):
     path = audit.path
-    return (f"<p><b>{escape(audit.verdict.upper())}</b> &nbsp; {escape(audit.cell.name)} &nbsp; {escape(PurePath(path.file).name)}: "
-            f"{path.samples:,} samples, {path.duration:.2f} s, {1e3 * path.length:.0f} mm</p>")
+    return (f"<div><b>{escape(audit.verdict.upper())}</b> &nbsp; {escape(audit.cell.name)} &nbsp; {escape(PurePath(path.file).name)}: "
+            f"{path.samples:,} samples, {path.duration:.2f} s, {1e3 * path.length:.0f} mm</div>")
 
 
 def findings_table(audit):
@@ -54,37 +55,55 @@ def findings_table(audit):
              f"{f.t_start - back:.2f} - {f.t_end - back:.2f}", f"{f.from_mm:.0f} - {f.to_mm:.0f}", worst_text(f), f.why)
             for k, f in enumerate(audit.finding_list, 1)]
     if not rows:
-        return "<p>No findings.</p>"
+        return "<div>No findings.</div>"
     head = ("", "", "finding", "from - to, s", "from - to, mm", "worst", "why")
     return table(head, rows, (_NUMBER, _SHORT, _SHORT, _NUMBER, _NUMBER, _SHORT))
 
 
+def _needed(again):
+    return again.feasible and again.slowest < 0.9995
+
+
 def retiming_table(audit):
     again = audit.suggestion
-    if not again.feasible or again.slowest > 0.9995:
-        return f"<p>{escape(again.why)}</p>"
+    if not _needed(again):
+        return f"<div>{escape(again.why)}</div>"
     rows = [("duration as programmed", f"{audit.path.duration:.3f} s"), ("duration retimed", f"{again.duration:.3f} s"),
             ("slowest place", f"{100 * again.slowest:.1f} % of the programmed speed"), ("kind", again.style), ("why", again.why)]
     return table((), rows, (_SHORT, _LEFT))
 
 
 # Without its kernel JupyterLab says in the first of our three outputs that it has no widget: the other two say more. The picture keeps to the width.
-_STILL_STYLE = ("<style>.jp-OutputArea-child:has(+ .jp-OutputArea-child + .jp-OutputArea-child .pathaudit-tables) "
+# The rules stand in a comment, which style sheets look through, so that an export that shows the tag as text does not show them.
+_STILL_STYLE = ("<style><!-- .jp-OutputArea-child:has(+ .jp-OutputArea-child + .jp-OutputArea-child .pathaudit-tables) "
                 "> .jupyter-widgets:not(:has(.pa)) { display: none; } "
-                ".jp-OutputArea-child:has(+ .jp-OutputArea-child .pathaudit-tables) .jp-RenderedSVG > img { max-width: 100%; }</style>")
+                ".jp-OutputArea-child:has(+ .jp-OutputArea-child .pathaudit-tables) .jp-RenderedSVG > img { max-width: 100%; } --></style>")
 
 
 def still_tables(audit):
-    """The tables of the notebook's still form; the class marks them for the live timeline, which hides them."""
-    return (f'<div class="pathaudit-tables">{_STILL_STYLE}{verdict_line(audit)}{findings_table(audit)}<p><b>Suggested retiming</b></p>'
-            f"{retiming_table(audit)}<p><b>What was given</b></p>{inputs_table(audit)}{cautions_list(audit)}</div>")
+    """The findings and what belongs to them for the notebook's still form; the class marks it for the live timeline, which hides it.
+
+    One table only: a sanitising export writes the tag of a table's body before each.
+    """
+    again, given = audit.suggestion, _given(audit)
+    retiming = f"{audit.path.duration:.2f} s becomes {again.duration:.2f} s. " if _needed(again) else ""
+    lines = [f"<b>Suggested retiming</b> &nbsp; {escape(retiming + again.why)}"]
+    lines += [f"<b>{what}</b> &nbsp; {escape(file)}, sha256 {sha256}" for what, file, sha256 in given]
+    lines += [f"<b>Not judged</b> &nbsp; {escape(rule)}: {escape(why)}" for rule, why in audit.not_judged]
+    lines += ["<b>Cautions</b>", *map(escape, audit.cautions)]
+    return (f'<div class="pathaudit-tables">{verdict_line(audit)}{findings_table(audit)}{"".join(f"<div>{line}</div>" for line in lines)}'
+            f"{_STILL_STYLE}</div>")
 
 
 def inputs_table(audit):
+    return table(("", "file", "sha256"), _given(audit), (_LEFT, _LEFT, _NUMBER + ";font-family:monospace"))
+
+
+def _given(audit):
+    """(what, file name, sha256) of every file that the audit rests on."""
     given = [("path", audit.path.file, audit.path.sha256)]
     given += [("cell" if file == audit.cell.file else "arm", file, sha256) for file, sha256 in audit.cell.sources]
-    rows = [(what, PurePath(file).name, sha256) for what, file, sha256 in given]
-    return table(("", "file", "sha256"), rows, (_LEFT, _LEFT, _NUMBER + ";font-family:monospace"))
+    return [(what, PurePath(file).name, sha256) for what, file, sha256 in given]
 
 
 def limits_table(audit):
@@ -112,6 +131,6 @@ def not_judged_table(audit):
 
 
 def cautions_list(audit):
-    return "".join(f"<p>{escape(words)}</p>" for words in audit.cautions)
+    return "".join(f"<div>{escape(words)}</div>" for words in audit.cautions)
 
 

@@ -15,7 +15,7 @@ _STYLE = """
 html { background: #fff; color: #1b1f24; font: 14px/1.45 system-ui, "Helvetica Neue", Arial, sans-serif; color-scheme: light; }
 body { max-width: 1240px; margin: 24px auto; padding: 0 20px; }
 h1 { font-size: 20px; margin: 0 0 4px; } h2 { font-size: 15px; margin: 26px 0 6px; }
-th { color: #5b636d; font-size: 12px; } td { border-top: 1px solid #dfe3e7; } p { margin: 4px 0; }
+table { margin: 2px 0; } td { border-top: 1px solid #dfe3e7; } .pa-wide + p { margin-top: 6px; } p { margin: 4px 0; }
 .pa-wide { overflow-x: auto; } .pa-picture svg { display: block; width: 100%; height: auto; }
 .pa-two { display: flex; flex-wrap: wrap; gap: 0 60px; }
 #live:empty { display: none; } .is-live .pa-still { display: none; }

@@ -48,13 +48,13 @@ export function drawCursor(canvas, place, colours, data, i, selected) {
   const x = Math.round(place.x(data.time_s[0][i])) + 0.5;
   context.strokeStyle = context.fillStyle = colours.ink;
   context.beginPath();
-  context.moveTo(x, place.strip - 2);
+  context.moveTo(x, place.process - 1);
   context.lineTo(x, place.axis);
   context.stroke();
   context.beginPath();
-  context.moveTo(x - 5, place.strip - 9);
-  context.lineTo(x + 5, place.strip - 9);
-  context.lineTo(x, place.strip - 2);
+  context.moveTo(x - 5, place.process - 7);
+  context.lineTo(x + 5, place.process - 7);
+  context.lineTo(x, place.process);
   context.fill();
   for (const at of place.rows) {
     const [name, column] = at.row.lines[at.row.lines.length - 1];

@@ -9,7 +9,7 @@ from fake_audit import fake_audit
 
 from pathaudit.report.page import one_page
 from pathaudit.report.scene import scene
-from pathaudit.report.script import joined_modules
+from pathaudit.report.script import joined_modules, style_sheet
 
 
 @pytest.fixture(scope="module")
@@ -213,6 +213,53 @@ def test_nothing_to_draw_is_drawn_too(opened):
     assert readout(page)[3:] == ["–", "–", "–", "no finding"]
     page.keyboard.press("n")
     assert "No findings." in page.locator(".pa-findings").inner_text()
+
+
+@pytest.fixture
+def stage(watched, audit):
+    """An empty page with the modules loaded, a stub model and window.start(place): what any host of the timeline does."""
+    shown = scene(audit)
+    block, layout = shown.packed()
+    page = watched().page
+    page.set_content(f"<style>{style_sheet()}</style><div id='one'></div><div id='two'></div>")
+    page.evaluate("([facts, text]) => { window.facts = facts; window.text = text; }", [{**shown.facts, "layout": layout}, base64.b64encode(block).decode()])
+    page.add_script_tag(type="module", content=joined_modules() + """
+        const held = { facts: window.facts, block: Uint8Array.from(atob(window.text), (c) => c.charCodeAt(0)), status: "", cursor: 0 };
+        window.listeners = [];
+        window.model = { get: (name) => held[name], set: (name, value) => { held[name] = value; }, save_changes() {},
+                         on: (name, act) => window.listeners.push([name, act]), off: () => window.listeners.pop() };
+        window.start = (place) => render({ model: window.model, el: document.getElementById(place) });""")
+    page.wait_for_function("() => Boolean(window.start)")
+    return page
+
+
+def test_a_timeline_made_in_a_hidden_tab_is_drawn_when_the_tab_is_shown(stage):
+    stage.evaluate("() => { document.getElementById('one').style.display = 'none'; return window.start('one').then(() => null); }")
+    assert stage.locator(".pa[data-painted]").count() == 0
+    stage.evaluate("document.getElementById('one').style.display = ''")
+    stage.wait_for_selector(".pa[data-painted]")
+    before = pixels(stage, ".pa-rows canvas:nth-child(1)")
+    stage.evaluate("document.getElementById('one').style.display = 'none'")
+    cursor(stage)
+    stage.evaluate("document.getElementById('one').style.display = ''")
+    assert pixels(stage, ".pa-rows canvas:nth-child(1)") == before
+
+
+def test_two_views_of_one_model_move_together(stage):
+    stage.evaluate("() => Promise.all([window.start('one'), window.start('two')]).then(() => null)")
+    stage.wait_for_function("() => document.querySelectorAll('.pa[data-painted]').length === 2")
+    stage.evaluate("() => { window.model.set('cursor', 123); window.listeners.filter(([n]) => n === 'change:cursor').forEach(([, act]) => act()); }")
+    stage.wait_for_function("() => [...document.querySelectorAll('.pa')].every((root) => root.dataset.cursor === '123')")
+
+
+def test_a_closed_view_lets_everything_go(stage):
+    stage.evaluate("async () => { const close = await window.start('one'); close(); }")
+    assert stage.evaluate("[window.listeners.length, document.querySelectorAll('canvas').length]") == [0, 0]
+
+
+def test_damaged_data_is_told_in_words(stage):
+    stage.evaluate("() => { window.model.set('block', new Uint8Array([1, 2, 3])); return window.start('one').catch(() => null); }")
+    assert "cannot be drawn" in stage.locator(".pa-status").inner_text()
 
 
 def test_with_scripts_off_picture_and_tables_are_there(opened, audit):

@@ -1,10 +1,13 @@
 """The widget without a browser: its traits, its messages, the three outputs."""
 
 import base64
+import html
 import json
 import sys
 from types import SimpleNamespace
 
+import nbconvert
+import nbformat
 import numpy as np
 import pytest
 from fake_audit import fake_audit
@@ -89,6 +92,19 @@ def test_the_still_form_is_small_and_holds_everything(audit):
     assert len(json.dumps([picture, tables])) <= 200_000
     for words in ("near-singular", audit.path.sha256, audit.suggestion.why, "This is not a risk assessment.", "FAIL"):
         assert words in tables["text/html"]
+
+
+@pytest.mark.parametrize("sanitize", [False, True])
+def test_an_export_of_a_notebook_can_be_read(audit, sanitize):
+    new = nbformat.v4.new_output
+    view = {"application/vnd.jupyter.widget-view+json": {"model_id": "gone", "version_major": 2, "version_minor": 0}, "text/plain": "Path audit"}
+    cell = nbformat.v4.new_code_cell("audit", outputs=[new("display_data", bundle) for bundle in (view, *still_form(audit))])
+    page, _ = nbconvert.HTMLExporter(sanitize_html=sanitize).from_notebook_node(nbformat.v4.new_notebook(cells=[cell]))
+    assert "data:image/png;base64" in page or "<svg" in page
+    for words in (*(finding.why for finding in audit.finding_list), audit.path.sha256):
+        assert words in html.unescape(page)
+    assert not any(f"&lt;{tag}" in page for tag in ("p&gt;", "th", "td", "tr", "div", "b&gt;"))      # no tag of ours is shown as text
+    assert not sanitize or "model not found" not in page and "max-width: 100%; }" not in page[page.index("Cautions"):]
 
 
 @pytest.fixture

@@ -194,9 +194,8 @@ def jacobi_smallest(jacobian, rows, n, work):
 
 
 @helper
-def laguerre(d, squares, size, scale):
-    """The smallest eigenvalue, at least 0, of the tridiagonal matrix with diagonal d and squared off-diagonal `squares`."""
-    x = 0.0
+def laguerre(d, squares, size, x, scale):
+    """The smallest eigenvalue of the tridiagonal matrix with diagonal d and squared off-diagonal `squares`, from a bound x below it."""
     for _ in range(60):
         # p, p', p'' by the three-term recurrence (entries are of order one: nothing overflows)
         p0, p1 = 1.0, d[0] - x
@@ -214,14 +213,26 @@ def laguerre(d, squares, size, scale):
         root = sqrt(inside) if inside > 0.0 else 0.0
         step = -size * p1 / (g1 - root if g1 < 0.0 else g1 + root)
         x += step
-        if not step > 4e-16 * x + 1e-18 * scale:
+        if not step > 1e-8 * x + 1e-18 * scale:  # what is left is the cube of this, or as much again in a cluster
             return x
     return x
 
 
 @helper
-def smallest_singular_value(jacobian, rows, n, work, d, e):
-    """Smallest singular value of jacobian (rows, n), of min(rows, n), from the tridiagonal form of the Gram matrix.
+def change_of(jacobian, before):
+    """Frobenius norm of the change since `before`, which takes the new values: no singular value changes more (Weyl 1912)."""
+    total = 0.0
+    for i in range(before.shape[0]):
+        for j in range(before.shape[1]):
+            change = jacobian[i, j] - before[i, j]
+            total += change * change
+            before[i, j] = jacobian[i, j]
+    return sqrt(total)
+
+
+@helper
+def smallest_singular_value(jacobian, rows, n, bound, work, d, e):
+    """Smallest singular value of jacobian (rows, n), of min(rows, n), not below `bound`, from the tridiagonal form of the Gram matrix.
 
     Householder tridiagonalisation, then Laguerre steps on the characteristic polynomial from below the spectrum, which converge from
     one side and cubically (Wilkinson 1965, ch. 7). Squaring costs half the digits beside zero; there one-sided Jacobi rotations take over.
@@ -272,7 +283,7 @@ def smallest_singular_value(jacobian, rows, n, work, d, e):
     for i in range(size):
         d[i] = work[i, i]
         e[i] = e[i] * e[i]
-    low = sqrt(max(laguerre(d, e, size, trace), 0.0))
+    low = sqrt(max(laguerre(d, e, size, bound * bound, trace), 0.0))
     return low if low > 1e-4 * sqrt(trace) else jacobi_smallest(jacobian, rows, n, work)
 
 
@@ -396,7 +407,7 @@ def _rates(links, prismatic, length, rows, limit, joints, twist, twist_rate, slo
     work, vector, step, order = np.empty((wide, wide)), np.empty(wide), np.empty(n), np.empty(wide)
     d, e, right, demand = np.empty(wide), np.empty(wide), np.empty(6), np.empty(6)
     now, change, given, rate = np.empty(6), np.empty(n), np.empty(n), np.empty(n)
-    scale = 1.0 / length
+    scale, low, before = 1.0 / length, 0.0, np.zeros((rows, n))
     for k in range(joints.shape[0]):
         if not np.isfinite(joints[k, 0]):
             for i in range(n):
@@ -408,7 +419,7 @@ def _rates(links, prismatic, length, rows, limit, joints, twist, twist_rate, slo
             given[i] = joints[k, i]
         place(links, prismatic, given, axes, origins, tool)
         task_jacobian(prismatic, axes, origins, tool, rows, scale, jacobian)
-        low = smallest_singular_value(jacobian, rows, n, work, d, e)
+        low = smallest_singular_value(jacobian, rows, n, max(0.999 * (low - change_of(jacobian, before)), 0.0), work, d, e)
         regular = False
         if n == rows and low > 1e-4:
             _, smallest = factor(jacobian, n, work, order)
@@ -444,8 +455,8 @@ def rates(chain, length, rows, limit, joints, twist, twist_rate, slope, bend):
     length in m scales the linear rows; limit (n,) joint speeds; twist and twist_rate (N, 6) of the tool in part axes; slope and bend
     (N, n) the followed joints' own first and second time derivatives, which decide only what the tool motion leaves open. Returns
     speed, acceleration (N, n) and measures (N, 3): smallest singular value of the scaled task Jacobian, largest |speed| / limit, and
-    the least that this could be for the same tool motion. Long paths are shared out to the cores; each sample stands for itself, so
-    the result is the same to the last bit.
+    the least that this could be for the same tool motion. Long paths are shared out to the cores; each sample is measured by
+    itself.
     """
     n, samples = chain.prismatic.shape[0], len(joints)
     given = [dense(a) for a in (joints, twist, twist_rate, slope, bend)]

@@ -8,6 +8,7 @@ import numpy as np
 from . import causes
 from .measures import Rates
 
+TRAVEL_SLACK = 1e-7  # rad or m: a joint that stands at its end stop to the last digit is not past it
 MERGE = 3  # stretches of the same rule and severity with no more samples than this between them are one
 
 
@@ -83,7 +84,7 @@ def stretches(time, level, bound, sense, merge=MERGE) -> list:
 def _crossing(time, level, bound, k, step):
     """The time at which the straight line from sample k to its neighbour crosses the bound."""
     other = k + step
-    if not 0 <= other < len(time) or not np.isfinite(level[other]) or level[other] == level[k]:
+    if not 0 <= other < len(time) or not np.isfinite(level[other] - level[k]) or level[other] == level[k]:
         return float(time[k])
     share = (bound - level[k]) / (level[other] - level[k])
     return float(time[k] + min(max(share, 0.0), 1.0) * (time[other] - time[k]))
@@ -231,7 +232,7 @@ def _acceleration_missing(rates):
 
 def _travel_bounds(rates, joint):
     arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
-    return (limits.travel_warn_mm / 1000.0 if arm.prismatic[joint] else np.radians(limits.travel_warn_deg)), 0.0
+    return (limits.travel_warn_mm / 1000.0 if arm.prismatic[joint] else np.radians(limits.travel_warn_deg)), -TRAVEL_SLACK
 
 
 def _travel_shown(rates, joint, level, bound):

@@ -190,15 +190,18 @@ class _Task:
         joints, outcome, _, _ = self.follow(start, samples)
         low, high = joints.min(axis=0), joints.max(axis=0)
         moved = self.into_travel(start, low, high)
-        over = np.maximum(arm.lower - (low + moved - start), (high + moved - start) - arm.upper)
+        left = np.minimum(low + moved - start - arm.lower, arm.upper - (high + moved - start))
         zero = np.zeros_like(joints)
         _, _, measures = rates.rates(
             self.chain, self.cell.characteristic_length, self.rows, arm.speed, joints, self.twist[samples], self.twist_rate[samples], zero, zero
         )
-        bound = max(self.cell.thresholds.sigma_min_fail, 1e-9)
-        worst = max(measures[:, 1].max(), (bound / np.maximum(measures[:, 0], 1e-12)).max())
+        limits = self.cell.thresholds
+        wanted = np.where(arm.prismatic, limits.travel_warn_mm / 1000.0, np.radians(limits.travel_warn_deg))
+        # each of the three is 1 where its own limit or bound is just met
+        near = limits.sigma_min_fail / np.maximum(measures[:, 0], 1e-12)
+        worst = max(measures[:, 1].max(), near.max(), (wanted / np.maximum(left, 1e-12)).max())
         lost, jumps = int((outcome == 3).sum()), int((outcome == 2).sum())
-        return (lost, jumps, round(max(0.0, over.max()), 6), worst), moved
+        return (lost, jumps, round(max(0.0, -left.min()), 6), worst), moved
 
 
 def _apart(a, b, prismatic):

@@ -204,7 +204,7 @@ class _Plan:
         hindered = []
         lost = int((~motion.reached).sum())
         if lost:
-            hindered.append(f"{lost} samples cannot be reached at any speed")
+            hindered.append(f"{lost} sample{'s' * (lost > 1)} cannot be reached at any speed")
         if motion.jumps:
             hindered.append(f"the posture jumps at {self.u[motion.jumps[0]]:.2f} s, which takes the arm off the path at any speed")
         if b.min() < STANDSTILL**2:

@@ -230,9 +230,14 @@ def _acceleration_missing(rates):
     return f"neither the arm nor the cell states an acceleration limit for {', '.join(unknown)}"
 
 
+def _travel_left(rates, joint):
+    left = rates.travel_left[:, joint]
+    return np.where(np.abs(left) < TRAVEL_SLACK, 0.0, left)
+
+
 def _travel_bounds(rates, joint):
     arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
-    return (limits.travel_warn_mm / 1000.0 if arm.prismatic[joint] else np.radians(limits.travel_warn_deg)), -TRAVEL_SLACK
+    return (limits.travel_warn_mm / 1000.0 if arm.prismatic[joint] else np.radians(limits.travel_warn_deg)), 0.0
 
 
 def _travel_shown(rates, joint, level, bound):
@@ -284,7 +289,7 @@ RULES = (
         lambda r, j, level, bound: (level, bound, ""), _singular_why, _always,
     ),
     Rule(
-        "joint travel", "joint travel", True, -1.0, lambda r, j: r.travel_left[:, j], _travel_bounds, _travel_shown, _travel_why, _always,
+        "joint travel", "joint travel", True, -1.0, _travel_left, _travel_bounds, _travel_shown, _travel_why, _always,
     ),
     Rule(
         "joint speed", "joint speed", True, 1.0, peak_share, _share_bounds("speed"), _share_shown("speed", "/s"), _speed_why, _always,

@@ -18,6 +18,8 @@ EXAMPLE = """example:
 exit status: 0 nothing fails, 1 at least one finding fails, 2 unusable input or arguments
 """
 
+LONG = 50_000  # samples from which the work may take longer than a second, so that a line says what goes on
+
 
 class _Parser(argparse.ArgumentParser):
     def error(self, message):
@@ -77,6 +79,8 @@ def _check(options):
     from .report.files import write_whole
     from .report.text import summary
 
+    if path.samples > LONG:
+        _say(f"pathaudit: auditing {path.samples:,} samples ...\n", sys.stderr)
     judged = audit(path, cell)
     for name, file in outputs.items():
         if file != "-":

@@ -10,7 +10,7 @@ from functools import cached_property
 import numpy as np
 
 from .conventions import frozen
-from .findings import peak_share
+from .findings import TRAVEL_SLACK, peak_share
 from .measures import Rates, measure
 
 AIM = 1.0 - 1e-6  # share of the limits that a retiming aims at, so that rounding never shows as an overrun
@@ -209,8 +209,19 @@ class _Plan:
             hindered.append(f"the posture jumps at {self.u[motion.jumps[0]]:.2f} s, which takes the arm off the path at any speed")
         if b.min() < STANDSTILL**2:
             hindered.append(f"the arm would have to come to a stop at {self.u[np.argmin(b)]:.2f} s")
+        stays = self.untouched_by_times()
+        if stays and not untouched:
+            why = f"{why} What other times do not change: {stays}."
         if hindered:
             why = f"No retiming can help: {'; '.join(hindered)}. {why}"
         return Retiming(
             self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, again.speed_share, again.acceleration_share
         )
+
+    def untouched_by_times(self):
+        """What fails at any speed, in words."""
+        rates, limits = self.rates, self.rates.motion.cell.thresholds
+        with np.errstate(invalid="ignore"):
+            singular = bool((rates.sigma_min < limits.sigma_min_fail).any())
+            beyond = bool((rates.travel_left < -TRAVEL_SLACK).any())
+        return " and ".join(words for words, holds in (("the near-singular stretch", singular), ("the joint travel passed", beyond)) if holds)

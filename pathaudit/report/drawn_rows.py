@@ -36,7 +36,7 @@ class Places:
             width = max(18.0, to_x - from_x)
             start = float(np.clip((from_x + to_x - width) / 2, self.left, self.left + self.plot - width))
             free = [k for k, end in enumerate(ends) if end + 2 <= start]
-            level = free[0] if free else len(ends) if len(ends) < 4 else int(np.argmin(ends))
+            level = free[0] if free else len(ends) if len(ends) < 6 else int(np.argmin(ends))
             ends[level:level + 1] = [start + width]
             blocks.append((finding, start, width, level))
         return blocks, len(ends)
@@ -117,9 +117,10 @@ def _draw_lines(surface, places, arrays, row, y):
     time = arrays["time_s"].astype(float)
     values = [arrays[name].reshape(len(time), -1)[:, column].astype(float) for name, column, _ in row["lines"]]
     if len(values) == 2:
-        for t, over, under in pieces(time, values[1] > values[0], values[1], values[0]):
-            edge = np.r_[np.column_stack([places.x(t), height_of(row, y, over)]), np.column_stack([places.x(t), height_of(row, y, under)])[::-1]]
-            surface.area(edge, "fail", SEVERITY["fail"])
+        ceiling, speed = (np.minimum(v, row["high"]) for v in values)
+        for t, _ in beyond(time, speed - ceiling, 0.0, "above"):
+            edges = [np.column_stack([places.x(t), height_of(row, y, np.interp(t, time, v))]) for v in (speed, ceiling)]
+            surface.area(np.vstack([edges[0], edges[1][::-1]]), "fail", SEVERITY["fail"])
     for value, (_, _, style) in zip(values, row["lines"]):
         if style == "ceiling":
             for t, v in pieces(time, value <= row["high"], value):

@@ -29,7 +29,7 @@ class Row:
 def rows_of(joint_names, thresholds, arrays, applied=False):
     """One row a joint, then sigma_min, tool speed and factor. arrays: what the scene draws, by name; applied: the factor is in force already."""
     return (*_joint_rows(joint_names, thresholds, arrays["share_percent"]), _sigma_row(thresholds, arrays["sigma_min"]),
-            _speed_row(thresholds, arrays["speed_mm_s"]), _factor_row(applied))
+            _speed_row(thresholds, arrays["speed_mm_s"], arrays["process"] > 0), _factor_row(applied))
 
 
 def row_index(finding, joint_names):
@@ -58,9 +58,10 @@ def _sigma_row(thresholds, sigma):
                log=True, digits=3, head="Nearness to singular: sigma_min, log scale", ticks=ticks)
 
 
-def _speed_row(thresholds, speed):
+def _speed_row(thresholds, speed, process):
+    """Scaled to the process: air moves are many times faster and may leave the row at its top."""
     ceiling = thresholds.tool_speed_mm_s
-    high = 1.6 * max(_most(speed, 0.0), 1e-3)
+    high = 1.6 * max(_most(speed[process] if process.any() else speed, 0.0), 1e-3)
     bounds = () if ceiling is None else ((float(ceiling), "fail"),)
     if ceiling is not None:
         high = max(high, 1.1 * ceiling)

@@ -1,23 +1,25 @@
-// The rows over one time axis: a base picture that is drawn when data, size or theme change, and a light overlay for the cursor.
+// The rows over one time axis: a base picture that is drawn when data, size, span or theme change, and a light overlay for the cursor.
+// The strip at the top always shows the whole path; the rows show the span [from, to] of it.
 
 import { clamp, fixed, niceStep } from "./data.js";
 import { fit, hatch, text } from "./theme.js";
 
 const HEAD = 17, GAP = 7, BLOCK = 17, AXIS = 26, RIGHT = 62;
 
-// Where everything stands for a given width. Blocks are the findings on the strip at the top, stacked where they would overlap.
-export function layOut(facts, width) {
+// Where everything stands for a given width and span of time. Blocks are the findings on the strip, stacked where they would overlap.
+export function layOut(facts, width, [from, to]) {
   const left = width < 520 ? 66 : 84;
   const plot = Math.max(40, width - left - RIGHT);
   const duration = facts.duration_s || 1;
-  const x = (time) => left + plot * (time / duration);
+  const whole = (time) => left + plot * (time / duration);
+  const x = (time) => left + plot * ((time - from) / (to - from || 1));
   const ends = [];
   const blocks = facts.findings.map((finding) => {
-    const middle = 0.5 * (x(finding.from_s) + x(finding.to_s));
-    const wide = Math.max(18, x(finding.to_s) - x(finding.from_s));
+    const middle = 0.5 * (whole(finding.from_s) + whole(finding.to_s));
+    const wide = Math.max(18, whole(finding.to_s) - whole(finding.from_s));
     const start = clamp(middle - wide / 2, left, left + plot - wide);
     let level = ends.findIndex((end) => end + 2 <= start);
-    if (level < 0) level = ends.length < 4 ? ends.length : ends.indexOf(Math.min(...ends));
+    if (level < 0) level = ends.length < 6 ? ends.length : ends.indexOf(Math.min(...ends));
     ends[level] = start + wide;
     return { finding, x: start, width: wide, level };
   });
@@ -30,8 +32,9 @@ export function layOut(facts, width) {
     y += row.height + 2;
     return place;
   });
-  return { left, plot, width, height: y + AXIS, duration, offset: facts.offset_s, x, strip, blocks, process, rows, axis: y + 2,
-           time: (px) => clamp((px - left) / plot, 0, 1) * duration };
+  return { left, plot, width, height: y + AXIS, from, to, offset: facts.offset_s, x, whole, strip, blocks, process, rows, axis: y + 2,
+           zoomed: to - from < duration * 0.999, time: (px) => from + clamp((px - left) / plot, 0, 1) * (to - from),
+           wholeTime: (px) => clamp((px - left) / plot, 0, 1) * duration };
 }
 
 export function heightOf(place, value) {
@@ -45,16 +48,16 @@ export function drawCursor(canvas, place, colours, data, i, selected) {
   const context = fit(canvas, place.width, place.height);
   const block = place.blocks[selected];
   if (block) outline(context, place, colours, block.finding);
-  const x = Math.round(place.x(data.time_s[0][i])) + 0.5;
+  const x = Math.round(place.x(data.time_s[0][i])) + 0.5, above = Math.round(place.whole(data.time_s[0][i])) + 0.5;
   context.strokeStyle = context.fillStyle = colours.ink;
   context.beginPath();
-  context.moveTo(x, place.process - 1);
+  context.moveTo(x, place.zoomed ? place.rows[0].y : place.process);
   context.lineTo(x, place.axis);
   context.stroke();
   context.beginPath();
-  context.moveTo(x - 5, place.process - 7);
-  context.lineTo(x + 5, place.process - 7);
-  context.lineTo(x, place.process);
+  context.moveTo(above - 5, place.process - 7);
+  context.lineTo(above + 5, place.process - 7);
+  context.lineTo(above, place.process);
   context.fill();
   for (const at of place.rows) {
     const [name, column] = at.row.lines[at.row.lines.length - 1];
@@ -70,26 +73,52 @@ export function drawCursor(canvas, place, colours, data, i, selected) {
 }
 
 function outline(context, place, colours, finding) {
-  const x = place.x(finding.from_s), width = Math.max(2, place.x(finding.to_s) - x);
+  const x = place.x(finding.from_s), width = Math.max(2, place.x(finding.to_s) - x), top = place.rows[0].y - 2;
+  context.save();
+  clipTo(context, place, top - 1, place.axis);
   context.strokeStyle = colours[finding.severity];
   context.setLineDash([4, 3]);
-  context.strokeRect(x, place.process + 8, width, place.axis - place.process - 8);
-  context.setLineDash([]);
+  context.strokeRect(x, top, width, place.axis - 2 - top);
+  context.restore();
+}
+
+function clipTo(context, place, top, bottom) {
+  context.beginPath();
+  context.rect(place.left - 1, top, place.plot + 2, bottom - top);
+  context.clip();
 }
 
 export function drawRows(canvas, place, colours, facts, data) {
   const context = fit(canvas, place.width, place.height);
   drawStrip(context, place, colours, facts);
   for (const at of place.rows) drawRow(context, place, at, colours, facts, data);
+  if (place.zoomed) drawSpan(context, place, colours);
   const gap = hatch(context, "gap", colours.soft);
   const top = place.rows[0].y, bottom = place.axis - 4;
+  context.save();
+  clipTo(context, place, top, bottom);
   for (const [from, to] of facts.gaps) {
     const x = place.x(from), width = Math.max(2, place.x(to) - x);
     context.fillStyle = gap;
     context.fillRect(x, top, width, bottom - top);
-    if (width > 70) label(context, "not reached", x + width / 2, top + 12, colours);
+    if (width > 70) label(context, "not reached", clamp(x + width / 2, place.left + 40, place.left + place.plot - 40), top + 12, colours);
   }
+  context.restore();
   drawAxis(context, place, colours);
+}
+
+// Which piece of the strip the rows show.
+function drawSpan(context, place, colours) {
+  const a = place.whole(place.from), b = Math.max(a + 2, place.whole(place.to)), y = place.process, low = place.rows[0].y - HEAD - 2;
+  context.strokeStyle = colours.ink;
+  context.strokeRect(a, y - 4, b - a, 8);
+  context.strokeStyle = colours.quiet;
+  context.beginPath();
+  context.moveTo(a, y + 4);
+  context.lineTo(place.left, low);
+  context.moveTo(b, y + 4);
+  context.lineTo(place.left + place.plot, low);
+  context.stroke();
 }
 
 function label(context, words, x, y, colours) {
@@ -123,7 +152,7 @@ function drawStrip(context, place, colours, facts) {
   context.fillStyle = colours.soft;
   context.fillRect(left, process - 2, plot, 4);
   for (const [from, to] of facts.air) {
-    const x = place.x(from), width = Math.max(1, place.x(to) - x);
+    const x = place.whole(from), width = Math.max(1, place.whole(to) - x);
     context.fillStyle = colours.ground;
     context.fillRect(x, process - 3, width, 6);
     context.strokeStyle = colours.soft;
@@ -144,17 +173,15 @@ function drawRow(context, place, at, colours, facts, data) {
   if (row.head) text(context, row.head, left, y - HEAD / 2 - 1, small);
   context.fillStyle = colours.lane;
   context.fillRect(left, y, plot, height);
-  context.fillStyle = colours.ground;
-  for (const [from, to] of facts.air) context.fillRect(place.x(from), y, place.x(to) - place.x(from), height);
-  context.strokeStyle = colours.faint;
-  context.strokeRect(left - 0.5, y + 0.5, plot + 1, height - 1);
   if (row.ticks.length) drawTicks(context, place, at, colours);
   else text(context, row.title, left - 8, y + height / 2, { ...small, colour: colours.ink, align: "right" });
   const index = facts.rows.indexOf(row);
   context.save();
-  context.beginPath();
-  context.rect(left, y, plot, height);
-  context.clip();
+  clipTo(context, place, y, y + height);
+  context.fillStyle = colours.ground;
+  for (const [from, to] of facts.air) context.fillRect(place.x(from), y, place.x(to) - place.x(from), height);
+  context.strokeStyle = colours.faint;
+  context.strokeRect(left - 0.5, y + 0.5, plot + 1, height - 1);
   for (const finding of facts.findings) {
     if (finding.row !== index) continue;
     const x = place.x(finding.from_s);
@@ -163,9 +190,9 @@ function drawRow(context, place, at, colours, facts, data) {
     context.fillRect(x, y, Math.max(2, place.x(finding.to_s) - x), height);
     context.globalAlpha = 1;
   }
-  context.restore();
   drawBounds(context, place, at, colours);
   if (row.lines.length > 1) drawShortage(context, place, at, colours, data);
+  context.restore();
   for (const line of row.lines) drawLine(context, place, at, colours, data, line);
 }
 
@@ -216,22 +243,22 @@ function drawLine(context, place, at, colours, data, [name, column, style]) {
   }
 }
 
-// Where the programmed tool speed lies above the largest possible: the area between the two.
+// Where the programmed tool speed lies above the largest possible: what is under the one and over the other.
 function drawShortage(context, place, at, colours, data) {
-  const [ceiling, line] = at.row.lines.map(([name, column]) => data[name][column]);
-  const time = data.time_s[0];
-  context.fillStyle = hatch(context, "fail", colours.fail);
-  context.strokeStyle = colours.fail;
-  for (let i = 0; i < time.length; i++) {
-    if (!(line[i] > ceiling[i])) continue;
-    let end = i;
-    while (end + 1 < time.length && line[end + 1] > ceiling[end + 1]) end++;
+  const [ceiling, line] = at.row.lines.map(([name, column]) => data[name][column]), { low, high } = at.row;
+  const region = (values, missing, edge) => {
     context.beginPath();
-    for (let k = i; k <= end; k++) context.lineTo(place.x(time[k]), heightOf(at, line[k]));
-    for (let k = end; k >= i; k--) context.lineTo(place.x(time[k]), heightOf(at, ceiling[k]));
-    context.fill();
-    i = end;
-  }
+    context.moveTo(place.x(data.time_s[0][0]), edge);
+    values.forEach((value, i) => context.lineTo(place.x(data.time_s[0][i]), heightOf(at, Number.isFinite(value) ? Math.min(value, high) : missing)));
+    context.lineTo(place.x(data.time_s[0].at(-1)), edge);
+  };
+  context.save();
+  region(line, low, at.y + at.height);
+  context.clip();
+  region(ceiling, high, at.y);
+  context.fillStyle = hatch(context, "fail", colours.fail);
+  context.fill();
+  context.restore();
 }
 
 // One path through the samples; where several fall on a pixel column only its first, least, greatest and last are drawn. NaN leaves a gap.
@@ -269,12 +296,12 @@ export function trace(context, place, time, values, toY) {
 }
 
 function drawAxis(context, place, colours) {
-  const { plot, axis, duration, offset } = place;
-  const step = niceStep(duration, plot / 80);
+  const { plot, axis, from, to, offset } = place;
+  const step = niceStep(to - from, plot / 80);
   const digits = Math.max(0, -Math.floor(Math.log10(step) + 1e-9));
   context.strokeStyle = colours.soft;
   context.beginPath();
-  for (let k = Math.ceil(offset / step - 1e-4); k * step <= offset + duration + 1e-4 * step; k++) {
+  for (let k = Math.ceil((offset + from) / step - 1e-4); k * step <= offset + to + 1e-4 * step; k++) {
     const x = Math.round(place.x(k * step - offset)) + 0.5;
     context.moveTo(x, axis);
     context.lineTo(x, axis + 4);

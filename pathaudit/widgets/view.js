@@ -6,7 +6,8 @@ import { blockAt, drawCursor, drawRows, layOut } from "./rows.js";
 import { theme } from "./theme.js";
 
 const READOUT = [["time", "s"], ["distance", "mm"], ["tool speed", "mm/s"], ["busiest joint", "of limit"], ["reserve", "×"], ["sigma_min", ""]];
-const KEYS = "Keys on the timeline: ← → one sample · with Shift far · Page Up, Page Down · Home, End · N next finding · P previous · drag the arm to turn it";
+const KEYS = "Keys on the timeline: ← → one sample · with Shift far · Page Up, Page Down · Home, End · N next finding, P previous · + − 0 zoom · drag the arm to turn it";
+const MOST_ZOOM = 1 / 2000;
 
 export function element(name, attributes = {}, ...children) {
   const made = document.createElement(name);
@@ -27,15 +28,20 @@ export function severityMark(severity) {
 // onCursor(sample) is told where the cursor stands; askRetimed(on), where there is somebody to ask, fetches the audit of the retimed path.
 export function mount(root, onCursor, askRetimed) {
   const parts = skeleton(root);
-  const state = { facts: null, data: null, arm: null, place: null, colours: null, i: 0, selected: -1, width: 0, frame: 0, stale: false };
+  const state = { facts: null, data: null, arm: null, place: null, colours: null, i: 0, selected: -1, width: 0, span: null, onStrip: false, frame: 0, stale: false };
 
   function show(facts, data) {
-    const sample = state.data ? state.data.sample[0][state.i] : null;
+    const sample = state.data ? state.data.sample[0][state.i] : null, ends = state.place && state.place.zoomed ? state.span.map(sampleAt) : null;
     Object.assign(state, { facts, data, arm: armView(facts, data), selected: -1, width: 0 });
     state.i = sample === null ? firstPlace(facts) : nearest(data.sample[0], sample);
+    state.span = ends ? ends.map((end) => data.time_s[0][nearest(data.sample[0], end)]) : [0, facts.duration_s];
     fillHead(parts.head, facts, askRetimed);
     fillFindings(parts.findings, facts, choose);
     resize();
+  }
+
+  function sampleAt(time) {
+    return state.data.sample[0][nearest(state.data.time_s[0], time)];
   }
 
   function resize() {
@@ -45,7 +51,7 @@ export function mount(root, onCursor, askRetimed) {
     const wide = width >= 760;
     root.classList.toggle("pa-narrow", !wide);
     const rowsWidth = wide ? Math.round(width * 0.63) : width;
-    state.place = layOut(state.facts, rowsWidth);
+    state.place = layOut(state.facts, rowsWidth, state.span);
     const armWidth = wide ? width - rowsWidth - 10 : width, armHeight = wide ? state.place.height : 300;
     parts.rows.style.width = `${rowsWidth}px`;
     parts.rows.style.height = `${state.place.height}px`;
@@ -53,6 +59,22 @@ export function mount(root, onCursor, askRetimed) {
     parts.arm.style.height = `${armHeight}px`;
     state.arm.frameAll(armWidth, armHeight);
     repaint(true);
+  }
+
+  // Show `length` seconds in the rows, `about` standing where it stood, or in the middle where it was out of sight.
+  function zoomTo(length, about) {
+    const { duration_s: duration } = state.facts, [from, to] = state.span;
+    const size = clamp(length, Math.min(duration, MOST_ZOOM * duration), duration);
+    const share = about >= from && about <= to ? (about - from) / (to - from || 1) : 0.5;
+    const start = clamp(about - share * size, 0, duration - size);
+    state.span = [start, start + size];
+    state.place = layOut(state.facts, state.place.width, state.span);
+    parts.whole.disabled = !state.place.zoomed;
+    repaint(true);
+  }
+
+  function zoom(factor) {
+    if (state.place) zoomTo(factor * (state.span[1] - state.span[0]), state.data.time_s[0][state.i]);
   }
 
   // Painting waits for the next frame and happens once in it; `all` draws the base pictures too.
@@ -97,9 +119,12 @@ export function mount(root, onCursor, askRetimed) {
     slider.setAttribute("aria-valuetext", `${values[0]} seconds, ${values[1]} millimetres, busiest joint ${values[3]}, ${said}`);
   }
 
-  function moveTo(i, selected = -1, quiet = false) {
+  // Where the place lies outside the rows' span they follow it, unless `still`; `quiet`: nobody is told.
+  function moveTo(i, { selected = -1, quiet = false, still = false } = {}) {
     if (!state.data) return;
     state.i = clamp(i, 0, state.data.time_s[0].length - 1);
+    const time = state.data.time_s[0][state.i], [from, to] = state.span;
+    if (state.place && !still && (time < from || time > to)) zoomTo(to - from, time);
     if (selected !== state.selected) {
       state.selected = selected;
       [...parts.findings.rows].forEach((row, k) => row.setAttribute("aria-selected", k === selected));
@@ -108,8 +133,14 @@ export function mount(root, onCursor, askRetimed) {
     if (!quiet) onCursor(state.data.sample[0][state.i]);
   }
 
+  // Go to a finding; one that would be a mere tick in the rows is shown large.
   function choose(k) {
-    moveTo(state.facts.findings[k].at, k);
+    const finding = state.facts.findings[k], long = finding.to_s - finding.from_s;
+    moveTo(finding.at, { selected: k });
+    if (state.place && long / (state.span[1] - state.span[0]) * state.place.plot < 24) {
+      state.span = [0, 0];
+      zoomTo(10 * long, 0.5 * (finding.from_s + finding.to_s));
+    }
   }
 
   function step(direction) {
@@ -129,7 +160,7 @@ export function mount(root, onCursor, askRetimed) {
       ArrowRight: by(event.shiftKey ? far : 1), ArrowUp: by(event.shiftKey ? far : 1),
       ArrowLeft: by(event.shiftKey ? -far : -1), ArrowDown: by(event.shiftKey ? -far : -1),
       PageUp: by(page), PageDown: by(-page), Home: by(-Infinity), End: by(Infinity),
-      n: () => step(1), p: () => step(-1),
+      n: () => step(1), p: () => step(-1), "+": () => zoom(0.5), "=": () => zoom(0.5), "-": () => zoom(2), 0: () => zoom(Infinity),
     }[event.key.length === 1 ? event.key.toLowerCase() : event.key];
     if (!act) return;
     act();
@@ -144,9 +175,17 @@ export function mount(root, onCursor, askRetimed) {
       parts.rows.focus({ preventScroll: true });
       const block = blockAt(state.place, x, y);
       if (block >= 0) return choose(block);
+      state.onStrip = y < state.place.process + 8;
       parts.rows.setPointerCapture(event.pointerId);
     } else if (!parts.rows.hasPointerCapture(event.pointerId)) return;
-    moveTo(nearest(state.data.time_s[0], state.place.time(x)));
+    moveTo(nearest(state.data.time_s[0], state.onStrip ? state.place.wholeTime(x) : state.place.time(x)), { still: !state.onStrip });
+  }
+
+  // A pinch, or the wheel with Ctrl: the plain wheel stays the page's.
+  function onWheel(event) {
+    if (!state.place || !event.ctrlKey) return;
+    event.preventDefault();
+    zoomTo(1.002 ** event.deltaY * (state.span[1] - state.span[0]), state.place.time(event.clientX - parts.rows.getBoundingClientRect().left));
   }
 
   function turn(dx, dy) {
@@ -178,6 +217,8 @@ export function mount(root, onCursor, askRetimed) {
   }
 
   parts.rows.addEventListener("keydown", onKey);
+  parts.rows.addEventListener("wheel", onWheel, { passive: false });
+  [[parts.nearer, 0.5], [parts.farther, 2], [parts.whole, Infinity]].forEach(([button, factor]) => button.addEventListener("click", () => zoom(factor)));
   for (const type of ["pointerdown", "pointermove"]) {
     parts.rows.addEventListener(type, onScrub);
     parts.arm.addEventListener(type, onOrbit);
@@ -191,7 +232,7 @@ export function mount(root, onCursor, askRetimed) {
 
   return {
     show, say: (words) => { parts.status.textContent = words; },
-    toSample: (sample) => state.data && moveTo(nearest(state.data.sample[0], sample), -1, true),
+    toSample: (sample) => state.data && moveTo(nearest(state.data.sample[0], sample), { quiet: true }),
     close,
   };
 }
@@ -209,9 +250,13 @@ function skeleton(root) {
   const head = element("div", { class: "pa-head" });
   const values = READOUT.map(() => element("b"));
   const here = element("b");
+  const [farther, nearer, whole] = [["−", "Show more of the path"], ["+", "Show less of the path, larger"], ["whole path", "Show the whole path"]]
+    .map(([words, name]) => focusable("button", { type: "button", "aria-label": name, title: name }, words));
+  whole.disabled = true;
   const readout = element("div", { class: "pa-read" },
     ...READOUT.map(([name, unit], k) => element("div", {}, element("span", {}, name), values[k], element("span", { class: "pa-unit" }, unit))),
-    element("div", { class: "pa-where" }, element("span", {}, "at the cursor"), here));
+    element("div", { class: "pa-where" }, element("span", {}, "at the cursor"), here),
+    element("div", { class: "pa-zoom" }, farther, nearer, whole));
   const [rowsBase, rowsOver] = layers(), [armBase, armOver] = layers();
   const rows = focusable("div", { class: "pa-rows", role: "slider", "aria-label": "Place on the path", "aria-valuemin": "0" }, rowsBase, rowsOver);
   const arm = focusable("div", { class: "pa-arm", role: "img", "aria-label": "The arm at the cursor; arrow keys turn the view" }, armBase, armOver);
@@ -221,7 +266,7 @@ function skeleton(root) {
   const status = element("div", { class: "pa-status", role: "status" });
   root.append(head, readout, element("div", { class: "pa-main" }, rows, arm), element("div", { class: "pa-list" }, table),
     element("div", { class: "pa-keys" }, KEYS), status);
-  return { head, values, here, rows, rowsBase, rowsOver, arm, armBase, armOver, findings, status };
+  return { head, values, here, rows, rowsBase, rowsOver, arm, armBase, armOver, findings, farther, nearer, whole, status };
 }
 
 function fillHead(head, facts, askRetimed) {
@@ -256,5 +301,6 @@ function fillFindings(body, facts, choose) {
     });
     return row;
   }));
+  body.parentNode.tHead.hidden = !facts.findings.length;
   if (!facts.findings.length) body.replaceChildren(element("tr", {}, element("td", { colspan: "7" }, "No findings.")));
 }

@@ -161,6 +161,53 @@ def test_the_numbers_do_not_jump_while_scrubbing(opened, audit):
     assert all(np.array_equal(lefts[0][:, 1], other[:, 1]) for other in lefts)
 
 
+def span(page):
+    """First and last time of the rows, from the mouse at both ends of them."""
+    ends = []
+    for x, y in ((5, 300), (2000, 300)):
+        page.evaluate("""([x, y]) => { const rows = document.querySelector('.pa-rows'), box = rows.getBoundingClientRect();
+            const at = { clientX: box.left + x, clientY: box.top + y, pointerId: 1, buttons: 1, bubbles: true };
+            rows.setPointerCapture = () => {}; rows.hasPointerCapture = () => true;
+            rows.dispatchEvent(new PointerEvent('pointerdown', at)); }""", [x, y])
+        ends.append(float(readout(page)[0]))
+    return ends
+
+
+def test_zoom_keeps_the_cursor_in_sight(opened, audit):
+    page = opened(audit)
+    whole = page.get_by_role("button", name="Show the whole path")
+    assert whole.is_disabled() and span(page) == [0.0, 14.0]
+    page.locator(".pa-rows").focus()
+    for key in ("Home", *["PageUp"] * 4, "+", "+"):
+        page.keyboard.press(key)
+    place = float(readout(page)[0])
+    assert page.get_by_role("button", name="Show the whole path").is_enabled()
+    low, high = span(page)
+    assert high - low == pytest.approx(3.5, abs=0.02) and (place - low) / (high - low) == pytest.approx(place / 14.0, abs=0.01)
+    page.keyboard.press("End")
+    low, high = span(page)
+    assert high == pytest.approx(14.0, abs=0.01) and high - low == pytest.approx(3.5, abs=0.02)
+    page.keyboard.press("-")
+    low, high = span(page)
+    assert high - low == pytest.approx(7.0, abs=0.02)
+    whole.click()
+    assert span(page) == [0.0, 14.0] and whole.is_disabled()
+    for _ in range(20):
+        page.locator(".pa-rows").press("+")
+    assert span(page)[0] <= span(page)[1]
+
+
+def test_a_short_finding_is_shown_large(opened):
+    audit = fake_audit(4000, duration=80.0)
+    short = audit.finding_list[0]
+    short.first, short.last, short.worst, short.t_start, short.t_end = 1000, 1004, 1002, audit.time[1000], audit.time[1004]
+    page = opened(audit)
+    page.locator(".pa-findings tbody tr").nth(0).click()
+    assert cursor(page) == 1002
+    low, high = span(page)
+    assert low < short.t_start < short.t_end < high and 5 * (short.t_end - short.t_start) < high - low < 20 * (short.t_end - short.t_start)
+
+
 def test_the_arm_turns_and_comes_back(opened, audit):
     page = opened(audit)
     stage = ".pa-arm canvas:nth-child(1)"

@@ -1,4 +1,6 @@
-"""Makes the demo's two paths from their geometry: `python tests/make_demo.py` writes them, and copies the demo to notebooks/.
+"""Makes the demo's two paths from their geometry.
+
+`python tests/make_demo.py` writes them, runs the notebook, copies the demo to notebooks/ and draws the README's picture.
 
 Closed forms in plain Python floats, so that the files come out the same everywhere. Lengths in mm, angles in rad, times in s. Both
 parts are invented. The seam: the foot of a bent wall on a floor sheet, welded from inside the bend. The bead: a gasket on a housing.
@@ -31,7 +33,7 @@ TRAIL_ANGLE = math.radians(8.0)  # the nozzle leans back from the normal, so tha
 BEAD_AVERAGED = 20.0
 BEAD_STEP = 0.01
 
-AIR_SPEED, AIR_RAMP, LEAD = 250.0, 0.25, 150.0
+AIR_SPEED, AIR_RAMP, LEAD = 200.0, 0.25, 150.0
 
 
 def ramp_area(x):
@@ -218,15 +220,44 @@ def bead_csv():
 
 
 MADE = {"seam.csv": seam_csv, "bead.csv": bead_csv}
+NOTEBOOK = "01-check-a-seam.ipynb"
+
+
+def run_notebook(folder):
+    """The demo's notebook in `folder` with the outputs of a run there, and without the traces of when and how it ran."""
+    import nbformat
+    from nbclient import NotebookClient
+
+    notebook = nbformat.read(folder / NOTEBOOK, 4)
+    NotebookClient(notebook, timeout=120, resources={"metadata": {"path": str(folder)}}, store_widget_state=False).execute()
+    for cell in notebook.cells:
+        cell.metadata.pop("execution", None)
+    notebook.metadata["language_info"] = {"name": "python"}
+    return notebook
+
+
+def draw_picture(file):
+    """The picture in the README: the seam's audit as the widget leaves it where no kernel runs."""
+    import pathaudit as pa
+    from pathaudit.report.scene import scene
+    from pathaudit.report.still import png_picture
+
+    audit = pa.audit(pa.read_path(DEMO / "seam.csv"), pa.read_cell(DEMO / "cell.toml"))
+    file.parent.mkdir(exist_ok=True)
+    file.write_bytes(png_picture(scene(audit)))
 
 
 def main():
+    import nbformat
+
     for name, make in MADE.items():
         (DEMO / name).write_bytes(make().encode())
+    nbformat.write(run_notebook(DEMO), DEMO / NOTEBOOK)
     NOTEBOOKS.mkdir(exist_ok=True)
     for file in sorted(DEMO.iterdir()):
-        if file.is_file() and not file.name.startswith((".", "__")) and file.suffix != ".ipynb":
+        if file.is_file() and not file.name.startswith((".", "__")):
             shutil.copyfile(file, NOTEBOOKS / file.name)
+    draw_picture(NOTEBOOKS / "pictures" / "seam.png")
 
 
 if __name__ == "__main__":

@@ -1,0 +1,68 @@
+"""The notebooks run from top to bottom, are short, and their stored outputs are what a run gives."""
+
+import json
+import shutil
+
+import make_demo
+import pytest
+
+NOTEBOOKS = sorted(make_demo.NOTEBOOKS.glob("*.ipynb"))
+
+
+def ids(file):
+    return file.name
+
+
+@pytest.fixture(scope="module")
+def run_again(tmp_path_factory):
+    """The notebook run in a copy of the demo."""
+    folder = tmp_path_factory.mktemp("demo") / "cell"
+    shutil.copytree(make_demo.DEMO, folder, ignore=shutil.ignore_patterns("__pycache__", ".*"))
+    return make_demo.run_notebook(folder)
+
+
+def said(cell):
+    """What a code cell says in words: printed lines, the text of tables and values; not the widget, its picture and its tables."""
+    lines = []
+    for output in cell["outputs"]:
+        if output["output_type"] == "stream":
+            lines += "".join(output["text"]).splitlines()
+        elif output["output_type"] == "execute_result":
+            lines += "".join(output["data"]["text/plain"]).splitlines()
+    return lines
+
+
+def code_cells(notebook):
+    return [cell for cell in notebook["cells"] if cell["cell_type"] == "code"]
+
+
+def test_the_notebook_runs_and_says_what_is_stored(run_again):
+    stored = code_cells(json.loads((make_demo.NOTEBOOKS / make_demo.NOTEBOOK).read_text("utf-8")))
+    fresh = code_cells(run_again)
+    assert len(stored) == len(fresh)
+    for old, new in zip(stored, fresh, strict=True):
+        assert said(old) == said(new)
+    assert any(line.endswith("fail, 4 findings>") for line in said(fresh[0]))
+
+
+def test_the_audit_shows_itself_in_three_outputs(run_again):
+    shown = [cell for cell in code_cells(run_again) if any("application/vnd.jupyter.widget-view+json" in o.get("data", {}) for o in cell["outputs"])]
+    assert len(shown) == 2
+    for cell in shown:
+        widget, picture, tables = cell["outputs"]
+        assert "text/plain" in widget["data"]
+        assert {"image/png", "image/svg+xml"} <= set(picture["data"])
+        assert "text/html" in tables["data"]
+
+
+@pytest.mark.parametrize("file", NOTEBOOKS, ids=ids)
+def test_notebooks_are_short_stored_with_outputs_and_small(file):
+    notebook = json.loads(file.read_text("utf-8"))
+    lines = [line for cell in code_cells(notebook) for line in "".join(cell["source"]).splitlines() if line.strip()]
+    assert len(lines) <= 45
+    assert max(map(len, lines)) <= 110
+    assert not [line for line in lines if line.lstrip().startswith(("def ", "class ", "if ", "while ", "import os", "import sys"))]
+    assert all(cell["execution_count"] == k for k, cell in enumerate(code_cells(notebook), 1))
+    assert not [output for cell in code_cells(notebook) for output in cell["outputs"] if output["output_type"] == "error"]
+    assert "widgets" not in notebook["metadata"]
+    assert file.stat().st_size <= 600_000

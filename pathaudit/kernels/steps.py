@@ -155,7 +155,7 @@ def tangent(
         _, smallest = factor(jacobian, n, work, vector)
         if smallest > 0.0:
             substitute(work, vector, error, n, step)
-    if smallest < 1e-3 and known >= 3:
+    if smallest < 1e-6 and known >= 3:
         t0, t1, t2 = time[k - 3], time[k - 2], time[k - 1]
         a = (t2 - t1) / ((t0 - t1) * (t0 - t2))
         b = (t2 - t0) / ((t1 - t0) * (t1 - t2))
@@ -395,7 +395,7 @@ def follow(chain, length, rows, limits, time, position, rotation, twist, start, 
     """Follow a path from `start` (n,), a solution of its first pose or close to one.
 
     chain (links, prismatic), length in m, rows 6 or 5 (spin free), limits (lower, upper) of the joints, the path as time (N,),
-    position (N, 3), rotation (N, 3, 3) and twist (N, 6) in part axes; allow (m, rad) is how far off still counts as reached where no
+    or any other increasing parameter, position (N, 3), rotation (N, 3, 3) and twist (N, 6) by it in part axes; allow (m, rad) is how far off still counts as reached where no
     exact solution is found. Returns joints (N, n), outcome (N,) uint8 (REACHED; CROSSED: a singular place was passed on the smooth
     branch; JUMPED: reached, though not from the sample before; UNREACHED: the closest found), left (N, 2), the metres and radians left
     to the pose, and steps (N,), the small steps that were walked to the sample.

@@ -129,6 +129,18 @@ def test_a_crossing_of_the_shoulder_singularity_stays_smooth():
     np.testing.assert_allclose(audit.joints, joints, atol=1e-6)
 
 
+@pytest.mark.parametrize("seed", range(40))
+def test_coarse_crossings_stay_smooth(seed):
+    """Random motions around the shoulder singularity, 20 ms apart, most of which cross it: the known motion comes back all the same."""
+    random, time = np.random.default_rng(seed), np.linspace(0.0, 3.0, 151)
+    middle = [0.2, -0.7 + random.uniform(-0.2, 0.2), 0.5 + random.uniform(-0.2, 0.2), 0.5, 0.9, 0.3]
+    joints = middle + random.uniform(0.05, 0.4, 6) * np.sin(np.outer(time, random.uniform(0.5, 2.5, 6)) + random.uniform(0, 6, 6))
+    cell = cell_of(puma(speed_deg_s=FAST), 0.1, start=joints[0])
+    audit = pa.audit(path_of_motion(cell, time, joints), cell)
+    np.testing.assert_allclose(audit.joints, joints, atol=1e-5)
+    assert not audit.motion.jumps
+
+
 # ------------------------------------------------------------------------------------------------- known motions come back
 
 

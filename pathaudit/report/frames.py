@@ -31,6 +31,7 @@ def measures_frame(audit):
         columns[f"{name}_speed_share"] = rates.speed_share[:, j]
         columns[f"{name}_acceleration_share"] = rates.acceleration_share[:, j]
         columns[f"{name}_travel_left_{unit}"] = rates.travel_left[:, j] * scale
+    columns["least_travel_joint"] = _least_travel(rates.travel_left / (arm.upper - arm.lower), arm.joint_names)
     columns |= {
         "sigma_min": rates.sigma_min, "sigma_max": rates.sigma_max, "condition": rates.condition, "manipulability": rates.manipulability,
         "speed_use": rates.speed_share.max(axis=1), "reserve": rates.reserve,
@@ -40,3 +41,9 @@ def measures_frame(audit):
     for i, name in enumerate(("x", "y", "z", "rx", "ry", "rz")):
         columns[f"lost_{name}"] = rates.lost_direction[:, i]
     return pd.DataFrame(columns)
+
+
+def _least_travel(share, names):
+    """The joint with the least of its travel left, '' where there is none: not reached, or all joints turn without end."""
+    known = np.where(np.isfinite(share), share, np.inf)
+    return np.where(np.isfinite(known).any(axis=1), np.array(names)[known.argmin(axis=1)], "")

@@ -76,11 +76,11 @@ class Motion:
         return f"The pose is {side}: {wanted * 1000:.0f} mm from joint {self.cell.arm.joint_names[min(1, n - 1)]}; {off}."
 
 
-def follow(path: Path, cell: Cell, *, start=None) -> Motion:
+def follow(path: Path, cell: Cell, *, start=None, start_reason="") -> Motion:
     """Follow `path` with the arm of `cell` by damped Jacobian pseudo-inverse steps.
 
     start (n,) rad or m: the posture to start near; else cell.start; else of all postures found for the first pose the one with the
-    best worst reserve over the path.
+    best worst reserve over the path. start_reason: the sentence to give for a start that is known to fit.
     """
     from .kernels import rates
 
@@ -90,6 +90,7 @@ def follow(path: Path, cell: Cell, *, start=None) -> Motion:
     task = _Task(path, cell, 5 if path.spin_free else 6, twist, twist_rate, along, lay)
     start = cell.start if start is None else np.asarray(start, dtype=float)
     first, reason = task.best_posture() if start is None else task.posture_near(start)
+    reason = start_reason or reason
     joints, outcome, left, _ = task.follow(first, slice(None))
     closest = joints.copy()
     joints[outcome == 3] = np.nan

@@ -70,8 +70,9 @@ class Retiming:
         from .pipeline import audit
 
         motion = self.rates.motion
-        start = motion.closest[0] if motion.reached[0] else None
-        return audit(self.path(), motion.cell, start=start)
+        if not motion.reached[0]:
+            return audit(self.path(), motion.cell)
+        return audit(self.path(), motion.cell, start=motion.closest[0], start_reason="Starts in the posture of the audit that was retimed.")
 
 
 def retime(rates: Rates, style=None) -> Retiming:

@@ -16,7 +16,7 @@ class Places:
         self.duration, self.offset = facts["duration_s"] or 1.0, facts["offset_s"]
         self.strip = top + 14
         self.blocks, levels = self._stack(facts["findings"])
-        y = self.strip + (BLOCK + 2) * max(1, levels) + 17
+        y = self.strip + (BLOCK + 2) * max(1, levels) + 19
         self.process = y - 10
         self.rows = []
         for row in facts["rows"]:

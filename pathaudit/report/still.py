@@ -33,7 +33,7 @@ def _picture(surface_class, shown, title):
         _draw_title(surface, facts)
     draw_rows(surface, places, facts, arrays)
     x = float(places.x(arrays["time_s"][at]))
-    surface.line([(x, places.process - 5), (x, places.axis)], INK)
+    surface.line([(x, places.process - 5), (x, places.axis)], INK, 1, (1, 3))
     draw_arm(surface, (_ROWS + 10.0, top + 6.0, _WIDTH - _ROWS - 12.0, places.bottom - top - 12.0), facts, arrays, at)
     return surface.finish()
 

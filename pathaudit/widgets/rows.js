@@ -24,7 +24,7 @@ export function layOut(facts, width, [from, to]) {
     return { finding, x: start, width: wide, level };
   });
   const strip = HEAD;
-  let y = strip + (BLOCK + 2) * Math.max(1, ends.length) + 17;
+  let y = strip + (BLOCK + 2) * Math.max(1, ends.length) + 19;
   const process = y - 10;
   const rows = facts.rows.map((row) => {
     if (row.head) y += HEAD + GAP;
@@ -53,7 +53,9 @@ export function drawCursor(canvas, place, colours, data, i, selected) {
   context.beginPath();
   context.moveTo(x, place.zoomed ? place.rows[0].y : place.process);
   context.lineTo(x, place.axis);
+  context.globalAlpha = 0.6;      // a peak right under the cursor still shows
   context.stroke();
+  context.globalAlpha = 1;
   context.beginPath();
   context.moveTo(above - 5, place.process - 7);
   context.lineTo(above + 5, place.process - 7);

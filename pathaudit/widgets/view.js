@@ -110,7 +110,7 @@ export function mount(root, onCursor, askRetimed) {
     const here = facts.findings.filter((f) => time >= f.from_s - 1e-6 && time <= f.to_s + 1e-6);
     const said = here.length ? here.map((f) => `${f.number} ${f.severity}: ${f.kind} ${f.joint}`.trim()).join(" · ") : "no finding";
     if (parts.here.textContent !== said) {
-      parts.here.textContent = said;
+      parts.here.textContent = parts.here.title = said;
       [...parts.findings.rows].forEach((row, k) => row.classList.toggle("pa-here", here.includes(facts.findings[k])));
     }
     const slider = parts.rows;
@@ -131,6 +131,12 @@ export function mount(root, onCursor, askRetimed) {
     }
     repaint(false);
     if (!quiet) onCursor(state.data.sample[0][state.i]);
+  }
+
+  // Follow another view of the same model; our own place comes back this way too, and changes nothing.
+  function toSample(sample) {
+    const i = state.data ? nearest(state.data.sample[0], sample) : state.i;
+    if (i !== state.i) moveTo(i, { quiet: true });
   }
 
   // Go to a finding; one that would be a mere tick in the rows is shown large.
@@ -232,7 +238,7 @@ export function mount(root, onCursor, askRetimed) {
 
   return {
     show, say: (words) => { parts.status.textContent = words; },
-    toSample: (sample) => state.data && moveTo(nearest(state.data.sample[0], sample), { quiet: true }),
+    toSample,
     close,
   };
 }

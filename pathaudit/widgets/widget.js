@@ -13,23 +13,27 @@ async function render({ model, el }) {
       model.set("cursor", sample);
       model.save_changes();
     }, 150);
-  }, model.send && ((on) => model.send({ do: "show retimed", on })));
+  }, model.send && ((on) => {
+    view.say("Waiting for the kernel ...");
+    model.send({ do: "show retimed", on });
+  }));
+  const status = () => view.say(model.get("status"));
   const refresh = async () => {
     const mine = ++shown;
     try {
       const facts = model.get("facts"), data = await unpack(model.get("block"), facts.layout);
-      if (mine === shown) view.show(facts, data);
+      if (mine !== shown) return;
+      view.show(facts, data);
+      status();
     } catch (error) {
       view.say(`The timeline cannot be drawn: ${error.message}`);
       throw error;
     }
   };
-  const status = () => view.say(model.get("status"));
   const cursor = () => view.toSample(model.get("cursor"));
   model.on("change:block", refresh);
   model.on("change:status", status);
   model.on("change:cursor", cursor);
-  status();
   await refresh();
   return () => {
     clearTimeout(timer);

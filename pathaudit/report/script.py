@@ -10,13 +10,15 @@ from importlib.resources import files
 MODULES = ("data", "theme", "rows", "arm", "view", "widget")      # each imports only from those before it
 
 _IMPORT = re.compile(r"^import [^;]*;\n", re.MULTILINE)
+_COMMENT = re.compile(r"^ *//.*\n", re.MULTILINE)
 _EXPORT = re.compile(r"^export (?!default)", re.MULTILINE)
 
 
 @cache
 def joined_modules():
-    """One ES module whose default export has `render`. The modules keep their names apart, so that joining is leaving out import and export."""
-    texts = (_EXPORT.sub("", _IMPORT.sub("", _read(f"{name}.js"))) for name in MODULES)
+    """One ES module whose default export has `render`. The modules keep their names apart, so that joining is leaving out import and export,
+    and the lines of comment with them."""
+    texts = (_COMMENT.sub("", _EXPORT.sub("", _IMPORT.sub("", _read(f"{name}.js")))) for name in MODULES)
     return "\n".join(texts)
 
 

@@ -216,6 +216,7 @@ export function mount(root, onCursor, askRetimed) {
   // Whoever still holds this view after its end holds no data and no canvas.
   function close() {
     watch.disconnect();
+    themes.disconnect();
     cancelAnimationFrame(state.frame);
     root.replaceChildren();
     for (const name of Object.keys(state)) state[name] = null;
@@ -231,8 +232,11 @@ export function mount(root, onCursor, askRetimed) {
   }
   parts.arm.addEventListener("keydown", onOrbitKey);
   parts.arm.addEventListener("dblclick", () => { state.arm.reset(); repaint(true); });
-  // The style sheet gives the root a minute colour transition: its end tells that the page's theme has changed and has arrived.
-  root.addEventListener("transitionend", (event) => event.target === root && repaint(true));
+  // The style sheet gives the root a minute colour transition: its end tells that a new theme has arrived. A root that was out of the
+  // document meanwhile has none; the page's own mark of the theme tells then.
+  for (const type of ["transitionend", "transitioncancel"]) root.addEventListener(type, (event) => event.target === root && repaint(true));
+  const themes = new MutationObserver(() => repaint(true));
+  themes.observe(document.body, { attributeFilter: ["class", "data-jp-theme-name", "data-jp-theme-light"] });
   const watch = new ResizeObserver(resize);
   watch.observe(root);
 

@@ -26,7 +26,7 @@ def page(desk):
 
 def painted(page, more_than=-1):
     page.wait_for_function("(n) => [...document.querySelectorAll('.pa[data-painted]')].some((e) => Number(e.dataset.painted) > n)",
-                           arg=more_than, timeout=60000)      # kernels may have to be compiled first
+                           arg=more_than, timeout=120000)      # kernels may have to be compiled first
     return int(page.locator(".pa").get_attribute("data-painted"))
 
 
@@ -71,6 +71,14 @@ def test_scrubbing_asks_nothing_of_the_kernel_and_the_place_arrives_later(lab, p
     assert page.locator(".pa").get_attribute("data-cursor") == "3"
     assert page.evaluate("Promise.race([window.busy.then(() => 'done'), Promise.resolve('busy')])") == "busy"
     page.evaluate("window.busy.then(() => null)")
+    page.locator(".pa-findings tbody tr").nth(1).click()
+    worst = page.locator(".pa").get_attribute("data-cursor")
+    wait_for_answer(lab, page, "audit.finding_list[1].worst", worst)
+    wait_for_answer(lab, page, SHOWN.format("scrub") + "[0].cursor", worst)
+    assert page.locator(".pa-findings tr[aria-selected=true] td").first.inner_text() == "2"
+    page.locator(".pa-rows").focus()
+    for key in ("Home", "ArrowRight", "ArrowRight", "ArrowRight"):
+        page.keyboard.press(key)
     shown = SHOWN.format("scrub")
     wait_for_answer(lab, page, f"{shown}[0].cursor", "3")
     assert lab.ask(page, f"setattr({shown}[0], 'cursor', 700)") == "None"
@@ -122,7 +130,7 @@ def test_light_and_dark(lab, page):
     page.wait_for_function(f"() => {ground} !== 'rgb(255, 255, 255)'")
     page.wait_for_function(f"(light) => ({corner})() < 0.5 * light", arg=light)
     change_theme(page, "JupyterLab Light")
-    page.wait_for_function(f"(light) => Math.abs(({corner})() - light) < 2", arg=light)
+    page.wait_for_function(f"(light) => ({corner})() > 0.9 * light", arg=light)
 
 
 def test_a_cell_run_again_leaves_one_timeline(lab, page):

@@ -10,7 +10,7 @@ from math import sqrt
 import numpy as np
 
 from .compiled import dense, helper, kernel
-from .linkage import place
+from .frames import place
 from .task import damped_step, factor, in_tool_axes, rotation_log, substitute, task_jacobian
 
 SHARED = 2000  # samples that are worth a thread of their own

@@ -9,12 +9,13 @@ from math import sqrt
 import numpy as np
 
 from .compiled import dense, helper, kernel
-from .linkage import place
-from .task import damped_step, factor, in_tool_axes, pose_error, rotation_log, substitute, task_jacobian
+from .frames import place
+from .task import damped_step, factor, pose_error, rotation_log, substitute, task_jacobian
 
 TOLERANCE = 1e-10  # of a solved pose, metres and radians: ten times tighter than what is promised
 RENEW = 32  # samples after which a step is taken even where the prediction hits, to renew the inverse and see the determinant
 CLEAR = 0.05  # smallest pivot of a Jacobian that is far enough from singular
+THROUGH = 1e-5  # how far from the path, rad and characteristic lengths, the smooth way through a singular place may leave the tool
 LOOSE = 1e-5  # of an arm with fewer joints than the task has rows, which can only come close to rounded poses
 REACHED, CROSSED, JUMPED, UNREACHED = 0, 1, 2, 3
 
@@ -141,30 +142,48 @@ def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare, phi, w0,
 
 
 @helper
-def tangent(
-    links, prismatic, twist, span, rows, inverse_length, time, joints, k, known, q, slope,
-    axes, origins, tool, jacobian, work, error, step, vector,
-):  # fmt: skip
-    """Fill slope (n,): joint change per `span` seconds just after sample k - 1, from the Jacobian, or on a singular place from the samples before."""
-    n = q.shape[0]
-    place(links, prismatic, q, axes, origins, tool)
-    task_jacobian(prismatic, axes, origins, tool, rows, inverse_length, jacobian)
-    in_tool_axes(twist, tool, inverse_length, error)
-    smallest = 0.0
-    if n == rows:
-        _, smallest = factor(jacobian, n, work, vector)
-        if smallest > 0.0:
-            substitute(work, vector, error, n, step)
-    if smallest < 1e-6 and known >= 3:
-        t0, t1, t2 = time[k - 3], time[k - 2], time[k - 1]
-        a = (t2 - t1) / ((t0 - t1) * (t0 - t2))
-        b = (t2 - t0) / ((t1 - t0) * (t1 - t2))
-        for i in range(n):
-            step[i] = a * (joints[k - 3, i] - joints[k - 1, i]) + b * (joints[k - 2, i] - joints[k - 1, i])
-    elif smallest < 1e-6:
-        damped_step(jacobian, error, rows, n, 1e-10, work, vector, step)
+def slope_before(time, joints, k, known, span, slope):
+    """Fill slope (n,): joint change per `span` just after sample k - 1, by the parabola through three samples; zero where there are fewer."""
+    n = slope.shape[0]
     for i in range(n):
-        slope[i] = span * step[i]
+        slope[i] = 0.0
+    if known >= 3:
+        t0, t1, t2 = time[k - 3], time[k - 2], time[k - 1]
+        a = span * (t2 - t1) / ((t0 - t1) * (t0 - t2))
+        b = span * (t2 - t0) / ((t1 - t0) * (t1 - t2))
+        for i in range(n):
+            slope[i] = a * (joints[k - 3, i] - joints[k - 1, i]) + b * (joints[k - 2, i] - joints[k - 1, i])
+
+
+@helper
+def passes_through(
+    links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, time, joints, k, here, position, rotation, turning, trial,
+    axes, origins, tool, spare, error, vector, kept,
+):  # fmt: skip
+    """Whether the joints can go on smoothly from sample k - 1 to `here` (n,) beyond a singular place with the tool on its path.
+
+    The cubic through the last three samples and `here` must keep the tool within THROUGH of the path between the two samples. A pass
+    closer to the singular place than that is one through it; a wider one has to go round, which is another motion.
+    """
+    n = here.shape[0]
+    for part in range(1, 4):
+        u = 0.25 * part
+        at = time[k - 1] + u * (time[k] - time[k - 1])
+        for i in range(n):
+            trial[i] = 0.0
+        for a in range(4):
+            weight = 1.0
+            for b in range(4):
+                if b != a:
+                    weight *= (at - time[k - 3 + b]) / (time[k - 3 + a] - time[k - 3 + b])
+            for i in range(n):
+                trial[i] += weight * (here[i] if a == 3 else joints[k - 3 + a, i])
+        between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare, error, vector, kept, turning)
+        place(links, prismatic, trial, axes, origins, tool)
+        far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
+        if far * inverse_length + turned > THROUGH:
+            return False
+    return True
 
 
 @helper
@@ -175,7 +194,8 @@ def creep(
     """Follow the motion between two samples in small steps, q in place; (done, steps, sign). Not done: no smooth way on was found.
 
     Each step starts from the last one carried on, and is taken only where the solution is close to that, so that speeds stay
-    continuous. A singular place is crossed (the sign of the determinant changes) only in a step too small to leap to another branch.
+    continuous; the first may instead be a small one, for the slope to start with comes from coarser steps. A singular place is crossed
+    (the sign of the determinant changes) only in a step too small to leap to another branch.
     """
     n = q.shape[0]
     least, most = np.int64(1), np.int64(4)
@@ -196,8 +216,9 @@ def creep(
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         move = largest_move(trial, q)
+        same = now * sign >= 0.0
         smooth = solved and move < 0.1 and largest_move(trial, ahead) < 0.3 * move + 1e-8
-        if smooth and (now * sign >= 0.0 or move < 2e-5):
+        if (smooth and (same or move < 2e-5)) or (u == 0.0 and solved and same and move < 1e-3):
             for i in range(n):
                 slope[i] = (trial[i] - q[i]) / (goal - u)
             copy(trial, q, n)
@@ -336,13 +357,16 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             elif now != 0.0 and age >= RENEW:
                 invert(jacobian, n, work, vector, error, step, inverse)
                 age = 0
+        elif near and known >= 3 and passes_through(
+            links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], goal_position, goal_rotation, twist[k],
+            time[k] - time[k - 1], rows, scale, time, joints, k, here, way_position, way_rotation, turning, trial,
+            axes, origins, tool, spare, error, vector, kept,
+        ):  # fmt: skip
+            followed, outcome[k] = True, CROSSED
         else:
             copy(q, walked, n)
             span = time[k] - time[k - 1]
-            tangent(
-                links, prismatic, twist[k - 1], span, rows, scale, time, joints, k, known, q, pull,
-                axes, origins, tool, jacobian, work, error, step, vector,
-            )  # fmt: skip
+            slope_before(time, joints, k, known, span, pull)
             followed, steps[k], arrived = creep(
                 links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], goal_position, goal_rotation, twist[k],
                 span, rows, scale, sign, walked, pull, way_position, way_rotation, turning, trial, ahead,
@@ -375,22 +399,6 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
         known += 1
 
 
-@kernel("void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[:,::1], f8[:,::1], f8[:,::1])")
-def _solve(links, prismatic, length, rows, position, rotation, joints, left):
-    n = prismatic.shape[0]
-    axes, origins, tool, jacobian = np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((6, n))
-    wide = max(n, 6)
-    work, spare, error, kept = np.empty((wide, wide)), np.empty((3, 3)), np.empty(6), np.empty(6)
-    step, vector, base = np.empty(n), np.empty(wide), np.empty(n)
-    least, most = np.int64(1), np.int64(300)
-    for k in range(joints.shape[0]):
-        _, _, far, turned = settle(
-            links, prismatic, position, rotation, rows, 1.0 / length, 0.7, 1e-3, joints[k], least, most,
-            axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
-        )  # fmt: skip
-        left[k, 0], left[k, 1] = far, turned
-
-
 def follow(chain, length, rows, limits, time, position, rotation, twist, start, allow):
     """Follow a path from `start` (n,), a solution of its first pose or close to one.
 
@@ -412,7 +420,8 @@ def follow(chain, length, rows, limits, time, position, rotation, twist, start, 
 
 def solve(chain, length, rows, position, rotation, seeds):
     """From each of seeds (M, n) to one pose: joints (M, n) and left (M, 2), the metres and radians that remain."""
-    joints = np.array(seeds, dtype=float, order="C")
-    left = np.empty((joints.shape[0], 2))
-    _solve(dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows, dense(position), dense(rotation), joints, left)
-    return joints, left
+    n = chain.prismatic.shape[0]
+    free, once = np.full(n, np.inf), np.zeros(1)  # a path of one sample, without travel limits
+    pose = np.reshape(position, (1, 3)), np.reshape(rotation, (1, 3, 3)), np.zeros((1, 6))
+    found = [follow(chain, length, rows, (-free, free), once, *pose, seed, np.zeros(2)) for seed in seeds]
+    return np.array([joints[0] for joints, *_ in found]).reshape(-1, n), np.array([left[0] for _, _, left, _ in found]).reshape(-1, 2)

@@ -4,7 +4,7 @@ import mpmath
 import numpy as np
 import pytest
 
-from pathaudit.kernels import linkage
+from pathaudit.kernels import frames, linkage
 
 
 def test_cosine_and_sine_to_two_units_in_the_last_place():
@@ -13,7 +13,7 @@ def test_cosine_and_sine_to_two_units_in_the_last_place():
     with mpmath.workdps(40):
         for angle in angles:
             exact = mpmath.cos(mpmath.mpf(float(angle))), mpmath.sin(mpmath.mpf(float(angle)))
-            for found, wanted in zip(linkage.turn(angle), exact, strict=True):
+            for found, wanted in zip(frames.turn(angle), exact, strict=True):
                 assert abs(float(wanted - mpmath.mpf(found))) < 4.5e-16
 
 

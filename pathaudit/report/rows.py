@@ -41,7 +41,8 @@ def row_index(finding, joint_names):
 
 def _joint_rows(names, thresholds, share):
     warn, fail = 100 * thresholds.speed_share_warn, 100 * thresholds.speed_share_fail
-    high = np.clip(1.08 * _most(share, 0.0), 1.25 * fail, 2.0 * fail)
+    limit = fail or 100.0      # a bound may be 0: everything is beyond it, but the row still needs a scale
+    high = np.clip(1.08 * _most(share, 0.0), 1.25 * limit, 2.0 * limit)
     head = f"Joint speed, percent of its limit (warn {warn:g}, limit {fail:g})"
     bounds = ((warn, "warn"), (fail, "fail"))
     height = 28 if len(names) <= 7 else 20
@@ -51,8 +52,9 @@ def _joint_rows(names, thresholds, share):
 
 def _sigma_row(thresholds, sigma):
     warn, fail = thresholds.sigma_min_warn, thresholds.sigma_min_fail
-    low = np.clip(_least(sigma, fail), fail / 30, fail / 2)
-    high = max(1.3 * _most(sigma, warn), 2 * warn)
+    scale = fail or warn or 0.02
+    low = np.clip(_least(sigma, scale), scale / 30, scale / 2)
+    high = max(1.3 * _most(sigma, warn), 2 * warn, 2 * scale)
     ticks = ((warn, f"warn {warn:g}"), (fail, f"fail {fail:g}"))
     return Row("sigma_min", "", (("sigma_min", 0, "main"),), float(low), float(high), 64, ((warn, "warn"), (fail, "fail")), "below",
                log=True, digits=3, head="Nearness to singular: sigma_min, log scale", ticks=ticks)

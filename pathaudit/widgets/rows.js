@@ -37,7 +37,7 @@ export function layOut(facts, width, [from, to]) {
            wholeTime: (px) => clamp((px - left) / plot, 0, 1) * duration };
 }
 
-export function heightOf(place, value) {
+function heightOf(place, value) {
   const { row, y, height } = place;
   const share = row.log ? Math.log(Math.max(value, row.low) / row.low) / Math.log(row.high / row.low) : (value - row.low) / (row.high - row.low);
   return y + height - height * share;
@@ -264,7 +264,7 @@ function drawShortage(context, place, at, colours, data) {
 }
 
 // One path through the samples; where several fall on a pixel column only its first, least, greatest and last are drawn. NaN leaves a gap.
-export function trace(context, place, time, values, toY) {
+function trace(context, place, time, values, toY) {
   let column = NaN, low = 0, high = 0, last = 0, x = 0, open = false;
   const flush = () => {
     if (Number.isNaN(column)) return;

@@ -9,7 +9,7 @@ const READOUT = [["time", "s"], ["distance", "mm"], ["tool speed", "mm/s"], ["bu
 const KEYS = "Keys on the timeline: ← → one sample · with Shift far · Page Up, Page Down · Home, End · N next finding, P previous · + − 0 zoom · drag the arm to turn it";
 const MOST_ZOOM = 1 / 2000;
 
-export function element(name, attributes = {}, ...children) {
+function element(name, attributes = {}, ...children) {
   const made = document.createElement(name);
   for (const [key, value] of Object.entries(attributes)) made.setAttribute(key, value);
   made.append(...children);
@@ -21,7 +21,7 @@ function focusable(name, attributes, ...children) {
   return element(name, { tabindex: "0", "data-lm-suppress-shortcuts": "true", ...attributes }, ...children);
 }
 
-export function severityMark(severity) {
+function severityMark(severity) {
   return element("span", { class: "pa-mark" }, element("i", { class: `pa-swatch pa-${severity}` }), severity);
 }
 

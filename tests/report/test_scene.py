@@ -69,6 +69,19 @@ def test_small_paths_and_any_number_of_joints(samples, n):
     json.dumps(shown.facts, allow_nan=False)
 
 
+@pytest.mark.parametrize("bounds", [{"sigma_min_fail": 0.0}, {"sigma_min_fail": 0.0, "sigma_min_warn": 0.0}, {"speed_share_fail": 0.0, "speed_share_warn": 0.0},
+                                    {"tool_speed_mm_s": 12.0}])
+@pytest.mark.parametrize("known", [True, False])
+def test_every_row_has_a_scale_whatever_the_thresholds(bounds, known):
+    audit = fake_audit(100)
+    vars(audit.cell.thresholds).update(bounds)
+    if not known:
+        audit.rates.sigma_min[:] = audit.rates.speed_share[:] = audit.rates.tool_speed[:] = np.nan
+    for row in scene(audit).facts["rows"]:
+        assert row["low"] < row["high"] and (not row["log"] or row["low"] > 0)
+        assert all(row["low"] <= value <= row["high"] or value == 0 for value, _ in row["bounds"])
+
+
 def test_packing_gives_the_columns_back():
     shown = scene(fake_audit(1500))
     back = unpacked(*shown.packed())

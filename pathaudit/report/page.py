@@ -48,7 +48,7 @@ def one_page(audit):
 <h1>Path audit</h1>
 <div class="pa-still">{tables.verdict_line(audit)}</div>
 <div id="live"></div>
-<div class="pa-still pa-picture">{svg_picture(shown)}</div>
+<div class="pa-still pa-picture">{svg_picture(shown, title=False)}</div>
 <div class="pa-still"><h2>Findings</h2><div class="pa-wide">{tables.findings_table(audit)}</div></div>
 {_rest(audit)}
 <script type="application/json" id="facts">{facts}</script>

@@ -45,15 +45,15 @@ def copy(source, target, count):
 
 @helper
 def settle(
-    links, prismatic, position, rotation, rows, inverse_length, limit, damping, q, least, most,
+    links, prismatic, position, rotation, rows, inverse_length, limit, damping, q, most,
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
 ):  # fmt: skip
     """Steps on q (n,) in place towards one pose; returns (solved, pivot, metres left, radians left).
 
     No joint moves more than `limit` in a step. With damping 0 the steps are plain Newton steps where the Jacobian is square and regular
     and damped ones elsewhere; with a damping to begin with, a step that does not come closer is taken back and damped more
-    (Levenberg-Marquardt), so that q ends at the pose or as close to it as can be. Between `least` and `most` steps are taken. The pivot is the smallest one of the last Jacobian, with the sign
-    of the determinant: 0 where the Jacobian is singular, not square or not needed.
+    (Levenberg-Marquardt), so that q ends at the pose or as close to it as can be. One step is taken at least, `most` at the most. The
+    pivot is the smallest one of the last Jacobian, with the sign of the determinant: 0 where the Jacobian is singular or not square.
     """
     n = q.shape[0]
     guarded = damping > 0.0
@@ -61,7 +61,7 @@ def settle(
     for turn in range(most + 1):
         place(links, prismatic, q, axes, origins, tool)
         far, turned = pose_error(tool, position, rotation, rows, inverse_length, spare, error)
-        if far < TOLERANCE and turned < TOLERANCE and turn >= least:
+        if far < TOLERANCE and turned < TOLERANCE and turn > 0:
             return True, pivot, far, turned
         if n < rows and turn > 0 and far < LOOSE and turned < LOOSE and largest_of(step, n) < 1e-9:
             return True, pivot, far, turned
@@ -198,7 +198,7 @@ def creep(
     (the sign of the determinant changes) only in a step too small to leap to another branch.
     """
     n = q.shape[0]
-    least, most = np.int64(1), np.int64(4)
+    most = np.int64(4)
     u, h, steps = 0.0, 0.25, 0
     while u < 1.0 and steps < 4000:
         steps += 1
@@ -212,7 +212,7 @@ def creep(
             ahead[i] = q[i] + (goal - u) * slope[i]
             trial[i] = ahead[i]
         solved, now, _, _ = settle(
-            links, prismatic, position, rotation, rows, inverse_length, 0.2, 0.0, trial, least, most,
+            links, prismatic, position, rotation, rows, inverse_length, 0.2, 0.0, trial, most,
             axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
         )  # fmt: skip
         move = largest_move(trial, q)
@@ -316,6 +316,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
     copy(start, q, n)
     even = 0  # how many time steps before this sample were alike
     inverse, age = np.empty((n, n)), RENEW  # of the Jacobian some samples ago, and how many
+    hopeful = False  # whether predictions have hit the pose lately; only a square Jacobian has an inverse to begin with
     clear = True  # beside a singular place an error of the pose grows in the joints: there every sample is solved to the last digit
     sign, known = 0.0, 0  # known: how many samples just before this one were followed smoothly; sign: of the determinant
     for k in range(time.shape[0]):
@@ -337,13 +338,20 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                 for i in range(n):
                     guess[i] += pull[i]
         copy(guess, here, n)
-        least, most = np.int64(1), np.int64(8)  # of this type, for a literal would have settle compiled once more
-        if clear and n == rows and known >= 5 and age < RENEW:
-            least = np.int64(0)  # a prediction that hits is enough
-        solved, now, far, turned = settle(
-            links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, 0.0, here, least, most,
-            axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
-        )  # fmt: skip
+        hit = False
+        if hopeful and clear and known >= 5 and age < RENEW:
+            place(links, prismatic, here, axes, origins, tool)
+            far, turned = pose_error(tool, goal_position, goal_rotation, rows, scale, spare, error)
+            hopeful = hit = far < TOLERANCE and turned < TOLERANCE
+        if hit:  # a prediction that hits is enough
+            solved, now = True, 0.0
+            correct(inverse, error, here)
+        else:
+            most = np.int64(8)  # of this type, for a literal would have settle compiled once more
+            solved, now, far, turned = settle(
+                links, prismatic, goal_position, goal_rotation, rows, scale, 0.5, 0.0, here, most,
+                axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
+            )  # fmt: skip
         near = solved and largest_move(here, guess) < 0.05 and largest_move(here, q) < 0.5
         same = now * sign >= 0.0
         outcome[k] = REACHED
@@ -352,11 +360,9 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
         elif near and same:
             followed = True
             age += 1
-            if n == rows and now == 0.0 and age < RENEW:
-                correct(inverse, error, here)
-            elif now != 0.0 and age >= RENEW:
+            if now != 0.0 and age >= RENEW:
                 invert(jacobian, n, work, vector, error, step, inverse)
-                age = 0
+                age, hopeful = 0, True
         elif near and known >= 3 and passes_through(
             links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], goal_position, goal_rotation, twist[k],
             time[k] - time[k - 1], rows, scale, time, joints, k, here, way_position, way_rotation, turning, trial,
@@ -380,9 +386,9 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
                 followed, outcome[k], known = True, CROSSED, 0
         if not followed:
             copy(q, here, n)
-            least, most = np.int64(1), np.int64(300)
+            most = np.int64(300)
             solved, now, far, turned = settle(
-                links, prismatic, goal_position, goal_rotation, rows, scale, 0.7, 1e-3, here, least, most,
+                links, prismatic, goal_position, goal_rotation, rows, scale, 0.7, 1e-3, here, most,
                 axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
             )  # fmt: skip
             if not (solved or (far < allow[0] and turned < allow[1])):

@@ -1,5 +1,8 @@
 """Work that is timed in this process: following, retiming, measures, whole audits."""
 
+from concurrent.futures import ThreadPoolExecutor
+
+import numba
 import numpy as np
 import pinocchio
 from example_arms import cell_of, path_of_motion
@@ -7,7 +10,8 @@ from open_arms import robot_file
 from optimal_timing import Problem, by_native_matrices
 
 import pathaudit as pa
-from pathaudit.kernels import clocks, linkage, rates, steps
+from pathaudit.kernels import clocks, linkage, rates, steps, task
+from pathaudit.kernels.compiled import OPTIONS
 
 from .timing import Row, seconds, side_by_side
 
@@ -86,28 +90,57 @@ def retiming(nodes=10_000):
     return Row(f"retiming, N = {nodes:,}, six joints", *times, ">= 1,000, time within 1.00005", note)
 
 
+@numba.njit(**OPTIONS)
+def _named_work(jacobians, demands, limit, out):
+    """What `rates` does for the two measures alone, with its own helpers, from finished Jacobians (M, 6, 6) and tool motions (M, 6)."""
+    here, before, demand, speed = np.empty((6, 6)), np.zeros((6, 6)), np.empty(6), np.empty(6)
+    work, order, d, e, low = np.empty((8, 8)), np.empty(8), np.empty(8), np.empty(8), 0.0
+    for k in range(jacobians.shape[0]):
+        for i in range(6):
+            demand[i] = demands[k, i]
+            for j in range(6):
+                here[i, j] = jacobians[k, i, j]
+        low = rates.smallest_singular_value(here, 6, 6, max(0.999 * (low - rates.change_of(here, before)), 0.0), work, d, e)
+        task.factor(here, 6, work, order)
+        task.substitute(work, order, demand, 6, speed)
+        share = 0.0
+        for i in range(6):
+            share = max(share, abs(speed[i]) / limit[i])
+        out[k, 0], out[k, 1] = low, share
+
+
 def measuring(samples=20_000):
+    """Twice: the two measures alone from finished Jacobians, and the whole of what is measured at a sample; both shared by the cores."""
     cell, time, joints = smooth_motion(samples)
     path = path_of_motion(cell, time, joints)
     twist, twist_rate = rates.twists(path.time, path.position, path.rotation)
-    length, still = cell.characteristic_length, np.zeros_like(joints)
+    length, still, limit = cell.characteristic_length, np.zeros_like(joints), np.array(cell.arm.speed)
     jacobians = linkage.jacobians(*cell.chain, joints)
     jacobians[:, :3] /= length
+    demands = np.concatenate([twist[:, :3] / length, twist[:, 3:]], axis=1)
+    alone, halves = np.empty((samples, 2)), [slice(None, samples // 2), slice(samples // 2, None)]
 
-    def own():
-        return rates.rates(cell.chain, length, 6, cell.arm.speed, joints, twist, twist_rate, still, still)
+    def whole():
+        return rates.rates(cell.chain, length, 6, limit, joints, twist, twist_rate, still, still)
 
-    sigma = np.linalg.svd(jacobians, compute_uv=False)
-    speeds = np.linalg.solve(jacobians, np.concatenate([twist[:, :3] / length, twist[:, 3:]], axis=1)[..., None])[..., 0]
-    measures = own()[2]
-    assert np.allclose(measures[:, 0], sigma[:, -1], rtol=1e-8) and np.allclose(measures[:, -1], np.max(np.abs(speeds) / cell.arm.speed, axis=1))
-    times = side_by_side(own, lambda: np.linalg.svd(jacobians))
-    values = seconds(lambda: np.linalg.svd(jacobians, compute_uv=False)) / samples
-    note = (
-        "kinematics, joint rates and accelerations included, samples shared by the cores; reference: numpy.linalg.svd of the finished Jacobians, "
-        f"from which both follow ({1e6 * values:.2f} us for the values alone)"
-    )
-    return Row("sigma_min and exact directional limit, per sample", *(t / samples for t in times), ">= 10", note)
+    with ThreadPoolExecutor(2) as pool:
+
+        def named():
+            list(pool.map(lambda half: _named_work(jacobians[half], demands[half], limit, alone[half]), halves))
+
+        named()
+        sigma = np.linalg.svd(jacobians, compute_uv=False)
+        shares = np.max(np.abs(np.linalg.solve(jacobians, demands[..., None])[..., 0]) / limit, axis=1)
+        for measures in (alone, whole()[2][:, [0, -1]]):
+            assert np.allclose(measures, np.stack([sigma[:, -1], shares], axis=1), rtol=1e-8)
+        values = seconds(lambda: np.linalg.svd(jacobians, compute_uv=False)) / samples
+        note = f"from finished Jacobians, on both cores; reference: numpy.linalg.svd of them, from which both follow ({1e6 * values:.2f} us for the values alone)"
+        times = side_by_side(named, lambda: np.linalg.svd(jacobians))
+    everything = "kinematics, joint rates and accelerations included, on both cores; the same reference"
+    return [
+        Row("sigma_min and exact directional limit, per sample", *(t / samples for t in times), ">= 10", note),
+        Row("all that is measured at a sample", *(t / samples for t in side_by_side(whole, lambda: np.linalg.svd(jacobians))), "-", everything),
+    ]
 
 
 def whole_audit(samples=2_000):

@@ -18,8 +18,9 @@ from numba.core import config
 
 OPTIONS = {"error_model": "numpy", "nogil": True, "fastmath": {"contract"}}
 
-helper = numba.njit(_nrt=False, **OPTIONS)
-"""Decorator of a function that only kernels call and that makes no array: without reference counts, which cost as much as the work."""
+helper = numba.njit(_nrt=False, no_cpython_wrapper=True, no_cfunc_wrapper=True, **OPTIONS)
+"""Decorator of a function that only kernels call and that makes no array: without reference counts, which cost as much as the work, and
+without the door from Python, which takes a tenth of the time to compile."""
 
 
 def dense(values, dtype=np.float64):

@@ -2,12 +2,14 @@
 
 import numpy as np
 import pytest
+from called import called
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.optimize import linprog
 
 from pathaudit.kernels import rates
 
+smallest_singular_value, smallest_share = called(rates.smallest_singular_value), called(rates.smallest_share)
 SEEDS = st.integers(0, 2**32 - 1)
 
 
@@ -46,7 +48,7 @@ def test_a_corner_stays_where_it_is():
 def smallest_of(jacobian, bound=0.0):
     n = jacobian.shape[1]
     wide = max(n, 7) + 1
-    return rates.smallest_singular_value(np.ascontiguousarray(jacobian), *jacobian.shape, bound, np.empty((wide, wide)), np.empty(wide), np.empty(wide))
+    return smallest_singular_value(np.ascontiguousarray(jacobian), jacobian.shape[0], jacobian.shape[1], bound, np.empty((wide, wide)), np.empty(wide), np.empty(wide))
 
 
 @settings(deadline=None)
@@ -68,7 +70,7 @@ def test_a_surplus_joint_is_used_as_well_as_it_can_be(seed, rows):
     random = np.random.default_rng(seed)
     n = rows + 1
     jacobian, speed, limit = random.normal(size=(rows, n)), random.normal(size=n), random.uniform(0.5, 2.0, n)
-    found = rates.smallest_share(jacobian, rows, n, speed, limit, np.empty((n + 1, n + 1)), np.empty(n + 1))
+    found = smallest_share(jacobian, rows, n, speed, limit, np.empty((n + 1, n + 1)), np.empty(n + 1))
     cost = np.r_[np.zeros(n), 1.0]
     bounds = np.vstack([np.c_[np.eye(n), -limit], np.c_[-np.eye(n), -limit]])
     best = linprog(cost, A_ub=bounds, b_ub=np.zeros(2 * n), A_eq=np.c_[jacobian, np.zeros(rows)], b_eq=jacobian @ speed, bounds=(None, None))

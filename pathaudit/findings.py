@@ -184,6 +184,11 @@ def peak_share(rates: Rates, joint: int) -> np.ndarray:
     return raised
 
 
+def peak_shares(rates: Rates) -> np.ndarray:
+    """(N, n) `peak_share` of all joints"""
+    return np.stack([peak_share(rates, joint) for joint in range(rates.motion.cell.arm.n)], axis=1)
+
+
 def _singular_bounds(rates, joint):
     limits = rates.motion.cell.thresholds
     return limits.sigma_min_warn, limits.sigma_min_fail

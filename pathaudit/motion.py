@@ -82,7 +82,7 @@ def follow(path: Path, cell: Cell, *, start=None, start_reason="") -> Motion:
     start (n,) rad or m: the posture to start near; else cell.start; else of all postures found for the first pose the one with the
     best worst reserve over the path. start_reason: the sentence to give for a start that is known to fit.
     """
-    from .kernels import rates
+    from .kernels import rates, steps
 
     twist, twist_rate = rates.twists(path.time, path.position, path.rotation)
     along = pose_distance(path, cell.characteristic_length)
@@ -91,12 +91,12 @@ def follow(path: Path, cell: Cell, *, start=None, start_reason="") -> Motion:
     start = cell.start if start is None else np.asarray(start, dtype=float)
     first, reason = task.best_posture() if start is None else task.posture_near(start)
     reason = start_reason or reason
-    joints, outcome, left, _ = task.follow(first, slice(None))
-    closest = joints.copy()
-    joints[outcome == 3] = np.nan
-    values = (joints, closest, outcome, left[:, 0], left[:, 1])
-    frozen_values = (frozen(values[0]), frozen(values[1]), frozen(outcome, np.uint8), frozen(values[3]), frozen(values[4]))
-    return Motion(path, cell, *frozen_values, task.rows, frozen(twist), frozen(twist_rate), reason)
+    closest, outcome, left = task.follow(first, slice(None))
+    joints = np.where((outcome == steps.UNREACHED)[:, None], np.nan, closest)
+    return Motion(
+        path, cell, frozen(joints), frozen(closest), frozen(outcome, np.uint8), frozen(left[:, 0]), frozen(left[:, 1]), task.rows,
+        frozen(twist), frozen(twist_rate), reason,
+    )  # fmt: skip
 
 
 def pose_distance(path: Path, length: float) -> np.ndarray:
@@ -146,20 +146,27 @@ class _Task:
 
         return steps.solve(self.chain, self.cell.characteristic_length, self.rows, self.path.position[0], self.path.rotation[0], seeds)
 
+    def solved(self, left):
+        """Which of left (M, 2) are solutions; an arm with fewer joints than rows can only come close to poses that were rounded."""
+        from .kernels import steps
+
+        return left.max(axis=1) < (1e-9 if self.cell.arm.n >= self.rows else steps.LOOSE)
+
     def posture_near(self, start):
         """The solution of the first pose next to `start`, and the reason to give for it."""
         joints, left = self.solve(start[None])
-        named = "near the stated start posture"
-        if left[0].max() > 1e-9 or np.abs(joints[0] - start).max() > 1.0:
-            found = self.postures()
-            if len(found):
-                found = found + TURN * np.round((start - found) / TURN) * ~self.cell.arm.prismatic
-                best = found[np.argmin(np.abs(found - start).max(axis=1))]
-                if left[0].max() > 1e-9 or np.abs(best - start).max() < np.abs(joints[0] - start).max():
-                    return best, f"Starts in the posture nearest to the stated one, of {len(found)} found for the first pose."
-            elif left[0].max() > 1e-9:
-                return joints[0], "The first pose cannot be reached; the motion starts as close to it as the arm comes from the stated start posture."
-        return joints[0], f"Starts {named}."
+        near, reached = joints[0], self.solved(left)[0]
+        if reached and np.abs(near - start).max() <= 1.0:
+            return near, "Starts near the stated start posture."
+        found = self.postures()
+        if len(found):
+            found = found + TURN * np.round((start - found) / TURN) * ~self.cell.arm.prismatic
+            best = found[np.argmin(np.abs(found - start).max(axis=1))]
+            if not reached or np.abs(best - start).max() < np.abs(near - start).max():
+                return best, f"Starts in the posture nearest to the stated one, of {len(found)} found for the first pose."
+        if reached:
+            return near, "Starts near the stated start posture."
+        return near, "The first pose cannot be reached; the motion starts as close to it as the arm comes from the stated start posture."
 
     def seeds(self):
         arm, rng = self.cell.arm, np.random.default_rng(20)
@@ -172,7 +179,7 @@ class _Task:
     def postures(self):
         """The distinct joint solutions (M, n) of the first pose, each joint turned to lie in its travel where it can."""
         joints, left = self.solve(self.seeds())
-        joints = joints[left.max(axis=1) < 1e-9]
+        joints = joints[self.solved(left)]
         distinct = []
         for q in (self.into_travel(q, q, q) for q in joints):
             if all(np.abs(_apart(q, other, self.cell.arm.prismatic)).max() > (1e-3 if self.rows >= len(q) else 0.5) for other in distinct):
@@ -193,7 +200,7 @@ class _Task:
         if len(found) == 0:
             joints, left = self.solve(self.seeds())
             best = np.argmin(left[:, 0] / self.cell.characteristic_length + left[:, 1])
-            return joints[best], "The first pose cannot be reached; the motion starts as close to it as was found from 64 starts."
+            return joints[best], f"The first pose cannot be reached; the motion starts as close to it as was found from {STARTS} starts."
         if len(found) == 1:
             return self.judged(found[0])[1], "Starts in the only posture found for the first pose."
         judged = [self.judged(q) for q in found]
@@ -203,12 +210,12 @@ class _Task:
 
     def judged(self, start):
         """A score of following the path from `start`, smaller is better, and the start moved by full turns to suit the travel."""
-        from .kernels import rates
+        from .kernels import rates, steps
 
         arm = self.cell.arm
         count = min(TRIED, self.path.samples)
         samples = np.unique(np.linspace(0, self.path.samples - 1, count).astype(int))
-        joints, outcome, _, _ = self.follow(start, samples)
+        joints, outcome, _ = self.follow(start, samples)
         low, high = joints.min(axis=0), joints.max(axis=0)
         moved = self.into_travel(start, low, high)
         left = np.minimum(low + moved - start - arm.lower, arm.upper - (high + moved - start))
@@ -221,7 +228,7 @@ class _Task:
         # each of the three is 1 where its own limit or bound is just met
         near = limits.sigma_min_fail / np.maximum(measures[:, 0], 1e-12)
         worst = max(measures[:, 1].max(), near.max(), (wanted / np.maximum(left, 1e-12)).max())
-        lost, jumps = int((outcome == 3).sum()), int((outcome == 2).sum())
+        lost, jumps = int((outcome == steps.UNREACHED).sum()), int((outcome == steps.JUMPED).sum())
         return (lost, jumps, round(max(0.0, -left.min()), 6), worst), moved
 
 

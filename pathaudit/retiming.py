@@ -10,7 +10,7 @@ from functools import cached_property
 import numpy as np
 
 from .conventions import frozen
-from .findings import TRAVEL_SLACK, peak_share
+from .findings import TRAVEL_SLACK, peak_shares
 from .measures import Rates, measure
 
 AIM = 1.0 - 1e-6  # share of the limits that a retiming aims at, so that rounding never shows as an overrun
@@ -53,13 +53,12 @@ class Retiming:
         names = self.rates.motion.cell.arm.joint_names
         shares = np.nan_to_num(np.hstack([self.speed_share, self.acceleration_share]))
         worst, slowed = shares.argmax(axis=1), self.factor < 1.0 - 1e-9
-        n = len(names)
         words = [f"speed of joint {name}" for name in names] + [f"acceleration of joint {name}" for name in names]
         if self.style == "even":
             top = int(shares.max(axis=1).argmax())
             return tuple(words[worst[top]] if k == top else "one even speed" if slow else "" for k, slow in enumerate(slowed))
         limited = shares.max(axis=1) > 0.99
-        return tuple(("" if not s else words[worst[k]] if limited[k] else "ramp") for k, s in enumerate(slowed.tolist())) if n else ()
+        return tuple("" if not s else words[worst[k]] if limited[k] else "ramp" for k, s in enumerate(slowed.tolist()))
 
     def path(self):
         """The path with the new times."""
@@ -110,8 +109,7 @@ class _Plan:
     @classmethod
     def of(cls, rates):
         arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
-        share = np.stack([peak_share(rates, j) for j in range(arm.n)], axis=1)
-        worst = np.nan_to_num(share).max(axis=1) / min(limits.speed_share_fail, 1.0)
+        worst = np.nan_to_num(peak_shares(rates)).max(axis=1) / min(limits.speed_share_fail, 1.0)
         ceiling = np.where(worst > 1.0, (AIM / np.maximum(worst, 1.0)) ** 2, 1.0)
         limit = np.where(np.isnan(arm.acceleration), np.inf, arm.acceleration * min(limits.acceleration_share_fail, 1.0) * AIM)
         return cls(rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit, ceiling)
@@ -122,7 +120,7 @@ class _Plan:
 
     def local(self):
         """Least time with the programmed speed as ceiling."""
-        b, over = self.settle(self.ceiling)
+        b = self.settle(self.ceiling)
         slow = np.flatnonzero(b < 1.0 - 1e-9)
         path = self.rates.motion.path
         length = 1000.0 * np.diff(path.distance)[np.unique(np.clip(np.r_[slow - 1, slow], 0, path.samples - 2))].sum() if len(slow) else 0.0
@@ -140,7 +138,7 @@ class _Plan:
         for run in runs:
             ceiling[run] = min(1.0, own[run].min())
         for _ in range(ROUNDS):
-            b, _ = self.settle(ceiling, even=True)
+            b = self.settle(ceiling, even=True)
             uneven = [run for run in runs if b[run].min() < b[run].max() * (1.0 - 1e-9)]
             if not uneven:
                 break
@@ -157,7 +155,7 @@ class _Plan:
         """The fastest b below `ceiling`, tightened until the audit's own measures of the new times keep the limits."""
         from .kernels import clocks
 
-        ceiling, margin, flat = ceiling.copy(), np.ones_like(self.speed), None
+        ceiling, margin = ceiling.copy(), np.ones_like(self.speed)
         for turn in range(ROUNDS):
             b = np.maximum(clocks.sweep(self.u, self.speed, self.bend, self.limit * margin, ceiling), 1e-12)
             speed, acceleration = self.shares(self.times(b))
@@ -174,7 +172,7 @@ class _Plan:
         if flat > 1.0 + SPARE:
             # a factor on all times scales every share exactly: speeds by it, accelerations by its square
             b = b / flat**2
-        return b, flat
+        return b
 
     def times(self, b):
         from .kernels import clocks
@@ -184,8 +182,8 @@ class _Plan:
     def shares(self, time):
         """Speed and acceleration shares (N, n) at new times, of what the retiming aims at, measured as an audit would."""
         again = self.measured(time)
-        arm, limits = self.rates.motion.cell.arm, self.rates.motion.cell.thresholds
-        speed = np.stack([peak_share(again, j) for j in range(arm.n)], axis=1) / (AIM * min(limits.speed_share_fail, 1.0))
+        limits = self.rates.motion.cell.thresholds
+        speed = peak_shares(again) / (AIM * min(limits.speed_share_fail, 1.0))
         acceleration = again.acceleration_share / (AIM * min(limits.acceleration_share_fail, 1.0))
         return np.nan_to_num(speed), np.nan_to_num(acceleration)
 

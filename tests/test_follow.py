@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 import reference_follower
-from example_arms import cell_of, dh_rows, path_of_motion, path_of_poses, puma
+from example_arms import cell_of, dh_rows, path_of_motion, path_of_poses, planar, puma
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from open_arms import robot_file
@@ -330,3 +330,15 @@ def test_whatever_the_arm_and_the_path_nothing_is_hidden(seed, kind, samples):
             and (f.kind == "posture jump" or (f.kind == "joint speed" and f.joint == cell.arm.joint_names[joint]))
         ]  # fmt: skip
         assert said, f"joint {joint} moves at {share[joint, k]:.2f} of its limit between samples {k} and {k + 1}, and no finding says so"
+
+
+def test_a_planar_arm_starts_where_rounded_poses_let_it():
+    """Two joints cannot meet a pose that a file has rounded, only come within the rounding; that is a start all the same."""
+    time = np.linspace(0.0, 1.0, 51)
+    turns = np.stack([0.3 * np.sin(time), 1.0 + 0.5 * np.cos(time)], axis=1)
+    arm = planar(0.5, 0.4)
+    poses = arm.flange_pose(turns)
+    poses[:, :3, 3] = poses[:, :3, 3].round(7)
+    for start in (None, turns[0]):
+        motion = pa.audit(path_of_poses(time, poses), cell_of(arm, start=start)).motion
+        assert motion.reached.all() and motion.start_reason.startswith("Starts ") and 0.0 < motion.deviation_m.max() < 1e-6

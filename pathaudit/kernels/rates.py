@@ -11,7 +11,7 @@ import numpy as np
 
 from .compiled import dense, helper, kernel
 from .frames import place
-from .task import damped_step, factor, in_tool_axes, rotation_log, substitute, task_jacobian
+from .task import damped_step, factor, gram, in_tool_axes, rotation_log, substitute, task_jacobian
 
 SHARED = 2000  # samples that are worth a thread of their own
 
@@ -237,20 +237,7 @@ def smallest_singular_value(jacobian, rows, n, bound, work, d, e):
     Householder tridiagonalisation, then Laguerre steps on the characteristic polynomial from below the spectrum, which converge from
     one side and cubically (Wilkinson 1965, ch. 7). Squaring costs half the digits beside zero; there one-sided Jacobi rotations take over.
     """
-    size = min(rows, n)
-    trace = 0.0
-    for i in range(size):
-        for j in range(i + 1):
-            total = 0.0
-            if n >= rows:
-                for k in range(n):
-                    total += jacobian[i, k] * jacobian[j, k]
-            else:
-                for k in range(rows):
-                    total += jacobian[k, i] * jacobian[k, j]
-            work[i, j] = total
-            work[j, i] = total
-        trace += work[i, i]
+    size, trace = min(rows, n), gram(jacobian, rows, n, work)
     if size == 1:
         return sqrt(work[0, 0])
     for k in range(size - 2):

@@ -116,9 +116,9 @@ def rotate(v, out):
 
 @helper
 def between(p0, r0, v0, p1, r1, v1, span, u, position, rotation, spare, phi, w0, w1, vector):
-    """The pose at the fraction u of an interval of `span` seconds: cubic Hermite in position and in the rotation vector from r0.
+    """The pose at the fraction u of an interval of the path parameter, `span` long: cubic Hermite in position and in the rotation vector from r0.
 
-    v0 and v1 (6,) are the tool twists at the ends, in part axes.
+    v0 and v1 (6,) are the tool twists by the parameter at the ends, in part axes; phi, w0, w1, vector (3,) and spare (3, 3) are room.
     """
     h00, h10 = (1.0 + 2.0 * u) * (1.0 - u) ** 2, u * (1.0 - u) ** 2
     h01, h11 = u * u * (3.0 - 2.0 * u), u * u * (u - 1.0)
@@ -191,7 +191,7 @@ def creep(
     links, prismatic, p0, r0, v0, p1, r1, v1, span, rows, inverse_length, sign, q, slope, position, rotation, turning, trial, ahead,
     axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
 ):  # fmt: skip
-    """Follow the motion between two samples in small steps, q in place; (done, steps, sign). Not done: no smooth way on was found.
+    """Follow the motion between two samples in small steps, q in place; (done, sign). Not done: no smooth way on was found.
 
     Each step starts from the last one carried on, and is taken only where the solution is close to that, so that speeds stay
     continuous; the first may instead be a small one, for the slope to start with comes from coarser steps. A singular place is crossed
@@ -229,8 +229,8 @@ def creep(
         else:
             h *= 0.4
             if h < 1e-7:
-                return False, steps, sign
-    return u >= 1.0, steps, sign
+                return False, sign
+    return u >= 1.0, sign
 
 
 @helper
@@ -301,9 +301,9 @@ def correct(inverse, error, q):
 
 @kernel(
     "void(f8[:,:,::1], u1[::1], f8, i8, f8[::1], f8[::1], f8[::1], f8[:,::1], f8[:,:,::1], f8[:,::1],"
-    " f8[::1], f8[::1], f8[:,::1], u1[::1], f8[:,::1], i8[::1])"
+    " f8[::1], f8[::1], f8[:,::1], u1[::1], f8[:,::1])"
 )
-def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, allow, joints, outcome, left, steps):
+def _follow(links, prismatic, length, rows, lower, upper, time, position, rotation, twist, start, allow, joints, outcome, left):
     n = prismatic.shape[0]
     axes, origins, tool, jacobian = np.empty((n, 3)), np.empty((n, 3)), np.empty((3, 4)), np.empty((6, n))
     wide = max(n, 6)
@@ -373,7 +373,7 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             copy(q, walked, n)
             span = time[k] - time[k - 1]
             slope_before(time, joints, k, known, span, pull)
-            followed, steps[k], arrived = creep(
+            followed, arrived = creep(
                 links, prismatic, position[k - 1], rotation[k - 1], twist[k - 1], goal_position, goal_rotation, twist[k],
                 span, rows, scale, sign, walked, pull, way_position, way_rotation, turning, trial, ahead,
                 axes, origins, tool, jacobian, work, spare, error, step, vector, base, kept,
@@ -393,10 +393,8 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
             )  # fmt: skip
             if not (solved or (far < allow[0] and turned < allow[1])):
                 outcome[k], known = UNREACHED, -1
-            else:
-                if known > 0:
-                    outcome[k] = JUMPED
-                known = 0
+            elif known > 0:
+                outcome[k], known = JUMPED, 0
         left[k, 0], left[k, 1] = far, turned
         if now != 0.0:
             sign, clear = now, abs(now) > CLEAR
@@ -408,20 +406,17 @@ def _follow(links, prismatic, length, rows, lower, upper, time, position, rotati
 def follow(chain, length, rows, limits, time, position, rotation, twist, start, allow):
     """Follow a path from `start` (n,), a solution of its first pose or close to one.
 
-    chain (links, prismatic), length in m, rows 6 or 5 (spin free), limits (lower, upper) of the joints, the path as time (N,),
-    or any other increasing parameter, position (N, 3), rotation (N, 3, 3) and twist (N, 6) by it in part axes; allow (m, rad) is how far off still counts as reached where no
-    exact solution is found. Returns joints (N, n), outcome (N,) uint8 (REACHED; CROSSED: a singular place was passed on the smooth
-    branch; JUMPED: reached, though not from the sample before; UNREACHED: the closest found), left (N, 2), the metres and radians left
-    to the pose, and steps (N,), the small steps that were walked to the sample.
+    chain (links, prismatic), length in m, rows 6 or 5 (spin free), limits (lower, upper) of the joints, the path as time (N,) or any
+    other increasing parameter, position (N, 3), rotation (N, 3, 3) and twist (N, 6) by that parameter in part axes; allow (m, rad) is
+    how far off still counts as reached where no exact solution is found. Returns joints (N, n), outcome (N,) uint8 (REACHED; CROSSED: a
+    singular place was passed on the smooth branch; JUMPED: reached, though not from the sample before; UNREACHED: the closest found)
+    and left (N, 2), the metres and radians left to the pose.
     """
     samples, n = time.shape[0], chain.prismatic.shape[0]
     joints, outcome = np.empty((samples, n)), np.zeros(samples, np.uint8)
-    left, steps = np.zeros((samples, 2)), np.zeros(samples, np.int64)
-    _follow(
-        dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows, *map(dense, (*limits, time, position, rotation, twist, start, allow)),
-        joints, outcome, left, steps,
-    )  # fmt: skip
-    return joints, outcome, left, steps
+    left, given = np.zeros((samples, 2)), (*limits, time, position, rotation, twist, start, allow)
+    _follow(dense(chain.links), dense(chain.prismatic, np.uint8), float(length), rows, *map(dense, given), joints, outcome, left)
+    return joints, outcome, left
 
 
 def solve(chain, length, rows, position, rotation, seeds):
@@ -430,4 +425,4 @@ def solve(chain, length, rows, position, rotation, seeds):
     free, once = np.full(n, np.inf), np.zeros(1)  # a path of one sample, without travel limits
     pose = np.reshape(position, (1, 3)), np.reshape(rotation, (1, 3, 3)), np.zeros((1, 6))
     found = [follow(chain, length, rows, (-free, free), once, *pose, seed, np.zeros(2)) for seed in seeds]
-    return np.array([joints[0] for joints, *_ in found]).reshape(-1, n), np.array([left[0] for _, _, left, _ in found]).reshape(-1, 2)
+    return np.array([joints[0] for joints, *_ in found]).reshape(-1, n), np.array([left[0] for *_, left in found]).reshape(-1, 2)

@@ -141,6 +141,24 @@ def substitute(work, order, right, n, out):
 
 
 @helper
+def gram(jacobian, rows, n, work):
+    """Fill both halves of work (m, m), m the lesser of rows and n, with J J^T, or with J^T J where n < rows; return the trace."""
+    size, trace = min(rows, n), 0.0
+    for i in range(size):
+        for j in range(i + 1):
+            total = 0.0
+            if n >= rows:
+                for k in range(n):
+                    total += jacobian[i, k] * jacobian[j, k]
+            else:
+                for k in range(rows):
+                    total += jacobian[k, i] * jacobian[k, j]
+            work[i, j] = work[j, i] = total
+        trace += work[i, i]
+    return trace
+
+
+@helper
 def damped_step(jacobian, right, rows, n, damping, work, spare, out):
     """Fill out (n,) with J^T (J J^T + damping I)^-1 right, or the same by the smaller normal matrix where n < rows.
 
@@ -148,18 +166,8 @@ def damped_step(jacobian, right, rows, n, damping, work, spare, out):
     """
     wide = n >= rows
     size = rows if wide else n
-    trace = 0.0
+    trace = gram(jacobian, rows, n, work)
     for i in range(size):
-        for j in range(i + 1):
-            total = 0.0
-            if wide:
-                for k in range(n):
-                    total += jacobian[i, k] * jacobian[j, k]
-            else:
-                for k in range(rows):
-                    total += jacobian[k, i] * jacobian[k, j]
-            work[i, j] = total
-        trace += work[i, i]
         if wide:
             spare[i] = right[i]
         else:

@@ -63,7 +63,7 @@ def _following(samples, interval):
             cell.chain, cell.characteristic_length, 6, limits, path.time, path.position, path.rotation, twist, joints[0], exact
         )
 
-    followed, _, left, _ = own()
+    followed, _, left = own()
     reference, count = newton_loop(targets, joints[0])
     assert left.max() < 1e-9 and np.abs(followed - joints).max() < 1e-7 and np.abs(reference - joints).max() < 1e-7
     times = side_by_side(own, lambda: newton_loop(targets, joints[0]))

@@ -6,6 +6,7 @@ import tomllib
 
 import numpy as np
 import pytest
+from damage import damaged
 
 import pathaudit as pa
 from pathaudit.reading import cell_toml
@@ -243,22 +244,13 @@ def test_every_threshold_and_limit_key_is_known():
 
 
 def test_damaged_files_are_read_or_refused_in_one_line(read):
-    rng = random.Random(3)
+    rng, letters = random.Random(3), b"0123456789abe._-[]{}='\"\n, "
+    pieces = [b"\xff", b"\0", b"nan", b"inf", b"-", b"[[", b"true", b"'", b"1e999", b"{}", b"[]", b"\n[arm]\n"]
     whole = PLAIN + "[limits]\nspeed_deg_s = { b = 90 }\ntravel_deg = { a = [-360, 360] }\n[thresholds]\nsigma_min_warn = 0.1\n"
     for text in (whole, ROWS):
         for _ in range(700):
-            data = bytearray(text.encode())
-            for _ in range(rng.randint(1, 3)):
-                at = rng.randrange(len(data))
-                match rng.randrange(3):
-                    case 0:
-                        data[at] = rng.choice(b"0123456789abe._-[]{}='\"\n, ")
-                    case 1:
-                        del data[at : at + rng.randint(1, 15)]
-                    case 2:
-                        data[at:at] = rng.choice([b"\xff", b"\0", b"nan", b"inf", b"-", b"[[", b"true", b"'", b"1e999", b"{}", b"[]", b"\n[arm]\n"])
             try:
-                cell = read(bytes(data))
+                cell = read(damaged(text, rng, letters, pieces))
             except pa.PathAuditError as error:
                 assert len(str(error).splitlines()) == 1
             else:

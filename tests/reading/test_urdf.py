@@ -4,6 +4,7 @@ import random
 
 import numpy as np
 import pytest
+from damage import damaged
 from open_arms import robot_file
 from outside import agrees, inputs
 
@@ -221,20 +222,10 @@ def test_thousands_of_links_do_not_hang(refused):
 
 
 def test_damaged_files_are_read_or_refused_in_one_line(tmp_path):
-    rng, file = random.Random(2), tmp_path / "arm.urdf"
+    rng, file, letters = random.Random(2), tmp_path / "arm.urdf", b"0123456789abl<>\"'/= "
     pieces = [b'"', b"<", b">", b"/", b"&lt;", b"\0", b"\xff", b"e9", b"-", b" ", b"nan", b"<limit/>", b'<mimic joint="a"/>']
     for _ in range(1500):
-        data = bytearray(TWO.encode())
-        for _ in range(rng.randint(1, 3)):
-            at = rng.randrange(len(data))
-            match rng.randrange(3):
-                case 0:
-                    data[at] = rng.choice(b"0123456789abl<>\"'/= ")
-                case 1:
-                    del data[at : at + rng.randint(1, 15)]
-                case 2:
-                    data[at:at] = rng.choice(pieces)
-        file.write_bytes(data)
+        file.write_bytes(damaged(TWO, rng, letters, pieces))
         try:
             arm = pa.Arm.from_urdf(file)
         except pa.PathAuditError as error:

@@ -41,6 +41,8 @@ class Path:
     process (N,) bool: the process runs (all True where nothing was said).  label: N texts, '' where none.
     columns, cells: the source's header and, for each column, its N values as given (raw text for a file), to hand through.
     file, sha256: the source and the hash of its bytes.
+    source_line (N,) int: for each sample the line of the file that it comes from; None where the source has no lines to name.
+    made: plain sentences on how the samples came about (sampled, repaired, assumed); empty where they are the file's own.
     """
 
     time: np.ndarray
@@ -53,6 +55,8 @@ class Path:
     cells: tuple
     file: str
     sha256: str
+    source_line: np.ndarray | None = None
+    made: tuple = ()
 
     @property
     def samples(self) -> int:

@@ -1,5 +1,7 @@
 """A path from columns in memory: units, orientation forms, refusals, values that do not change."""
 
+from dataclasses import replace
+
 import numpy as np
 import pandas as pd
 import pytest
@@ -188,3 +190,10 @@ def test_columns_of_another_meaning_may_share_a_stem():
 def test_errors_name_the_source_that_the_caller_named():
     with pytest.raises(pa.ReadError, match="^planner output: "):
         pa.path_from(BASE, name="planner output")
+
+
+def test_a_path_knows_its_lines_and_how_it_was_made_only_where_somebody_says_so():
+    p = path(BASE, AXIS)
+    assert p.source_line is None and p.made == ()
+    told = replace(p, source_line=np.array([2, 3, 4]), made=("Sampled.",))
+    assert told.source_line.tolist() == [2, 3, 4] and told.made == ("Sampled.",) and told.length == p.length

@@ -7,7 +7,8 @@ import zlib
 from functools import cache
 from importlib.resources import files
 
-MODULES = ("data", "theme", "rows", "arm", "view", "widget")      # each imports only from those before it
+# Each imports only from those before it.
+MODULES = ("data", "dom", "theme", "rows", "arm", "armpanel", "readout", "findings", "trial", "notes", "view", "widget")
 
 _IMPORT = re.compile(r"^import [^;]*;\n", re.MULTILINE)
 _COMMENT = re.compile(r"^ *//.*\n", re.MULTILINE)

@@ -7,16 +7,13 @@ async function render({ model, el }) {
   let timer = 0, shown = 0;
   const root = document.createElement("div");
   el.append(root);
-  const view = mount(root, (sample) => {
+  const view = mount(root, model.send ? (message, buffers) => model.send(message, undefined, buffers) : null, (sample) => {
     clearTimeout(timer);
     timer = setTimeout(() => {
       model.set("cursor", sample);
       model.save_changes();
     }, 150);
-  }, model.send && ((on) => {
-    view.say("Waiting for the kernel ...");
-    model.send({ do: "show retimed", on });
-  }));
+  });
   const status = () => view.say(model.get("status"));
   const refresh = async () => {
     const mine = ++shown;
@@ -31,16 +28,17 @@ async function render({ model, el }) {
     }
   };
   const cursor = () => view.toSample(model.get("cursor"));
-  model.on("change:block", refresh);
-  model.on("change:status", status);
-  model.on("change:cursor", cursor);
+  const trial = () => model.get("trial") && view.showTrial(model.get("trial"));
+  const notes = () => model.get("notes") && view.showNotes(model.get("notes"));
+  const heard = { block: refresh, status, cursor, trial, notes };
+  for (const [name, act] of Object.entries(heard)) model.on(`change:${name}`, act);
   await refresh();
+  trial();
+  notes();
   return () => {
     clearTimeout(timer);
     shown = -1;
-    model.off("change:block", refresh);
-    model.off("change:status", status);
-    model.off("change:cursor", cursor);
+    for (const [name, act] of Object.entries(heard)) model.off(`change:${name}`, act);
     view.close();
   };
 }

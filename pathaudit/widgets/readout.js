@@ -1,0 +1,52 @@
+// What is said above the rows: the verdict and what was audited, and the numbers at the cursor.
+
+import { fixed, worstJoint } from "./data.js";
+import { button, element } from "./dom.js";
+
+const READOUT = [["time", "s"], ["distance", "mm"], ["tool speed", "mm/s"], ["busiest joint", "of limit"], ["reserve", "×"], ["sigma_min", ""]];
+
+export function headPanel(ui) {
+  const node = element("div", { class: "pa-head" });
+
+  function show() {
+    const facts = ui.facts(), again = facts.retiming;
+    const said = [facts.file, `${facts.samples.toLocaleString("en")} samples`, `${fixed(facts.duration_s, 2)} s`, `${fixed(facts.length_mm, 0)} mm`];
+    if (facts.shown < facts.samples) said.push(`${facts.shown.toLocaleString("en")} drawn, every peak kept`);
+    const needed = again.feasible && again.slowest_percent < 99.95;
+    const retiming = again.applied
+      ? `Shown with the suggested retiming (${again.style}), slowest ${fixed(again.slowest_percent, 0)} % of the programmed speed.`
+      : needed ? `Suggested retiming: ${again.why}` : again.why;
+    node.replaceChildren(element("span", { class: "pa-verdict" }, element("i", { class: `pa-swatch pa-${facts.verdict}` }), facts.verdict),
+      element("b", {}, facts.name), element("span", {}, said.join(" · ")), element("p", {}, retiming));
+    if (!ui.ask || !(needed || again.applied)) return;
+    const words = again.applied ? "Show as programmed" : "Show as retimed";
+    node.lastChild.append(" ", button(words, words, () => {
+      ui.say("Waiting for the kernel ...");
+      ui.ask({ do: "show retimed", on: !again.applied });
+    }));
+  }
+
+  return { node, show };
+}
+
+export function readoutPanel(...more) {
+  const values = READOUT.map(() => element("b")), here = element("b");
+  const node = element("div", { class: "pa-read" },
+    ...READOUT.map(([name, unit], k) => element("div", {}, element("span", {}, name), values[k], element("span", { class: "pa-unit" }, unit))),
+    element("div", { class: "pa-where" }, element("span", {}, "at the cursor"), here), ...more);
+
+  // Gives the findings at kept sample i, and the place in words for those who listen.
+  function show(facts, data, i) {
+    const time = data.time_s[0][i], worst = worstJoint(data, i), reserve = data.reserve[0][i];
+    const said = [fixed(facts.offset_s + time, 3), fixed(data.distance_mm[0][i], 1), fixed(data.speed_mm_s[0][i], 1),
+                  worst ? `${facts.joints[worst[0]]} ${worst[1].toFixed(0)} %` : "–",
+                  reserve === Infinity ? "at rest" : reserve > 99 ? "> 99" : fixed(reserve, 2), fixed(data.sigma_min[0][i], 3)];
+    said.forEach((value, k) => { if (values[k].textContent !== value) values[k].textContent = value; });
+    const found = facts.findings.filter((f) => time >= f.from_s - 1e-6 && time <= f.to_s + 1e-6);
+    const words = found.length ? found.map((f) => `${f.number} ${f.severity}: ${f.kind} ${f.joint}`.trim()).join(" · ") : "no finding";
+    if (here.textContent !== words) here.textContent = here.title = words;
+    return { found, words: `${said[0]} seconds, ${said[1]} millimetres, busiest joint ${said[3]}, ${words}` };
+  }
+
+  return { node, show };
+}

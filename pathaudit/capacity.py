@@ -26,8 +26,8 @@ class Ellipsoid(NamedTuple):
 
 
 class Polytope(NamedTuple):
-    """`vertices` (V, m); `faces`: indices into them, one array a face, counter-clockwise seen from outside (in the plane: one
-    loop); `size`: the area (m = 2) or volume (m = 3), zero when the polytope is flat."""
+    """`vertices` (V, m), none where the polytope is empty; `faces`: indices into them, one array a face, counter-clockwise seen from
+    outside (in the plane: one loop); `size`: the area (m = 2) or volume (m = 3), zero when the polytope is flat."""
 
     vertices: np.ndarray
     faces: tuple[np.ndarray, ...]
@@ -87,6 +87,35 @@ def velocity_polytope(J, speed) -> Polytope:
     return Polytope(signs @ G, faces, _zonotope_size(G))
 
 
+def velocity_cut(J, speed, shown, twist) -> Polytope:
+    """Speeds of the task rows `shown` (2 or 3 row numbers) under |qd| <= speed (n,), while every other row goes as in twist (m,).
+
+    The plane or spatial cut of the zonotope of all rows: twist lies in it just where the joints can do the whole of twist, which
+    `velocity_polytope(J[shown], speed)`, where the other rows go as they like, does not tell. What the posture cannot do of twist is
+    left out of it. Empty where no speed fits, and where the posture does not leave all shown rows free.
+    """
+    J, speed = _jacobian(J, speed)
+    shown = np.asarray(shown, dtype=int)
+    held = np.setdiff1d(np.arange(len(J)), shown)
+    whole, twist = velocity_polytope(J[shown], speed), _task_vector(J, twist, "twist")
+    if not np.isfinite(twist).all():
+        raise ValueError(f"a twist is finite, found {twist}")
+    if not len(held):
+        return whole
+    left, sigma, _ = np.linalg.svd(J * speed)
+    basis = left[:, : np.count_nonzero(_without_round_off(sigma))]
+    _, kept, right = np.linalg.svd(basis[held])
+    free = right[np.count_nonzero(kept > ROUND_OFF) :].T
+    if free.shape[1] < len(shown) or whole.size == 0.0:
+        return Polytope(np.empty((0, len(shown))), (), 0.0)
+    # the vectors of J's range with the held rows of twist are start + across v, v the speeds that are shown
+    across = free @ np.linalg.inv(basis[shown] @ free)
+    start = basis.T @ twist - across @ (basis[shown] @ (basis.T @ twist))
+    normals, G = _facet_normals(basis.T @ (J * speed)), basis.T @ (J * speed)
+    reach, slopes, offset = np.abs(normals @ G).sum(axis=1), normals @ across, normals @ start
+    return _clipped(whole, np.concatenate([slopes, -slopes]), np.concatenate([reach - offset, reach + offset]))
+
+
 # ---------------------------------------------------------------------------------------------------------------------- forces
 
 
@@ -106,6 +135,16 @@ def largest_force(J, direction, effort) -> float:
     load = np.abs(_direction(J, direction) @ J)
     loaded = load > ROUND_OFF * np.linalg.norm(load)
     return float(np.min(effort[loaded] / load[loaded], initial=np.inf))
+
+
+def force_polytope(J, effort, most) -> Polytope:
+    """All forces f with |J^T f| <= effort (n,), gravity apart, for 2 or 3 task rows, and no component above `most`, which ends the
+    polytope where the structure alone carries the load."""
+    J, effort = _jacobian(J, effort)
+    if len(J) not in (2, 3):
+        raise ValueError(f"a force polytope has 2 or 3 task rows, found J of shape {J.shape}")
+    box = velocity_polytope(np.eye(len(J)), most)
+    return _clipped(box, np.concatenate([J.T, -J.T]), np.concatenate([effort, effort]))
 
 
 # ----------------------------------------------------------------------------------------------------------------- joint steps
@@ -247,6 +286,74 @@ def _zonotope_size(G):
     return float(2.0**m * np.abs(np.linalg.det(G[choices])).sum())
 
 
+# ---------------------------------------------------------------------------------------------------------------- convex solids
+
+
+def _clipped(polytope, normals, heights):
+    """What is left of a polytope (not flat) of the half-spaces normals (k, m) @ x <= heights (k,)."""
+    vertices, faces = polytope.vertices, list(polytope.faces)
+    size = np.abs(vertices).max()
+    for normal, height in zip(normals, heights, strict=True):
+        length = np.linalg.norm(normal)
+        over = vertices @ normal - height
+        near = 1e3 * ROUND_OFF * size * length
+        if len(over) and over.max() > near:
+            vertices, faces = _cut_off(vertices, faces, over, near, normal)
+    return Polytope(vertices, tuple(faces), _enclosed(vertices, faces))
+
+
+def _cut_off(vertices, faces, over, near, normal):
+    """Vertices and faces without the side where over (V,) is positive; |over| <= near counts as on the cut."""
+    points, number, rim, kept = [], {}, set(), []
+
+    def place(key, point):
+        if key not in number:
+            number[key] = len(points)
+            points.append(point)
+        return number[key]
+
+    for face in faces:
+        loop = []
+        for i, j in zip(face.tolist(), np.roll(face, -1).tolist(), strict=True):
+            if over[i] <= near:
+                loop.append(place(i, vertices[i]))
+                if over[i] >= -near:
+                    rim.add(loop[-1])
+            if (over[i] > near and over[j] < -near) or (over[j] > near and over[i] < -near):
+                i, j = min(i, j), max(i, j)  # the same point from both faces at this edge
+                share = over[i] / (over[i] - over[j])
+                loop.append(place((i, j), vertices[i] + share * (vertices[j] - vertices[i])))
+                rim.add(loop[-1])
+        if len(loop) > 2 and not rim.issuperset(loop):
+            kept.append(np.array(loop))
+    points = np.reshape(points, (-1, len(normal)))
+    if not kept:
+        return points[:0], []
+    if len(normal) == 3:
+        kept.append(_rim(points, np.array(sorted(rim)), normal))
+    used, back = np.unique(np.concatenate(kept), return_inverse=True)
+    return points[used], np.split(back, np.cumsum([len(face) for face in kept])[:-1])
+
+
+def _rim(points, rim, normal):
+    """The points of a flat convex rim in their order, counter-clockwise seen against the normal."""
+    from_middle = points[rim] - points[rim].mean(axis=0)
+    first = from_middle[np.argmax(np.linalg.norm(from_middle, axis=1))]
+    second = np.cross(normal, first) / np.linalg.norm(normal)
+    return rim[np.argsort(np.arctan2(from_middle @ second, from_middle @ first))]
+
+
+def _enclosed(vertices, faces):
+    """Area or volume inside faces that are turned outwards (divergence theorem)."""
+    if not faces:
+        return 0.0
+    if vertices.shape[1] == 2:
+        x, y = vertices[faces[0]].T
+        return float((x @ np.roll(y, -1) - y @ np.roll(x, -1)) / 2.0)
+    fans = [np.linalg.det(vertices[face[[0, i, i + 1]]]) for face in faces for i in range(1, len(face) - 1)]
+    return float(sum(fans) / 6.0)
+
+
 # -------------------------------------------------------------------------------------------------------------------- arguments
 
 
@@ -266,9 +373,14 @@ def _jacobian(J, per_joint=None):
 
 
 def _direction(J, direction):
-    direction = np.asarray(direction, dtype=float)
-    if direction.shape != J.shape[:1]:
-        raise ValueError(f"J has {len(J)} task rows, found a direction of shape {direction.shape}")
+    direction = _task_vector(J, direction, "direction")
     if not (np.isfinite(direction).all() and direction.any()):
         raise ValueError(f"a direction is finite and not zero, found {direction}")
     return direction
+
+
+def _task_vector(J, vector, word):
+    vector = np.asarray(vector, dtype=float)
+    if vector.shape != J.shape[:1]:
+        raise ValueError(f"J has {len(J)} task rows, found a {word} of shape {vector.shape}")
+    return vector

@@ -128,6 +128,74 @@ def test_flat_polytopes():
     assert len(square.vertices) == 4 and len(square.faces) == 2 and square.size == 0
 
 
+def farthest(J, speed, shown, twist, direction):
+    """Largest direction . (J qd)[shown] while the other rows of J qd are those of twist, by HiGHS; None where nothing fits."""
+    held = np.setdiff1d(np.arange(len(J)), shown)
+    bounds = [(-limit, limit) for limit in speed]
+    best = linprog(-direction @ J[shown], A_eq=J[held], b_eq=twist[held], bounds=bounds, method="highs")
+    assert best.status in (0, 2), best.message
+    return -best.fun if best.status == 0 else None
+
+
+@settings(deadline=None, max_examples=60)
+@given(seeds, st.integers(2, 3), st.integers(1, 4), st.integers(0, 3), st.floats(0.0, 1.5))
+def test_a_velocity_cut_reaches_as_far_as_the_linear_programme(seed, k, more_rows, more_joints, scale):
+    random, m = np.random.default_rng(seed), k + more_rows
+    J, speed = random.normal(size=(m, m + more_joints)), random.uniform(0.1, 3.0, m + more_joints)
+    shown, twist = random.permutation(m)[:k], scale * J @ (speed * random.uniform(-1, 1, m + more_joints))
+    cut = capacity.velocity_cut(J, speed, shown, twist)
+    for direction in random.normal(size=(6, k)):
+        best = farthest(J, speed, shown, twist, direction)
+        if best is None:
+            assert len(cut.vertices) == 0 and cut.faces == () and cut.size == 0
+        elif cut.size > 1e-9:  # a cut that is only just touched may be lost in rounding
+            assert np.max(cut.vertices @ direction) == pytest.approx(best, rel=1e-7, abs=1e-8)
+    if scale <= 1.0:
+        hull = ConvexHull(cut.vertices)
+        assert np.max(hull.equations[:, :-1] @ twist[shown] + hull.equations[:, -1]) < 1e-9
+        assert hull.volume == pytest.approx(cut.size, rel=1e-7)
+        assert k == 2 or len(cut.vertices) - sum(map(len, cut.faces)) / 2 + len(cut.faces) == 2
+
+
+def test_a_twist_lies_in_its_cut_just_where_the_joints_can_do_it():
+    random = np.random.default_rng(5)
+    for _ in range(50):
+        J, speed, twist = random.normal(size=(6, 7)), random.uniform(0.5, 2.0, 7), random.normal(size=6)
+        most = capacity.largest_speed(J, twist, speed)
+        for share, fits in ((0.99, True), (1.01, False)):
+            cut = capacity.velocity_cut(J, speed, [0, 1, 2], share * most * twist)
+            assert fits <= (len(cut.vertices) > 0)
+            if len(cut.vertices):
+                equations = ConvexHull(cut.vertices).equations
+                assert (np.max(equations[:, :-1] @ (share * most * twist[:3]) + equations[:, -1]) < 0) == fits
+
+
+def test_a_cut_without_other_rows_is_the_whole_and_a_flat_posture_has_none():
+    J = np.random.default_rng(1).normal(size=(3, 5))
+    whole, cut = capacity.velocity_polytope(J, np.ones(5)), capacity.velocity_cut(J, np.ones(5), [0, 1, 2], np.zeros(3))
+    np.testing.assert_allclose(cut.vertices, whole.vertices)
+    planar = np.zeros((6, 3))
+    planar[[0, 1, 5]] = np.random.default_rng(2).normal(size=(3, 3))
+    assert capacity.velocity_cut(planar, np.ones(3), [0, 1, 2], np.zeros(6)).faces == ()
+    cut = capacity.velocity_cut(planar, np.ones(3), [0, 1], np.zeros(6))  # the plane of a planar arm, its turning held
+    turning = np.array([1.0, 0.0])
+    assert np.max(cut.vertices @ turning) == pytest.approx(farthest(planar[[0, 1, 5]], np.ones(3), [0, 1], np.zeros(3), turning))
+
+
+@settings(deadline=None)
+@given(jacobians(rows=st.integers(2, 3), joints=st.integers(1, 9)))
+def test_a_force_polytope_is_bounded_by_the_efforts_and_by_nothing_else(case):
+    J, effort, random = case
+    most = 20.0 * effort.max()
+    vertices, faces, size = capacity.force_polytope(J, effort, most)
+    assert np.max(np.abs(vertices @ J) / effort) < 1 + 1e-7 and np.abs(vertices).max() <= most * (1 + 1e-9)
+    hull = ConvexHull(vertices)
+    assert hull.volume == pytest.approx(size, rel=1e-7)
+    for direction in random.normal(size=(5, len(J))):
+        largest = min(capacity.largest_force(J, direction, effort), most / np.abs(direction).max())
+        assert np.max(hull.equations[:, :-1] @ (largest * direction) + hull.equations[:, -1]) == pytest.approx(0.0, abs=1e-7 * most)
+
+
 @given(jacobians())
 def test_ellipsoids_hold_the_images_of_the_unit_sphere(case):
     J, _, random = case
@@ -209,6 +277,9 @@ def test_single_numbers_of_regular_and_lost_postures():
         (lambda: capacity.largest_speed(np.eye(2), [1.0, 0.0], [1.0, np.nan]), "one finite number"),
         (lambda: capacity.largest_force(np.eye(2), [1.0, 0.0], [1.0, -1.0]), "not negative"),
         (lambda: capacity.velocity_polytope(np.eye(4), 1.0), "2 or 3 task rows"),
+        (lambda: capacity.force_polytope(np.eye(4), 1.0, 10.0), "2 or 3 task rows"),
+        (lambda: capacity.velocity_cut(np.eye(4), 1.0, [0, 1], np.zeros(3)), "4 task rows, found a twist of shape"),
+        (lambda: capacity.velocity_cut(np.eye(4), 1.0, [0, 1], np.full(4, np.nan)), "a twist is finite"),
         (lambda: capacity.velocity_ellipsoid(np.full((2, 2), np.nan)), "NaN"),
         (lambda: capacity.manipulability(np.ones(3)), "shape"),
     ],

@@ -76,7 +76,7 @@ def _check(options):
     _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources)])
 
     from .pipeline import audit
-    from .report.files import write_whole
+    from .writing import write_whole
     from .report.text import summary
 
     if path.samples > LONG:
@@ -148,7 +148,7 @@ def _silence(stream):
 def _demo(folder):
     from importlib.resources import files
 
-    from .report.files import write_whole
+    from .writing import write_whole
 
     items = sorted((files("pathaudit") / "demo").iterdir(), key=lambda item: item.name)
     contents = {os.path.join(folder, item.name): item.read_bytes() for item in items if item.is_file() and item.name[0] not in "._"}

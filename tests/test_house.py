@@ -15,7 +15,7 @@ ROOT = Path(__file__).parents[1]
 PACKAGE = ROOT / "pathaudit"
 
 ORDER = [
-    "conventions", "errors", "kernels", "taskpath", "arm", "cell", "reading", "capacity", "motion", "measures", "causes", "findings",
+    "conventions", "errors", "writing", "kernels", "taskpath", "arm", "cell", "reading", "capacity", "motion", "measures", "causes", "findings",
     "retiming", "pipeline", "notes", "report", "charts", "widgets", "cli", "__main__",
 ]  # fmt: skip
 """From the top of the house to the bottom: a module imports only from rooms above its own, or from its own room."""
@@ -96,7 +96,7 @@ def test_reading_and_describing_load_numpy_at_most():
 
 def test_checking_loads_no_table_or_widget_library():
     heavy = {"pandas", "scipy", "plotly", "ipywidgets", "anywidget", "PIL", "IPython", "matplotlib"}
-    assert not heavy & loaded("import pathaudit as pa\npa.audit\nimport pathaudit.cli, pathaudit.report.tables, pathaudit.report.text, pathaudit.report.files")
+    assert not heavy & loaded("import pathaudit as pa\npa.audit\nimport pathaudit.cli, pathaudit.report.tables, pathaudit.report.text, pathaudit.writing")
 
 
 def test_every_public_name_is_there():

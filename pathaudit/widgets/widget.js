@@ -1,20 +1,19 @@
 // Connects a model (anywidget's, or the stub in a one-page report) to the view.
 
 import { unpack } from "./data.js";
+import { kernelLink } from "./kernel.js";
 import { mount } from "./view.js";
 
 async function render({ model, el }) {
   let timer = 0, shown = 0;
   const root = document.createElement("div");
   el.append(root);
-  const view = mount(root, model.send ? (message, buffers) => model.send(message, undefined, buffers) : null, (sample) => {
+  const link = kernelLink(model, el, (words) => view.say(words));
+  const view = mount(root, link.ask, (sample) => {
     clearTimeout(timer);
-    timer = setTimeout(() => {
-      model.set("cursor", sample);
-      model.save_changes();
-    }, 150);
+    timer = setTimeout(() => link.set("cursor", sample), 150);
   });
-  const status = () => view.say(model.get("status"));
+  const status = () => view.say(link.status());
   const refresh = async () => {
     const mine = ++shown;
     try {
@@ -38,6 +37,7 @@ async function render({ model, el }) {
   return () => {
     clearTimeout(timer);
     shown = -1;
+    link.close();
     for (const [name, act] of Object.entries(heard)) model.off(`change:${name}`, act);
     view.close();
   };

@@ -3,7 +3,7 @@
 import os
 import stat
 
-from ..errors import WriteError
+from .errors import WriteError
 
 
 def write_whole(file, content) -> None:

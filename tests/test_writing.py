@@ -7,9 +7,9 @@ import threading
 
 import pytest
 
+from pathaudit import writing
 from pathaudit.errors import WriteError
-from pathaudit.report import files
-from pathaudit.report.files import write_whole
+from pathaudit.writing import write_whole
 
 
 def test_text_and_bytes(tmp_path):
@@ -50,7 +50,7 @@ def test_a_failure_at_any_step_leaves_the_old_file_and_nothing_beside_it(tmp_pat
 
     if failing == "write":
         real = os.fdopen
-        monkeypatch.setattr(files, "open", lambda *a: Failing(real(*a)), raising=False)
+        monkeypatch.setattr(writing, "open", lambda *a: Failing(real(*a)), raising=False)
     else:
         monkeypatch.setattr(os, failing, fail)
     with pytest.raises(WriteError, match="a.txt: cannot be written: No space left on device"):
@@ -84,7 +84,7 @@ import resource, signal, sys
 signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
 resource.setrlimit(resource.RLIMIT_FSIZE, (1000, 1000))
 from pathaudit.errors import WriteError
-from pathaudit.report.files import write_whole
+from pathaudit.writing import write_whole
 try:
     write_whole(sys.argv[1], b"x" * 100_000)
 except WriteError as error:
@@ -100,7 +100,7 @@ except WriteError as error:
 def test_a_process_killed_while_it_writes_leaves_the_old_file(tmp_path):
     code = """
 import os, signal, sys
-from pathaudit.report.files import write_whole
+from pathaudit.writing import write_whole
 os.fsync = lambda handle: os.kill(os.getpid(), signal.SIGKILL)
 write_whole(sys.argv[1], b"x" * 100_000)
 """

@@ -76,13 +76,16 @@ class Audit:
         return f"<Audit of {self.path.file} with {self.cell.name}: {self.verdict}, {len(self.finding_list)} findings>"
 
 
-def audit(path: Path, cell: Cell, *, start=None, start_reason="") -> Audit:
+def audit(path: Path, cell: Cell, *, start=None, start_reason="", told=lambda words: None) -> Audit:
     """Judge whether the arm of `cell` can run `path` as programmed.
 
     start (n,) rad or m: the posture to start near; else the cell's; else of those found for the first pose the one with the best worst
-    reserve. start_reason: the sentence to give for a start that is known to fit.
+    reserve. start_reason: the sentence to give for a start that is known to fit. told(words) hears what is begun; what it raises ends the audit.
     """
+    told("following the path")
     motion = follow(path, cell, start=start, start_reason=start_reason)
+    told("measuring every sample")
     rates = measure(motion)
+    told("judging")
     found, not_judged = findings.find(rates)
     return Audit(path, cell, motion, rates, found, not_judged)

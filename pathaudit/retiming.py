@@ -24,7 +24,7 @@ EVEN_ENOUGH = 0.7  # an even factor below this costs so much that the local reti
 class Retiming:
     """Times for the same poses. time (N,) s from the path's own start; factor (N,) fraction of the programmed speed, in (0, 1].
 
-    style "even" or "local"; feasible: the joint speed and acceleration limits hold everywhere; why: a sentence.
+    style "even", "local" or "by hand"; feasible: the joint speed and acceleration limits hold everywhere; why: a sentence.
     speed_share, acceleration_share (N, n) at the new times.
     """
 
@@ -64,21 +64,22 @@ class Retiming:
         """The path with the new times."""
         return replace(self.rates.motion.path, time=self.time)
 
-    def audit(self):
-        """The retimed path audited with the same cell, starting in the same posture."""
+    def audit(self, told=lambda words: None):
+        """The retimed path audited with the same cell, starting in the same posture. told: as `pipeline.audit` takes it."""
         from .pipeline import audit
 
         motion = self.rates.motion
         if not motion.reached[0]:
-            return audit(self.path(), motion.cell)
-        return audit(self.path(), motion.cell, start=motion.closest[0], start_reason="Starts in the posture of the audit that was retimed.")
+            return audit(self.path(), motion.cell, told=told)
+        reason = "Starts in the posture of the audit that was retimed."
+        return audit(self.path(), motion.cell, start=motion.closest[0], start_reason=reason, told=told)
 
 
 def retime(rates: Rates, style=None) -> Retiming:
     """The retiming of `style` "even" or "local"; without one, the better suited of the two, with the reason."""
     if style not in (None, "even", "local"):
         raise ValueError(f"style is {style!r}, expected 'even', 'local' or None")
-    plan = _Plan.of(rates)
+    plan = Plan.of(rates)
     if not plan.needed:
         return plan.finish("even" if style is None else style, np.ones(len(plan.u)), "Nothing has to be slowed down: no joint speed or acceleration limit is passed.")
     if style is not None:
@@ -95,8 +96,17 @@ def retime(rates: Rates, style=None) -> Retiming:
     return replace(even, why=f"{even.why} An even speed keeps heat input and bead size even ({times}).")
 
 
+def slowed_stretches(factor) -> list:
+    """(first, last) of each run of samples that a retiming slows: factor (N,) below 1."""
+    slow = np.flatnonzero(np.asarray(factor) < 1.0 - 1e-9)
+    if not len(slow):
+        return []
+    cuts = np.flatnonzero(np.diff(slow) > 1)
+    return list(zip(slow[np.r_[0, cuts + 1]].tolist(), slow[np.r_[cuts, -1]].tolist(), strict=True))
+
+
 @dataclass(frozen=True, eq=False)
-class _Plan:
+class Plan:
     """What a retiming works with: programmed times u (N,), joint rates and their rates (N, n), limits, ceilings of b = f^2."""
 
     rates: Rates

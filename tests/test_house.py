@@ -16,7 +16,7 @@ PACKAGE = ROOT / "pathaudit"
 
 ORDER = [
     "conventions", "errors", "writing", "kernels", "taskpath", "arm", "cell", "reading", "capacity", "motion", "measures", "causes", "findings",
-    "retiming", "pipeline", "notes", "report", "charts", "widgets", "cli", "__main__",
+    "retiming", "edits", "by_hand", "changes", "pipeline", "notes", "report", "charts", "widgets", "cli", "__main__",
 ]  # fmt: skip
 """From the top of the house to the bottom: a module imports only from rooms above its own, or from its own room."""
 

@@ -47,3 +47,9 @@ def frozen(values, dtype=np.float64) -> np.ndarray:
     array = np.array(values, dtype=dtype, order="C")
     array.flags.writeable = False
     return array
+
+
+def owned(array) -> np.ndarray:
+    """`array` itself, read-only from here on: for arrays that nobody else holds, so that millions of rows need no copy."""
+    array.flags.writeable = False
+    return array

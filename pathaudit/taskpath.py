@@ -12,7 +12,7 @@ from functools import cached_property
 
 import numpy as np
 
-from .conventions import FARTHEST, INCH, LATEST, SHORTEST_STEP, UNIT_TOLERANCE, frozen
+from .conventions import FARTHEST, INCH, LATEST, SHORTEST_STEP, UNIT_TOLERANCE, owned
 from .errors import ReadError, first_repeated, quoted
 from .kernels import rotations
 
@@ -27,6 +27,8 @@ MEANING = frozenset(
     + [f"r{c}_{unit}" for c in "xyz" for unit in ANGLE]
 )
 """Every column name that this module understands; all others are handed through."""
+
+BLOCK = 1 << 15  # rows worked on at once: what is formed on the way stays in the processor's cache
 
 ORIENTATIONS = "qw,qx,qy,qz or rx_deg,ry_deg,rz_deg (or _rad) or i,j,k"
 
@@ -71,7 +73,7 @@ class Path:
     def distance(self) -> np.ndarray:
         """(N,) m, cumulated along the straight lines between the positions."""
         steps = np.linalg.norm(np.diff(self.position, axis=0), axis=1)
-        return frozen(np.concatenate([[0.0], np.cumsum(steps)]))
+        return owned(np.concatenate([[0.0], np.cumsum(steps)]))
 
     @property
     def length(self) -> float:
@@ -114,12 +116,29 @@ def _column_array(name, column, values):
 
 
 def _numbers(name, column, array):
-    try:
-        if array.dtype.kind in "biufOU":
+    """(N,) float64; texts are read as Python reads them."""
+    if array.dtype.kind in "biuf":
+        return array.astype(np.float64)
+    if array.dtype.kind in "OU":
+        try:
             return array.astype(np.float64)
-    except (TypeError, ValueError, OverflowError):
-        pass
+        except (TypeError, ValueError, OverflowError):
+            row = next(row for row, value in enumerate(array) if not _is_number(value))
+            mend = " (write a point in place of the decimal comma)" if _is_number(str(array[row]).replace(",", ".")) else ""
+            raise ReadError(name, f"row {row + 1}, column {column}", _shown(array[row]), f"a number{mend}") from None
     raise ReadError(name, f"column {column}", f"values of type {array.dtype}", "numbers")
+
+
+def _is_number(value):
+    try:
+        float(value)
+    except (TypeError, ValueError, OverflowError):
+        return False
+    return True
+
+
+def _shown(value):
+    return quoted(value) if isinstance(value, str) else f"{quoted(value)[1:-1]} ({type(value).__name__})"
 
 
 def _hash(values):
@@ -130,30 +149,31 @@ def _hash(values):
     return digest.hexdigest()
 
 
-def assemble(header, cells, numbers, *, name, sha256, place) -> Path:
+def assemble(header, cells, numbers, *, name, sha256, place, label=None, lines=None, made=()) -> Path:
     """Build a Path from named columns.
 
     header, cells: the column names and, for each, its values as given.
-    numbers(column) -> (N,) float64, raises ReadError.  place(row) -> words that name a row for the user.
+    numbers(column) -> (N,) float64 that nobody else holds, raises ReadError.  place(row) -> words that name a row for the user.
+    label: the texts of the column of that name, where they are at hand already.  lines, made: the path's `source_line` and `made`.
+    What is formed on the way is formed in blocks of rows: a path of millions of samples needs little more memory than it keeps.
     """
     source = _Source(header, numbers, name, place)
     time = source.quantity("time", TIME)
-    position = np.stack([source.quantity(f"the tool centre point's {c}", _units(c, LENGTH)) for c in "xyz"], axis=-1)
+    position = np.empty((len(time), 3))
+    for k, c in enumerate("xyz"):
+        position[:, k] = source.quantity(f"the tool centre point's {c}", _units(c, LENGTH))
     if len(time) < 2:
         raise ReadError(name, "", f"{len(time)} sample" + "s" * (len(time) != 1), "at least 2 samples")
     _check_time(source, time)
-    far = ~(np.abs(position) <= FARTHEST)
-    if far.any():
-        row, c = np.argwhere(far)[0]
-        raise source.error(row, f"a tool centre point at {position[row, c]:g} m", f"coordinates within {FARTHEST:g} m (check the unit of the column)")
-    rotation, spin_free = _rotation(source)
-    process = source.column("process") if "process" in header else np.ones(len(time))
-    wrong = (process != 0) & (process != 1)
-    if wrong.any():
-        row = int(np.argmax(wrong))
-        raise source.error(row, f"process = {process[row]:g}", "1 while the process runs or 0 on an air move")
-    label = tuple(map(str, cells[header.index("label")])) if "label" in header else ("",) * len(time)
-    return Path(frozen(time), frozen(position), frozen(rotation), spin_free, frozen(process, bool), label, tuple(header), tuple(cells), str(name), sha256)
+    _check_position(source, position)
+    rotation, spin_free = _rotation(source, len(time))
+    process = _process(source, len(time))
+    if label is None:
+        label = map(str, cells[header.index("label")]) if "label" in header else ("",) * len(time)
+    if lines is not None:
+        lines = owned(lines)
+    columns = tuple(header), tuple(cells)
+    return Path(owned(time), owned(position), owned(rotation), spin_free, owned(process), tuple(label), *columns, str(name), sha256, lines, tuple(made))
 
 
 @dataclass(frozen=True)
@@ -215,7 +235,30 @@ def _check_time(source, time):
         raise source.error(row, f"time {time[row]:.9g} s after {time[row - 1]:.9g} s in {source.place(row - 1)}", "times that strictly increase")
 
 
-def _rotation(source):
+def _check_position(source, position):
+    for rows in _blocks(len(position)):
+        far = ~(np.abs(position[rows]) <= FARTHEST)
+        if far.any():
+            row, c = np.argwhere(far)[0] + (rows.start, 0)
+            raise source.error(row, f"a tool centre point at {position[row, c]:g} m", f"coordinates within {FARTHEST:g} m (check the unit of the column)")
+
+
+def _process(source, samples):
+    if "process" not in source.header:
+        return np.ones(samples, dtype=bool)
+    process = source.column("process")
+    wrong = (process != 0) & (process != 1)
+    if wrong.any():
+        row = int(np.argmax(wrong))
+        raise source.error(row, f"process = {process[row]:g}", "1 while the process runs or 0 on an air move")
+    return process != 0
+
+
+def _blocks(samples):
+    return [slice(start, min(start + BLOCK, samples)) for start in range(0, samples, BLOCK)]
+
+
+def _rotation(source, samples):
     """(N, 3, 3) and whether the spin about the tool axis is free, from the one orientation form that the source has."""
     angles = [_units(f"r{c}", ANGLE) for c in "xyz"]
     groups = {"quaternion": [{c: None} for c in QUATERNION], "angles": angles, "axis": [{c: None} for c in AXIS]}
@@ -226,13 +269,57 @@ def _rotation(source):
         raise ReadError(source.name, "header", f"two forms of the orientation ({', '.join(columns)})", f"exactly one of {ORIENTATIONS}")
     if not whole:
         raise _no_orientation(source, groups, there)
+    rotation = np.empty((samples, 3, 3))
     if whole == ["angles"]:
-        rpy = np.stack([source.quantity(f"the turn about {c.upper()}", names) for c, names in zip("xyz", angles)], axis=-1)
-        return rotations.matrix_from_rpy(rpy), False
-    if whole == ["quaternion"]:
-        wxyz = _unit(source, QUATERNION, "a quaternion")
-        return rotations.matrix_from_wxyz(rotations.continuous_wxyz(wxyz)), False
-    return rotations.carry_frames(_unit(source, AXIS, "a tool axis")), True
+        rpy = [source.quantity(f"the turn about {c.upper()}", names) for c, names in zip("xyz", angles)]
+        for rows in _blocks(samples):
+            rotation[rows] = rotations.matrix_from_rpy(np.stack([angle[rows] for angle in rpy], axis=-1))
+    elif whole == ["quaternion"]:
+        for rows, wxyz in _unit(source, QUATERNION, "a quaternion"):
+            _frames_from_wxyz(wxyz, rotation[rows])
+    else:
+        for rows, axis in _unit(source, AXIS, "a tool axis"):
+            rotation[rows] = _carried_on(axis, rotation[rows.start - 1] if rows.start else None)
+    return rotation, whole == ["axis"]
+
+
+def _unit(source, columns, title):
+    """(rows, one array a column) for each block of rows, as vectors of length 1: what is within the tolerance of 1 is scaled to it."""
+    values = [source.column(c) for c in columns]
+    for rows in _blocks(len(values[0])):
+        vectors = [value[rows] for value in values]
+        with np.errstate(over="ignore"):
+            length = np.sqrt(sum(value * value for value in vectors))
+        bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
+        if bad.any():
+            row = int(np.argmax(bad))
+            raise source.error(row + rows.start, f"{title} of length {length[row]:.6g} ({', '.join(columns)})", "length 1")
+        yield rows, [value / length for value in vectors]
+
+
+def _frames_from_wxyz(wxyz, out):
+    """`rotations.matrix_from_wxyz`, written entry by entry into `out`: several times as fast on long paths."""
+    w, x, y, z = wxyz
+    xx, yy, zz, xy, xz, yz, wx, wy, wz = x * x, y * y, z * z, x * y, x * z, y * z, w * x, w * y, w * z
+    rows = ((1 - 2 * (yy + zz), 2 * (xy - wz), 2 * (xz + wy)), (2 * (xy + wz), 1 - 2 * (xx + zz), 2 * (yz - wx)), (2 * (xz - wy), 2 * (yz + wx), 1 - 2 * (xx + yy)))
+    for i, row in enumerate(rows):
+        for j, entry in enumerate(row):
+            out[:, i, j] = entry
+
+
+def _carried_on(axis, before):
+    """Frames on the axes (three arrays), each reached from the one before by the least turn; the first from the frame `before`.
+
+    The least turn does not depend on the spin: frames carried from any first frame differ from these by one spin about their +Z.
+    """
+    axes = np.stack(axis, axis=-1)
+    if before is None:
+        return rotations.carry_frames(axes)
+    frames = rotations.carry_frames(np.concatenate([before[None, :, 2], axes]))
+    c, s = frames[0, :, :2].T @ before[:, 0]
+    size = np.hypot(c, s)
+    c, s = c / size, s / size
+    return frames[1:] @ np.array([[c, -s, 0.0], [s, c, 0.0], [0.0, 0.0, 1.0]])
 
 
 def _no_orientation(source, groups, there):
@@ -243,15 +330,3 @@ def _no_orientation(source, groups, there):
     near = [c for c in source.header if c.lower() in ("rx", "ry", "rz", "roll", "pitch", "yaw", "a", "b", "c")]
     found = f"a column {quoted(near[0])} without a unit or a known meaning" if near else "no orientation"
     return ReadError(source.name, "header", found, ORIENTATIONS)
-
-
-def _unit(source, columns, title):
-    """(N, len(columns)) of unit length; what is within the tolerance of 1 is scaled to it."""
-    vectors = np.stack([source.column(c) for c in columns], axis=-1)
-    with np.errstate(over="ignore"):
-        length = np.linalg.norm(vectors, axis=-1)
-    bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
-    if bad.any():
-        row = int(np.argmax(bad))
-        raise source.error(row, f"{title} of length {length[row]:.6g} ({', '.join(columns)})", "length 1")
-    return vectors / length[:, None]

@@ -166,11 +166,11 @@ def test_a_path_is_a_value():
         ({**BASE, **AXIS, "y_mm": [0, 1, 1e9]}, ["row 3", "check the unit"]),
         ({**BASE, **AXIS, "y_mm": [0, 1]}, ["2 and 3 values"]),
         ({**BASE, **AXIS, "y_mm": [[0], [1], [2]]}, ["y_mm", "(3, 1)"]),
-        ({**BASE, **AXIS, "y_mm": ["a", "b", "c"]}, ["y_mm", "numbers"]),
+        ({**BASE, **AXIS, "y_mm": ["a", "b", "c"]}, ["row 1, column y_mm", "a number"]),
         ({**BASE, **AXIS, "y_mm": [1j, 2j, 3j]}, ["y_mm", "complex128", "numbers"]),
         ({**BASE, **AXIS, "t_s": np.array([0, 1, 2], "M8[s]")}, ["t_s", "datetime64", "numbers"]),
         ({**BASE, **AXIS, "y_mm": [[1, 2], [3], [4]]}, ["y_mm", "different shapes"]),
-        ({**BASE, **AXIS, "y_mm": [None, {}, 1]}, ["y_mm", "object", "numbers"]),
+        ({**BASE, **AXIS, "y_mm": [None, {}, 1]}, ["row 1, column y_mm", "NoneType", "a number"]),
         ({k: v[:1] for k, v in {**BASE, **AXIS}.items()}, ["1 sample", "at least 2"]),
         ({k: v[:0] for k, v in {**BASE, **AXIS}.items()}, ["0 samples", "at least 2"]),
         ({}, ["time"]),
@@ -197,3 +197,32 @@ def test_a_path_knows_its_lines_and_how_it_was_made_only_where_somebody_says_so(
     assert p.source_line is None and p.made == ()
     told = replace(p, source_line=np.array([2, 3, 4]), made=("Sampled.",))
     assert told.source_line.tolist() == [2, 3, 4] and told.made == ("Sampled.",) and told.length == p.length
+
+
+# what is formed in blocks of rows is the same at any block
+
+
+@pytest.mark.parametrize("form", ["qw qx qy qz", "i j k", "rx_deg ry_deg rz_deg"])
+def test_a_path_longer_than_a_block_has_the_same_frames(monkeypatch, form):
+    from pathaudit import taskpath
+
+    rng, n = np.random.default_rng(7), 1000
+    values = np.cumsum(rng.normal(size=(n, len(form.split()))) * 0.3, axis=0)
+    if form[0] != "r":
+        values /= np.linalg.norm(values, axis=1)[:, None]
+    columns = {"t_s": np.arange(n), "x_mm": rng.normal(size=n), "y_mm": np.zeros(n), "z_mm": np.zeros(n), **dict(zip(form.split(), values.T))}
+    whole = pa.path_from(columns)
+    monkeypatch.setattr(taskpath, "BLOCK", 7)
+    pieces = pa.path_from(columns)
+    np.testing.assert_allclose(pieces.rotation, whole.rotation, rtol=0, atol=1e-12)
+    for field, value, words in (("x_mm", 1e9, "row 900: found a tool centre point at 1e\\+06 m"), (form.split()[0], np.nan, f"row 900, column {form.split()[0]}")):
+        broken = {**columns, field: np.where(np.arange(n) == 899, value, columns[field])}
+        with pytest.raises(pa.ReadError, match=words):
+            pa.path_from(broken)
+
+
+def test_a_value_that_is_no_number_is_named_with_its_row():
+    columns = {"t_s": [0, 1], "y_mm": [0, 0], "z_mm": [0, 0], "i": [0, 0], "j": [0, 0], "k": [1, 1]}
+    for value, words in (("1,5", "row 2, column x_mm: found '1,5', expected a number .write a point"), ("=A1+1", "row 2, column x_mm: found '=A1\\+1'")):
+        with pytest.raises(pa.ReadError, match=words):
+            pa.path_from({**columns, "x_mm": ["0", value]})

@@ -21,6 +21,7 @@ _HOMES = {
     "read_cell": "reading",
     "audit": "pipeline",
     "Audit": "pipeline",
+    "show": "widgets.timeline",
     "velocity_ellipsoid": "capacity",
     "velocity_polytope": "capacity",
     "force_ellipsoid": "capacity",

@@ -13,8 +13,7 @@ export function headPanel(ui) {
     const said = [facts.file, `${facts.samples.toLocaleString("en")} samples`, `${fixed(facts.duration_s, 2)} s`, `${fixed(facts.length_mm, 0)} mm`];
     if (facts.shown < facts.samples) said.push(`${facts.shown.toLocaleString("en")} drawn, every peak kept`);
     const needed = again.feasible && again.slowest_percent < 99.95;
-    const retiming = again.applied
-      ? `Shown with the suggested retiming (${again.style}), slowest ${fixed(again.slowest_percent, 0)} % of the programmed speed.`
+    const retiming = again.applied ? `Shown at other speeds than programmed. ${again.why}`
       : needed ? `Suggested retiming: ${again.why}` : again.why;
     node.replaceChildren(element("span", { class: "pa-verdict" }, element("i", { class: `pa-swatch pa-${facts.verdict}` }), facts.verdict),
       element("b", {}, facts.name), element("span", {}, said.join(" · ")), element("p", {}, retiming));
@@ -22,7 +21,7 @@ export function headPanel(ui) {
     const words = again.applied ? "Show as programmed" : "Show as retimed";
     node.lastChild.append(" ", button(words, words, () => {
       ui.say("Waiting for the kernel ...");
-      ui.ask({ do: "show retimed", on: !again.applied });
+      ui.ask(again.applied ? { do: "show", name: "as programmed" } : { do: "accept" });
     }));
   }
 

@@ -1,62 +1,187 @@
-"""What is on show: the audit as given, the one shown now, and the one worker that makes another from it. Knows no widget library.
+"""The audit on show and what a person tries on it: edits with undo, variants that are kept, one worker. Knows no widget library.
 
-A change never waits for an older one: each request raises the generation, and a result whose generation has passed is dropped.
-Callbacks come from the worker's thread.
+Nothing here changes an audit: an edit of the speed makes another one, in the worker's thread, and the newest change wins.
 """
 
-from concurrent.futures import ThreadPoolExecutor
-from threading import Lock
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..by_hand import by_hand
+from ..changes import outline
+from ..edits import Edits, Lock, Slow
+from .history import History
+from .worker import Worker
+
+PROGRAMMED = "as programmed"
+
+
+@dataclass(frozen=True, eq=False)
+class Variant:
+    """An audit on trial under a name: the edits that made it, its times (None as programmed), its audit."""
+
+    name: str
+    edits: Edits
+    retiming: object
+    audit: object
+
+
+class Listener:
+    """What a session tells, all from the worker's thread but `changed`; this one hears nothing."""
+
+    def drawn(self, variant):
+        """Whatever takes long before `shown`: its result is handed to it."""
+
+    def shown(self, variant, drawing):
+        """Another variant is on show."""
+
+    def changed(self):
+        """Edits, undo or variants changed, the audit on show did not."""
+
+    def told(self, words):
+        """What the worker is doing; '' when it begins."""
+
+    def failed(self, sentence):
+        """A change could not be made; what was on show stays."""
 
 
 class Session:
-    """given: the audit as it came; shown: the one on show, never changed in place."""
+    """given: the audit as it came. shown: the Variant on show. variants: name -> Variant, in the order in which they were kept."""
 
-    def __init__(self, audit):
-        self.given = self.shown = audit
-        self._lock = Lock()
-        self._generation = 0
-        self._worker = None
+    def __init__(self, audit, listener=None):
+        self.given = audit
+        self.shown = Variant(PROGRAMMED, Edits(), None, audit)
+        self.variants = {}
+        self._listener = listener or Listener()
+        self._worker = Worker(self._listener.told)
+        self._history = History(Edits())
 
-    def change(self, make, done, failed):
-        """Run make(given) -> (audit, result) in the worker; then done(result), or failed(sentence) where it raises. The newest request wins.
+    # ---- trying: stretches in s, as the path's own clock has them. Each waits for its audit.
 
-        make does everything that takes long, `result` included; done only hands the result on.
-        """
-        with self._lock:
-            self._generation += 1
-            generation = self._generation
-            if self._worker is None:
-                self._worker = ThreadPoolExecutor(1, thread_name_prefix="pathaudit")
-        return self._worker.submit(self._run, generation, make, done, failed)
+    def slow(self, from_s, to_s, factor):
+        """Run the stretch at `factor` (0 to 1) of the programmed speed."""
+        if not 0.0 < factor <= 1.0:
+            raise ValueError(f"factor is {factor!r}, expected a fraction of the programmed speed above 0 and at most 1")
+        self.change(self.edits.plus(Slow(*self._samples(from_s, to_s), float(factor)))).result()
+
+    def lock(self, from_s, to_s):
+        """Keep the stretch as programmed, whatever is asked for beside it."""
+        self.change(self.edits.plus(Lock(*self._samples(from_s, to_s)))).result()
+
+    def free(self, from_s, to_s):
+        """Take back every edit on the stretch."""
+        self.change(self.edits.freed(*self._samples(from_s, to_s))).result()
+
+    def accept(self, from_s=-np.inf, to_s=np.inf):
+        """Take over the suggested retiming, on a stretch or as a whole."""
+        self.change(self.edits.accept(*self._samples(from_s, to_s), self.given.suggestion.style)).result()
+
+    def keep(self, name):
+        """Keep what is on show as a variant, in place of one of the same name."""
+        name = " ".join(str(name).split())
+        if not name or name == PROGRAMMED:
+            raise ValueError(f"the name is {name!r}, expected one of your own for the variant")
+        self.variants[name] = Variant(name, self.shown.edits, self.shown.retiming, self.shown.audit)
+        self._listener.changed()
+
+    def compared(self):
+        """pandas.DataFrame, one row a variant, the path as programmed first."""
+        import pandas as pd
+
+        return pd.DataFrame([{"variant": name or "on trial", "shown": shown, **numbers} for name, shown, numbers in self.outlines()]).set_index("variant")
+
+    # ---- what the instrument asks for
+
+    @property
+    def edits(self):
+        """The Edits that hold, or will when the worker is done."""
+        return self._history.now
+
+    @property
+    def steps(self):
+        """Whether there is something to undo, and to redo."""
+        return self._history.can_undo, self._history.can_redo
+
+    def change(self, edits, gesture=None):
+        """Make and show the audit of other edits; gives a Future. Equal gestures are one step of the history."""
+        self._history.push(edits, gesture)
+        return self._start()
+
+    def undo(self):
+        self._history.undo()
+        return self._start()
+
+    def redo(self):
+        self._history.redo()
+        return self._start()
+
+    def show(self, name):
+        """Show a variant again, as one more step of the history."""
+        return self.change(Edits() if name == PROGRAMMED else self.variants[name].edits)
+
+    def drop(self, name):
+        """Forget a variant."""
+        del self.variants[name]
+        self._listener.changed()
 
     def cancel(self):
-        """Drop whatever is under way; what is shown stays."""
-        with self._lock:
-            self._generation += 1
+        """Give up the change under way: what is on show stays, and redo brings the change back."""
+        self._worker.cancel()
+        self._history.back_to(self.shown.edits)
+        self._listener.changed()
 
     def close(self):
-        """Cancel and let the worker go."""
-        self.cancel()
-        with self._lock:
-            worker, self._worker = self._worker, None
-        if worker is not None:
-            worker.shutdown(wait=False, cancel_futures=True)
+        self._worker.close()
 
-    def _run(self, generation, make, done, failed):
-        if generation != self._generation:
-            return
-        try:
-            audit, result = make(self.given)
-        except Exception as error:      # told to the user by `failed`: nothing above this thread would ever see it
-            self._if_newest(generation, lambda: failed(f"{type(error).__name__}: {error}"))
-            return
-        self._if_newest(generation, lambda: self._take(audit, result, done))
+    # ---- inside
 
-    def _take(self, audit, result, done):
-        self.shown = audit
-        done(result)
+    def _samples(self, from_s, to_s):
+        """First and last sample within a stretch given in s."""
+        if not from_s <= to_s:
+            raise ValueError(f"the stretch is from {from_s!r} to {to_s!r} s, expected its start first")
+        time = self.given.time
+        first, last = (int(k) for k in (np.searchsorted(time, from_s - 1e-9), np.searchsorted(time, to_s + 1e-9, side="right") - 1))
+        if first > last:
+            raise ValueError(f"no sample lies between {from_s:g} and {to_s:g} s, expected a stretch of the path from {time[0]:g} to {time[-1]:g} s")
+        return first, last
 
-    def _if_newest(self, generation, act):
-        with self._lock:
-            if generation == self._generation:
-                act()
+    def _start(self):
+        edits = self._history.now
+        kept = next((v for v in self._all() if v.edits == edits), None)
+        self._listener.changed()
+        return self._worker.start(lambda told: self._make(edits, kept, told), self._take, self._fail)
+
+    def _make(self, edits, kept, told):
+        variant = kept or self._variant(edits, told)
+        told("drawing")
+        return variant, self._listener.drawn(variant)
+
+    def _variant(self, edits, told):
+        told("finding the new times")
+        again = by_hand(self.given.rates, edits, (self.given.suggestion,))
+        return Variant("", edits, again, again.audit(told))
+
+    def _take(self, made):
+        self.shown, drawing = made
+        self._listener.shown(self.shown, drawing)
+
+    def _fail(self, sentence):
+        self._history.back_to(self.shown.edits)
+        self._listener.failed(sentence)
+
+    def _all(self):
+        return Variant(PROGRAMMED, Edits(), None, self.given), *self.variants.values()
+
+    def outlines(self):
+        """(name, whether it is on show, what it is compared by) of every variant, the path as programmed first; one without a name is on trial."""
+        rows = self._all()
+        if all(v.edits != self.shown.edits for v in rows):
+            rows = *rows, self.shown
+        return [(v.name, v.edits == self.shown.edits, variant_outline(v)) for v in rows]
+
+
+def variant_outline(variant):
+    """What variants are compared by: `changes.outline` and the slowest factor."""
+    slowest = 100.0 if variant.retiming is None else 100.0 * variant.retiming.slowest
+    return {**outline(variant.audit), "slowest_percent": slowest}
+

@@ -1,63 +1,122 @@
 """An audit on show in a notebook: the live timeline, and beside it the still form that readers without a kernel see."""
 
-import base64
+import re
+from pathlib import PurePath
 
 import anywidget
 import traitlets
 
-from ..report.html_tables import still_tables
+from ..edits import Lock, Slow
 from ..report.scene import scene
 from ..report.script import shared_module, style_sheet
-from ..report.still import png_picture, svg_picture
+from ..report.tables import retimed_csv
 from ..report.text import summary
 from .session import Session
+from .still_form import StillForm, still_form
+from .trial_facts import trial_facts
+
+LONG = 50_000  # samples from which it is said what the worker does
 
 
 class Timeline(anywidget.AnyWidget):
     """The live timeline of an audit. Moving the cursor asks nothing of the kernel; `cursor` is the sample number it stands at.
 
-    facts and block are one Scene (report/scene.py): what is said once, and the columns packed. status: one sentence, shown when not empty.
+    facts and block are one Scene (report/scene.py): what is said once, and the columns packed. trial: what is tried by hand
+    (trial_facts.py). status: one sentence, shown when not empty.
     """
 
     _esm = shared_module()
     _css = style_sheet()
     facts = traitlets.Dict().tag(sync=True)
     block = traitlets.Bytes().tag(sync=True)
+    trial = traitlets.Dict().tag(sync=True)
     status = traitlets.Unicode().tag(sync=True)
     cursor = traitlets.Int().tag(sync=True, echo_update=False)
 
-    def __init__(self, audit, shown=None):
-        """shown: the audit's Scene, where it has been made already."""
-        self.session = Session(audit)
-        super().__init__(**_state(shown or scene(audit)))
+    def __init__(self, audit, shown=None, still=None):
+        """shown: the audit's Scene, where it has been made already; still: the StillForm beside this one, told of every change."""
+        self.session, self.still = Session(audit, self), still
+        super().__init__(**_state(shown or scene(audit)), trial=trial_facts(self.session))
         self.on_msg(self._on_message)
-
-    def show_retimed(self, retimed):
-        """Show the audit of the suggested retiming, or with False the audit as given again."""
-        self.status = "Auditing the suggested retiming ..." if retimed else ""
-        return self.session.change(_retimed if retimed else _as_given, self._take, self._tell)
 
     def close(self):
         self.session.close()
+        if self.still:
+            self.still.close()
         if self.layout is not None:
             self.layout.close()
         super().close()
 
-    def _take(self, state):
+    # ---- what the session tells (session.Listener)
+
+    def drawn(self, variant):
+        before = None if variant.retiming is None else self.session.given
+        return _state(scene(variant.audit, applied=variant.retiming, before=before))
+
+    def shown(self, variant, drawing):
         with self.hold_sync():
             self.set_trait("status", "")
-            for name, value in state.items():
+            for name, value in drawing.items():
                 self.set_trait(name, value)
+            self.set_trait("trial", trial_facts(self.session))
+        self._refresh_still()
 
-    def _tell(self, sentence):
-        self.status = f"That did not work. {sentence}"
+    def changed(self):
+        self.trial = trial_facts(self.session)
+        self._refresh_still()
+
+    def told(self, words):
+        if self.session.given.path.samples > LONG:
+            self.status = f"Working: {words} ..." if words else ""
+
+    def failed(self, sentence):
+        with self.hold_sync():
+            self.set_trait("status", f"That did not work. {sentence}")
+            self.set_trait("trial", trial_facts(self.session))
+
+    # ---- what the browser asks for
 
     def _on_message(self, _, content, __):
         try:
-            if content.get("do") == "show retimed":
-                self.show_retimed(bool(content.get("on")))
+            self._acts()[content.get("do")](content)
         except Exception as error:      # a callback's exception would end in a log that nobody reads
-            self._tell(f"{type(error).__name__}: {error}")
+            self.status = f"That did not work. {error if isinstance(error, ValueError) else f'{type(error).__name__}: {error}'}"
+
+    def _acts(self):
+        session = self.session
+        change = lambda make: lambda c: session.change(make(session.edits, *self._stretch(c), c), c.get("gesture"))
+        return {
+            "slow": change(lambda edits, first, last, c: edits.plus(Slow(first, last, _factor(c)))),
+            "lock": change(lambda edits, first, last, c: edits.plus(Lock(first, last))),
+            "free": change(lambda edits, first, last, c: edits.freed(first, last)),
+            "accept": change(lambda edits, first, last, c: edits.accept(first, last, session.given.suggestion.style)),
+            "reject": change(lambda edits, first, last, c: edits.reject(first, last)),
+            "undo": lambda c: session.undo(), "redo": lambda c: session.redo(), "cancel": lambda c: session.cancel(),
+            "show": lambda c: session.show(c["name"]), "keep": lambda c: session.keep(c["name"]), "drop": lambda c: session.drop(c["name"]),
+            "export": lambda c: self._export(c["name"]),
+        }  # fmt: skip
+
+    def _stretch(self, content):
+        """First and last sample of a message; all of the path where it names none."""
+        last = self.session.given.path.samples - 1
+        ends = sorted((int(content.get("first", 0)), int(content.get("last", last))))
+        return max(ends[0], 0), min(ends[1], last)
+
+    def _export(self, name):
+        variant = self.session.variants.get(name) or self.session.shown
+        if variant.retiming is None:
+            raise ValueError("The path runs as programmed: there are no other times to write.")
+        stem = PurePath(variant.retiming.rates.motion.path.file).stem
+        ending = re.sub(r"[^\w-]+", "-", variant.name or "retimed").strip("-")
+        self.send({"save": f"{stem}-{ending}.csv"}, [retimed_csv(variant.retiming).encode()])
+
+    def _refresh_still(self):
+        if self.still:
+            self.still.refresh(self.session)
+
+
+def _factor(content):
+    return min(max(float(content["factor"]), 0.01), 1.0)
 
 
 def _state(shown):
@@ -65,47 +124,31 @@ def _state(shown):
     return {"facts": {**shown.facts, "layout": layout}, "block": block}
 
 
-def _as_given(audit):
-    return audit, _state(scene(audit))
-
-
-def _retimed(audit):
-    again = audit.suggestion.audit()
-    return again, _state(scene(again, applied=audit.suggestion))
-
-
 def show(audit):
-    """Display an audit in the running notebook cell: live timeline, picture and tables; plain text where there is no notebook."""
+    """Display an audit in the running notebook cell: live timeline, picture and tables; plain text where there is no notebook.
+
+    Gives the Session, on which the same can be tried from Python as with the mouse.
+    """
     from IPython import get_ipython
     from IPython.display import display
 
     shell = get_ipython()
     if shell is None or not hasattr(shell, "kernel"):
         display({"text/plain": summary(audit)}, raw=True)
-        return
+        return Session(audit)
     shown = scene(audit)
-    timeline = Timeline(audit, shown)
+    still = StillForm()
+    timeline = Timeline(audit, shown, still)
     _replace(shell, timeline)
     display({"application/vnd.jupyter.widget-view+json": {"version_major": 2, "version_minor": 0, "model_id": timeline.model_id},
              "text/plain": _line(audit)}, raw=True)
-    for bundle in still_form(audit, shown):
-        display(bundle, raw=True)
+    still.display(still_form(audit, shown))
+    return timeline.session
 
 
 def _line(audit):
     count = len(audit.finding_list)
     return f"Path audit of {audit.cell.name}: {audit.verdict}, {count or 'no'} finding{'' if count == 1 else 's'}"
-
-
-def still_form(audit, shown=None):
-    """Two mime bundles that need no kernel: the picture and the tables.
-
-    They stay two outputs beside the widget's: in one bundle with it, readers that cannot show the widget would show nothing.
-    """
-    shown = shown or scene(audit)
-    picture = {"image/svg+xml": svg_picture(shown), "image/png": base64.b64encode(png_picture(shown)).decode(),
-               "text/plain": "(picture of the timeline)"}
-    return picture, {"text/html": still_tables(audit), "text/plain": summary(audit)}
 
 
 _ON_SHOW = {}      # cell id -> (execution, timelines): the only way to let the old ones go when a cell is run again

@@ -29,8 +29,8 @@ async function render({ model, el }) {
   const cursor = () => view.toSample(model.get("cursor"));
   const trial = () => model.get("trial") && view.showTrial(model.get("trial"));
   const notes = () => model.get("notes") && view.showNotes(model.get("notes"));
-  const heard = { block: refresh, status, cursor, trial, notes };
-  for (const [name, act] of Object.entries(heard)) model.on(`change:${name}`, act);
+  const heard = { "change:block": refresh, "change:status": status, "change:cursor": cursor, "change:trial": trial, "change:notes": notes, "msg:custom": save };
+  for (const [name, act] of Object.entries(heard)) model.on(name, act);
   await refresh();
   trial();
   notes();
@@ -38,9 +38,18 @@ async function render({ model, el }) {
     clearTimeout(timer);
     shown = -1;
     link.close();
-    for (const [name, act] of Object.entries(heard)) model.off(`change:${name}`, act);
+    for (const [name, act] of Object.entries(heard)) model.off(name, act);
     view.close();
   };
+}
+
+// A file that Python has made, handed to the person as the browser's download.
+function save(content, [text]) {
+  if (!content.save) return;
+  const url = URL.createObjectURL(new Blob([text], { type: "text/csv" }));
+  const link = Object.assign(document.createElement("a"), { href: url, download: content.save });
+  link.click();
+  setTimeout(() => URL.revokeObjectURL(url), 1000);
 }
 
 export default { render };

@@ -10,10 +10,14 @@ import nbconvert
 import nbformat
 import numpy as np
 import pytest
+from example_arms import SWAY_TIME, path_of_motion, swaying
 from fake_audit import fake_audit
 
+import pathaudit as pa
+from pathaudit.report.tables import retimed_csv
 from pathaudit.widgets import timeline as module
-from pathaudit.widgets.timeline import Timeline, still_form
+from pathaudit.widgets.still_form import still_form
+from pathaudit.widgets.timeline import Timeline
 
 
 @pytest.fixture
@@ -46,36 +50,105 @@ def test_the_cursor_comes_from_the_browser(timeline):
     assert timeline.cursor == 734
 
 
-def test_the_retimed_audit_is_fetched_and_given_back(timeline, audit):
-    given = timeline.block
-    assert timeline.facts["retiming"]["applied"] is False
-    timeline.show_retimed(True).result(10)
-    assert timeline.facts["retiming"]["applied"] is True and timeline.block != given and timeline.status == ""
-    assert timeline.facts["duration_s"] > audit.path.duration
-    timeline.show_retimed(False).result(10)
-    assert timeline.block == given and timeline.session.shown is audit
+def settled(timeline):
+    """Wait until the worker has nothing left to do."""
+    timeline.session._worker._pool.submit(lambda: None).result(20)
 
 
-def test_the_button_of_the_browser_asks_for_the_retimed_audit(timeline):
-    from_browser(timeline, {"method": "custom", "content": {"do": "show retimed", "on": True}})
-    timeline.session._worker.submit(lambda: None).result(10)
-    assert timeline.facts["retiming"]["applied"] is True
+def ask(timeline, **content):
+    from_browser(timeline, {"method": "custom", "content": content})
+    if timeline.session._worker._pool:
+        settled(timeline)
 
 
-def test_a_failure_in_the_worker_is_shown(timeline, audit):
-    def broken():
-        raise RuntimeError("no such posture")
-
-    audit.suggestion.audit = broken
-    timeline.show_retimed(True).result(10)
-    assert timeline.status == "That did not work. RuntimeError: no such posture"
+@pytest.fixture(scope="module")
+def real():
+    cell, joints = swaying(2)[:2]
+    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
 
 
-def test_a_failure_in_a_callback_is_shown(timeline, monkeypatch):
-    monkeypatch.setattr(timeline.session, "change", lambda *_: 1 / 0)
-    from_browser(timeline, {"method": "custom", "content": {"do": "show retimed", "on": True}})
-    assert "ZeroDivisionError" in timeline.status
-    from_browser(timeline, {"method": "custom", "content": {"do": "something unknown"}})
+@pytest.fixture
+def bench(real):
+    made = Timeline(real)
+    yield made
+    made.close()
+
+
+def test_the_suggestion_is_taken_over_and_given_back(bench, real):
+    given = bench.block
+    assert bench.facts["retiming"]["applied"] is False and bench.trial["offers"]
+    ask(bench, do="accept")
+    assert bench.facts["retiming"]["applied"] is True and bench.block != given and bench.status == ""
+    assert bench.facts["duration_s"] == pytest.approx(real.suggestion.duration)
+    assert {offer["state"] for offer in bench.trial["offers"]} == {"accepted"}
+    assert {change["what"] for change in bench.trial["changes"]} >= {"gone"} or any(c["what"] == "better" for c in bench.trial["changes"])
+    ask(bench, do="show", name="as programmed")
+    assert bench.block == given and bench.session.shown.audit is real
+
+
+def test_the_browser_slows_locks_frees_undoes(bench):
+    ask(bench, do="slow", first=40, last=80, factor=0.5, gesture=1)
+    ask(bench, do="slow", first=40, last=80, factor=0.4, gesture=1)
+    ask(bench, do="lock", first=100, last=90)
+    assert [(e["kind"], e["first"], e["last"]) for e in bench.trial["edits"]] == [("slow", 40, 80), ("lock", 90, 100)]
+    assert bench.trial["edits"][0]["percent"] == pytest.approx(40.0)
+    assert bench.trial["why"].startswith("Slows") and bench.trial["undo"] and not bench.trial["redo"]
+    ask(bench, do="undo")
+    ask(bench, do="undo")
+    assert bench.trial["edits"] == [] and bench.trial["redo"] and bench.trial["changes"] == []
+    ask(bench, do="redo")
+    ask(bench, do="free", first=0, last=60)
+    assert [(e["first"], e["last"]) for e in bench.trial["edits"]] == [(61, 80)]
+
+
+def test_a_stretch_of_the_suggestion_is_rejected(bench):
+    offer = bench.trial["offers"][0]
+    ask(bench, do="accept")
+    ask(bench, do="reject", first=offer["first"], last=offer["last"])
+    states = [o["state"] for o in bench.trial["offers"]]
+    assert states[0] == "rejected" and set(states[1:]) <= {"accepted"}
+
+
+def test_variants_are_kept_shown_dropped_and_written(bench, real, monkeypatch):
+    sent = []
+    monkeypatch.setattr(bench, "send", lambda content, buffers=None: sent.append((content, buffers)))
+    ask(bench, do="accept")
+    ask(bench, do="keep", name="as suggested")
+    assert [(v["name"], v["shown"]) for v in bench.trial["variants"]] == [("as programmed", False), ("as suggested", True)]
+    ask(bench, do="export", name="as suggested")
+    (content, (text,)), = sent
+    assert content == {"save": "arrays-as-suggested.csv"}
+    assert text.decode() == retimed_csv(bench.session.shown.retiming)
+    ask(bench, do="show", name="as programmed")
+    ask(bench, do="export", name="as programmed")
+    assert len(sent) == 1 and "no other times to write" in bench.status
+    ask(bench, do="drop", name="as suggested")
+    assert [v["name"] for v in bench.trial["variants"]] == ["as programmed"]
+
+
+def test_a_failure_in_the_worker_is_shown(bench, monkeypatch):
+    monkeypatch.setattr("pathaudit.widgets.session.by_hand", lambda *_: 1 / 0)
+    ask(bench, do="slow", first=1, last=5, factor=0.5)
+    assert bench.status == "That did not work. ZeroDivisionError: division by zero" and bench.trial["edits"] == []
+
+
+@pytest.mark.parametrize("content, words", [
+    ({"do": "something unknown"}, "something unknown"), ({}, "None"), ({"do": "slow", "first": 0, "last": 3}, "factor"), ({"do": "keep", "name": " "}, "expected one of your own"),
+    ({"do": "show", "name": "never kept"}, "never kept"), ({"do": "slow", "first": "x", "last": 3, "factor": 1}, "x"),
+])
+def test_a_message_that_cannot_be_meant_is_told(bench, content, words):
+    from_browser(bench, {"method": "custom", "content": content})
+    assert bench.status.startswith("That did not work.") and words in bench.status
+
+
+def test_a_stretch_beyond_the_path_is_cut_to_it(bench, real):
+    ask(bench, do="slow", first=-50, last=10**9, factor=0.9)
+    assert [(e["first"], e["last"]) for e in bench.trial["edits"]] == [(0, real.path.samples - 1)]
+
+
+def test_what_is_told_is_plain_json(bench):
+    ask(bench, do="slow", first=10, last=50, factor=0.5)
+    json.dumps(bench.trial, allow_nan=False)
 
 
 @pytest.mark.parametrize("samples, n", [(2, 1), (2, 12), (200_000, 6)])
@@ -115,7 +188,7 @@ def notebook(monkeypatch):
     shell.get_parent = lambda: {"metadata": {"cellId": "cell"}, "header": {"msg_id": shell.execution}}
     fake = SimpleNamespace(get_ipython=lambda: shell)
     monkeypatch.setitem(sys.modules, "IPython", fake)
-    monkeypatch.setitem(sys.modules, "IPython.display", SimpleNamespace(display=lambda bundle, raw: out.append(bundle)))
+    monkeypatch.setitem(sys.modules, "IPython.display", SimpleNamespace(display=lambda bundle, raw, display_id=None: out.append(bundle)))
     monkeypatch.setattr(module, "_ON_SHOW", {})
     return shell, out
 

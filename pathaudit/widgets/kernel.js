@@ -3,7 +3,7 @@
 const GONE = "The kernel behind this timeline has ended. All that is shown can still be read; run the cell again to try changes.";
 const SAVED = "Shown as it was saved, with no kernel behind it. Run the cell to try changes.";
 const SILENT = "The kernel has not answered yet: it is busy, or its connection is lost. What is shown can still be read.";
-const PATIENCE = 4000;      // ms
+const SILENCE = 4000;      // ms without a sign of life until that is told
 const LIFE = ["change:block", "change:status", "change:trial", "change:notes"];
 
 // ask(message, buffers) is null where nobody listens; it gives false where the kernel has ended.
@@ -40,7 +40,7 @@ export function kernelLink(model, el, say) {
 
   function ask(message, buffers) {
     clearTimeout(timer);
-    timer = setTimeout(() => { silent = true; say(SILENT); }, PATIENCE);
+    timer = setTimeout(() => { silent = true; say(SILENT); }, SILENCE);
     return reach(() => model.send(message, { iopub: { status: heard } }, buffers));
   }
 

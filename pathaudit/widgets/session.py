@@ -1,15 +1,13 @@
-"""The audit on show and what a person tries on it: edits with undo, variants that are kept, one worker. Knows no widget library.
+"""The audit on show and what is tried on it: edits with undo, variants that are kept, one worker. Knows no widget library.
 
 Nothing here changes an audit: an edit of the speed makes another one, in the worker's thread, and the newest change wins.
 """
 
 from dataclasses import dataclass
 
-import numpy as np
-
 from ..by_hand import by_hand
 from ..changes import outline
-from ..edits import Edits, Lock, Slow
+from ..edits import Edits
 from .history import History
 from .worker import Worker
 
@@ -56,26 +54,6 @@ class Session:
         self._worker = Worker(self._listener.told)
         self._history = History(Edits())
 
-    # ---- trying: stretches in s, as the path's own clock has them. Each waits for its audit.
-
-    def slow(self, from_s, to_s, factor):
-        """Run the stretch at `factor` (0 to 1) of the programmed speed."""
-        if not 0.0 < factor <= 1.0:
-            raise ValueError(f"factor is {factor!r}, expected a fraction of the programmed speed above 0 and at most 1")
-        self.change(self.edits.plus(Slow(*self._samples(from_s, to_s), float(factor)))).result()
-
-    def lock(self, from_s, to_s):
-        """Keep the stretch as programmed, whatever is asked for beside it."""
-        self.change(self.edits.plus(Lock(*self._samples(from_s, to_s)))).result()
-
-    def free(self, from_s, to_s):
-        """Take back every edit on the stretch."""
-        self.change(self.edits.freed(*self._samples(from_s, to_s))).result()
-
-    def accept(self, from_s=-np.inf, to_s=np.inf):
-        """Take over the suggested retiming, on a stretch or as a whole."""
-        self.change(self.edits.accept(*self._samples(from_s, to_s), self.given.suggestion.style)).result()
-
     def keep(self, name):
         """Keep what is on show as a variant, in place of one of the same name."""
         name = " ".join(str(name).split())
@@ -83,14 +61,6 @@ class Session:
             raise ValueError(f"the name is {name!r}, expected one of your own for the variant")
         self.variants[name] = Variant(name, self.shown.edits, self.shown.retiming, self.shown.audit)
         self._listener.changed()
-
-    def compared(self):
-        """pandas.DataFrame, one row a variant, the path as programmed first."""
-        import pandas as pd
-
-        return pd.DataFrame([{"variant": name or "on trial", "shown": shown, **numbers} for name, shown, numbers in self.outlines()]).set_index("variant")
-
-    # ---- what the instrument asks for
 
     @property
     def edits(self):
@@ -102,26 +72,31 @@ class Session:
         """Whether there is something to undo, and to redo."""
         return self._history.can_undo, self._history.can_redo
 
+    @property
+    def busy(self):
+        """Whether another audit is being made."""
+        return self.edits != self.shown.edits
+
     def change(self, edits, gesture=None):
         """Make and show the audit of other edits; gives a Future. Equal gestures are one step of the history."""
         self._history.push(edits, gesture)
         return self._start()
 
-    def undo(self):
-        self._history.undo()
+    def walk(self, by):
+        """One step of the history back (-1) or forth (1); gives a Future."""
+        self._history.undo() if by < 0 else self._history.redo()
         return self._start()
 
-    def redo(self):
-        self._history.redo()
-        return self._start()
-
-    def show(self, name):
-        """Show a variant again, as one more step of the history."""
-        return self.change(Edits() if name == PROGRAMMED else self.variants[name].edits)
+    def edits_of(self, name):
+        """The Edits of a variant, or those of the path as programmed, which are none."""
+        if name != PROGRAMMED and name not in self.variants:
+            raise ValueError(f"there is no variant {name!r}, expected one of {', '.join([PROGRAMMED, *self.variants])}")
+        return Edits() if name == PROGRAMMED else self.variants[name].edits
 
     def drop(self, name):
-        """Forget a variant."""
-        del self.variants[name]
+        """Forget a variant; what is on show stays."""
+        self.edits_of(name)
+        self.variants.pop(name, None)
         self._listener.changed()
 
     def cancel(self):
@@ -133,17 +108,12 @@ class Session:
     def close(self):
         self._worker.close()
 
-    # ---- inside
-
-    def _samples(self, from_s, to_s):
-        """First and last sample within a stretch given in s."""
-        if not from_s <= to_s:
-            raise ValueError(f"the stretch is from {from_s!r} to {to_s!r} s, expected its start first")
-        time = self.given.time
-        first, last = (int(k) for k in (np.searchsorted(time, from_s - 1e-9), np.searchsorted(time, to_s + 1e-9, side="right") - 1))
-        if first > last:
-            raise ValueError(f"no sample lies between {from_s:g} and {to_s:g} s, expected a stretch of the path from {time[0]:g} to {time[-1]:g} s")
-        return first, last
+    def outlines(self):
+        """(name, whether it is on show, what it is compared by) of every variant, the path as programmed first; one without a name is on trial."""
+        rows = self._all()
+        if all(v.edits != self.shown.edits for v in rows):
+            rows = *rows, self.shown
+        return [(v.name, v.edits == self.shown.edits, variant_outline(v)) for v in rows]
 
     def _start(self):
         edits = self._history.now
@@ -171,13 +141,6 @@ class Session:
 
     def _all(self):
         return Variant(PROGRAMMED, Edits(), None, self.given), *self.variants.values()
-
-    def outlines(self):
-        """(name, whether it is on show, what it is compared by) of every variant, the path as programmed first; one without a name is on trial."""
-        rows = self._all()
-        if all(v.edits != self.shown.edits for v in rows):
-            rows = *rows, self.shown
-        return [(v.name, v.edits == self.shown.edits, variant_outline(v)) for v in rows]
 
 
 def variant_outline(variant):

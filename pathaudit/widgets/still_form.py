@@ -23,31 +23,45 @@ def still_form(audit, shown=None, applied=None):
 
 
 class StillForm:
-    """The displayed outputs. refresh() draws them again a moment after the last change, in a thread of its own."""
+    """The displayed outputs. refresh() asks for them to be drawn again: a moment after the last change, or at the end of the cell that is running."""
 
-    def __init__(self):
-        self._handles, self._timer, self._lock = [], None, Lock()
+    def __init__(self, shell):
+        self._shell, self._lock = shell, Lock()
+        self._handles, self._timer, self._pending = [], None, None
 
     def display(self, bundles):
         from IPython.display import display
 
         self._handles = [display(bundle, raw=True, display_id=True) for bundle in bundles]
+        self._shell.events.register("post_run_cell", self._cell_has_run)
 
     def refresh(self, session):
         with self._lock:
-            if self._timer:
-                self._timer.cancel()
-            self._timer = Timer(QUIET, self._draw, (session,))
+            self._drop_timer()
+            self._pending, self._timer = session, Timer(QUIET, self._draw)
             self._timer.daemon = True
             self._timer.start()
 
     def close(self):
         with self._lock:
-            if self._timer:
-                self._timer.cancel()
-            self._handles = []
+            self._drop_timer()
+            if self._handles:
+                self._shell.events.unregister("post_run_cell", self._cell_has_run)
+            self._handles, self._pending = [], None
 
-    def _draw(self, session):
+    def _drop_timer(self):
+        if self._timer:
+            self._timer.cancel()
+
+    def _cell_has_run(self, result):
+        """So that a notebook that is run from top to bottom holds the last state, however fast it runs."""
+        self._draw()
+
+    def _draw(self):
+        with self._lock:
+            session, self._pending, handles = self._pending, None, list(self._handles)
+        if session is None:
+            return
         bundles = still_form(session.shown.audit, applied=session.shown.retiming)
-        for handle, bundle in zip(self._handles, bundles):
+        for handle, bundle in zip(handles, bundles):
             handle.update(bundle, raw=True)

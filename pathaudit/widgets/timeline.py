@@ -11,6 +11,7 @@ from ..report.scene import scene
 from ..report.script import shared_module, style_sheet
 from ..report.tables import retimed_csv
 from ..report.text import summary
+from .desk import Desk
 from .session import Session
 from .still_form import StillForm, still_form
 from .trial_facts import trial_facts
@@ -91,8 +92,8 @@ class Timeline(anywidget.AnyWidget):
             "free": change(lambda edits, first, last, c: edits.freed(first, last)),
             "accept": change(lambda edits, first, last, c: edits.accept(first, last, session.given.suggestion.style)),
             "reject": change(lambda edits, first, last, c: edits.reject(first, last)),
-            "undo": lambda c: session.undo(), "redo": lambda c: session.redo(), "cancel": lambda c: session.cancel(),
-            "show": lambda c: session.show(c["name"]), "keep": lambda c: session.keep(c["name"]), "drop": lambda c: session.drop(c["name"]),
+            "undo": lambda c: session.walk(-1), "redo": lambda c: session.walk(1), "cancel": lambda c: session.cancel(),
+            "show": lambda c: session.change(session.edits_of(c["name"])), "keep": lambda c: session.keep(c["name"]), "drop": lambda c: session.drop(c["name"]),
             "export": lambda c: self._export(c["name"]),
         }  # fmt: skip
 
@@ -127,7 +128,7 @@ def _state(shown):
 def show(audit):
     """Display an audit in the running notebook cell: live timeline, picture and tables; plain text where there is no notebook.
 
-    Gives the Session, on which the same can be tried from Python as with the mouse.
+    Gives the Desk, on which the same can be tried from Python as with the mouse.
     """
     from IPython import get_ipython
     from IPython.display import display
@@ -135,15 +136,15 @@ def show(audit):
     shell = get_ipython()
     if shell is None or not hasattr(shell, "kernel"):
         display({"text/plain": summary(audit)}, raw=True)
-        return Session(audit)
+        return Desk(Session(audit))
     shown = scene(audit)
-    still = StillForm()
+    still = StillForm(shell)
     timeline = Timeline(audit, shown, still)
     _replace(shell, timeline)
     display({"application/vnd.jupyter.widget-view+json": {"version_major": 2, "version_minor": 0, "model_id": timeline.model_id},
              "text/plain": _line(audit)}, raw=True)
     still.display(still_form(audit, shown))
-    return timeline.session
+    return Desk(timeline.session)
 
 
 def _line(audit):

@@ -117,7 +117,7 @@ export function trialPanel(ui) {
   }
 
   function show(value) {
-    done();
+    if (!value.busy) done();
     trial = value;
     undo.disabled = !trial.undo;
     redo.disabled = !trial.redo;

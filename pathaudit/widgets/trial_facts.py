@@ -12,7 +12,7 @@ def trial_facts(session):
     undo, redo = session.steps
     retiming = session.shown.retiming
     return plain({
-        "edits": [_edit(item) for item in session.edits.items], "offers": _offers(session), "undo": undo, "redo": redo,
+        "edits": [_edit(item) for item in session.edits.items], "offers": _offers(session), "undo": undo, "redo": redo, "busy": session.busy,
         "why": "" if retiming is None else retiming.why,
         "changes": [] if retiming is None else [{"what": c.what, "words": c.words} for c in changes(session.given, session.shown.audit)],
         "variants": [{"name": name, "shown": shown, **numbers} for name, shown, numbers in session.outlines()],

@@ -21,7 +21,7 @@ class Worker:
         self._pool = None
 
     def start(self, make, done, failed):
-        """Ask for a piece of work; gives a Future that ends with it."""
+        """Ask for a piece of work; gives a Future that ends with it, with the sentence where it failed."""
         with self._lock:
             self._generation += 1
             generation = self._generation
@@ -52,12 +52,13 @@ class Worker:
             told("")
             result = make(told)
         except Superseded:
-            return
+            return None
         except Exception as error:      # told to the user by `failed`: nothing above this thread would ever see it
             sentence = f"{type(error).__name__}: {error}"
             self._if_newest(generation, lambda: failed(sentence))
-            return
+            return sentence
         self._if_newest(generation, lambda: done(result))
+        return None
 
     def _if_newest(self, generation, act):
         with self._lock:

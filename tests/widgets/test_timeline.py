@@ -4,6 +4,7 @@ import base64
 import html
 import json
 import sys
+import time
 from types import SimpleNamespace
 
 import nbconvert
@@ -180,15 +181,41 @@ def test_an_export_of_a_notebook_can_be_read(audit, sanitize):
     assert not sanitize or "model not found" not in page and "max-width: 100%; }" not in page[page.index("Cautions"):]
 
 
+class Events(list):
+    """What is to be called when a cell has run."""
+
+    def register(self, event, act):
+        assert event == "post_run_cell"
+        self.append(act)
+
+    def unregister(self, event, act):
+        self.remove(act)
+
+
+class Handle:
+    """A displayed output that can be drawn again."""
+
+    def __init__(self, bundles):
+        self.bundles = bundles
+
+    def update(self, bundle, raw):
+        self.bundles.append(bundle)
+
+
 @pytest.fixture
 def notebook(monkeypatch):
-    """A notebook's shell, as far as show() looks at it; gathers what is displayed."""
+    """A notebook's shell, as far as show() looks at it; gathers what is displayed, and what is displayed anew."""
     out = []
-    shell = SimpleNamespace(kernel=object(), execution=1)
+
+    def display(bundle, raw, display_id=None):
+        out.append(bundle)
+        return Handle(out) if display_id else None
+
+    shell = SimpleNamespace(kernel=object(), execution=1, events=Events())
     shell.get_parent = lambda: {"metadata": {"cellId": "cell"}, "header": {"msg_id": shell.execution}}
     fake = SimpleNamespace(get_ipython=lambda: shell)
     monkeypatch.setitem(sys.modules, "IPython", fake)
-    monkeypatch.setitem(sys.modules, "IPython.display", SimpleNamespace(display=lambda bundle, raw, display_id=None: out.append(bundle)))
+    monkeypatch.setitem(sys.modules, "IPython.display", SimpleNamespace(display=display))
     monkeypatch.setattr(module, "_ON_SHOW", {})
     return shell, out
 
@@ -198,6 +225,28 @@ def test_three_outputs_in_a_notebook(notebook, audit):
     module.show(audit)
     assert [next(iter(bundle)) for bundle in out] == ["application/vnd.jupyter.widget-view+json", "image/svg+xml", "text/html"]
     assert out[0]["text/plain"] == "Path audit of Bracket cell <7>: fail, 4 findings"
+
+
+def test_the_still_form_follows_what_is_tried(notebook, real, monkeypatch):
+    shell, out = notebook
+    desk = module.show(real)
+    assert len(out) == 3
+    desk.accept()
+    shell.events[0](None)      # the cell has run
+    assert [next(iter(bundle)) for bundle in out[3:]] == ["image/svg+xml", "text/html"]
+    assert "Slows" in out[4]["text/html"] or "One even speed" in out[4]["text/html"]
+    shell.events[0](None)
+    assert len(out) == 5      # nothing has changed since
+    monkeypatch.setattr("pathaudit.widgets.still_form.QUIET", 0.05)
+    desk.undo()
+    for _ in range(100):
+        if len(out) == 7:
+            break
+        time.sleep(0.05)
+    assert len(out) == 7 and out[6]["text/html"] == out[2]["text/html"]
+    (_, (timeline,)), = module._ON_SHOW.values()
+    timeline.close()
+    assert shell.events == []
 
 
 def test_plain_text_in_a_terminal(notebook, audit):

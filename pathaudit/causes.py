@@ -82,8 +82,16 @@ def _between(a, b, fold=True):
 
 def lost_words(rates: Rates, k: int) -> str:
     """What the tool can hardly do any more at sample k, in words and part axes."""
-    left, _, _ = np.linalg.svd(task_jacobians(rates.motion, [k]), full_matrices=False)
-    direction = in_part_axes(rates.motion, [k], left[:, :, -1])[0]
+    return lost_words_along(rates, [k])[0]
+
+
+def lost_words_along(rates: Rates, samples) -> list:
+    """`lost_words` at each of the samples (M,)."""
+    left, _, _ = np.linalg.svd(task_jacobians(rates.motion, samples), full_matrices=False)
+    return [_lost(direction) for direction in in_part_axes(rates.motion, samples, left[:, :, -1])]
+
+
+def _lost(direction):
     slides, turns = direction[:3], direction[3:]
     if np.linalg.norm(slides) >= np.linalg.norm(turns):
         return f"move along {_axis_words(slides)} of the part"

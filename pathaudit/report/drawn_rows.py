@@ -1,33 +1,65 @@
 """The rows of the still picture: the same arrangement as the live timeline's, on a surface (surfaces.py)."""
 
+from dataclasses import dataclass
+
 import numpy as np
 
 from .rows import nice_step
 from .surfaces import FAINT, GROUND, INK, LANE, LINE, QUIET, SEVERITY, SOFT
 
-HEAD, GAP, BLOCK, AXIS, LEFT, RIGHT = 17, 7, 17, 26, 70, 10
+HEAD, GAP, BLOCK, AXIS, LEFT, RIGHT, TITLE, PIN = 17, 7, 17, 26, 84, 10, 15, 18
+
+
+@dataclass(frozen=True)
+class Lane:
+    """A row in its place: its number, what it is (rows.py), its top in px, what it is called, and the other rows that it stands for."""
+
+    index: int
+    row: dict
+    y: float
+    title: str
+    away: tuple = ()
 
 
 class Places:
-    """Where rows, blocks and axis stand in a picture of the given width; `top` leaves room above."""
+    """Where pins, blocks, lanes and axis stand in a picture of the given width; `top` leaves room above. Groups are as they are shown at first.
 
-    def __init__(self, facts, width, top=0):
+    notes: placed notes (notes/placing.py), each with its flag on the strip.
+    """
+
+    def __init__(self, facts, width, top=0, notes=()):
         self.left, self.plot = LEFT, width - LEFT - RIGHT
         self.duration, self.offset = facts["duration_s"] or 1.0, facts["offset_s"]
-        self.strip = top + 14
+        self.notes, self.pins = top + 10, notes
+        self.strip = top + 14 + (PIN if notes else 0)
         self.blocks, levels = self._stack(facts["findings"])
         y = self.strip + (BLOCK + 2) * max(1, levels) + 19
         self.process = y - 10
-        self.rows = []
-        for row in facts["rows"]:
-            y += HEAD + GAP if row["head"] else 0
-            self.rows.append((row, y))
-            y += row["height"] + 2
+        self.lanes, self.heads, self.titles = [], [], []
+        y = self._arrange(facts, y)
         self.axis = y + 2
         self.bottom = y + AXIS
 
     def x(self, time):
         return self.left + self.plot * np.asarray(time) / self.duration
+
+    def _arrange(self, facts, y):
+        said = ""
+        for group in facts["groups"]:
+            if group["head"] != said:
+                y += HEAD + GAP
+                self.heads.append((group["head"], y - HEAD / 2 - 1))
+            said, lanes = group["head"], group["lanes"]
+            opened = len(lanes) > 1 and not group["folded"]
+            if opened:
+                self.titles.append((group["title"], y + TITLE / 2))
+                y += TITLE
+            for index in lanes if opened else (group["main"],):
+                row = facts["rows"][index]
+                self.lanes.append(Lane(index, row, y, row["title"] if opened else group["title"], () if opened else tuple(lanes)))
+                y += row["height"] + 2
+            y += 3 if opened else 0
+        return y
 
     def _stack(self, findings):
         ends, blocks = [], []
@@ -52,15 +84,28 @@ def height_of(row, y, value):
 
 def draw_rows(surface, places, facts, arrays):
     _draw_strip(surface, places, facts)
-    for index, (row, y) in enumerate(places.rows):
-        _draw_row(surface, places, facts, arrays, index, row, y)
-    top, bottom = places.rows[0][1], places.axis - 4
+    _draw_pins(surface, places, arrays)
+    for words, y in places.heads:
+        surface.text(places.left, y, words)
+    for words, y in places.titles:
+        surface.text(10, y, shortened(surface, words, places.left + places.plot, 12), INK, size=12, bold=True)
+    for lane in places.lanes:
+        draw_lane(surface, places, facts, arrays, lane)
+    top, bottom = places.lanes[0].y, places.axis - 4
     for start, end in facts["gaps"]:
         x, width = float(places.x(start)), max(2.0, float(places.x(end) - places.x(start)))
         surface.hatch(x, top, width, bottom - top, "gap", SOFT)
         if width > 70:
             _label(surface, x + width / 2, top + 12, "not reached")
-    _draw_axis(surface, places)
+    draw_axis(surface, places)
+
+
+def shortened(surface, words, room, size=11):
+    """The words as far as there is room for them."""
+    end = len(words)
+    while end > 1 and surface.text_width(words[:end] + ".." * (end < len(words)), size) > room:
+        end -= 1
+    return words if end == len(words) else words[:end] + ".."
 
 
 def _label(surface, x, y, words, colour=INK):
@@ -88,10 +133,23 @@ def _draw_strip(surface, places, facts):
             _label(surface, x + width / 2, places.process, "air", SOFT)
 
 
-def _draw_row(surface, places, facts, arrays, index, row, y):
-    left, plot, height = places.left, places.plot, row["height"]
-    if row["head"]:
-        surface.text(left, y - HEAD / 2 - 1, row["head"])
+def _draw_pins(surface, places, arrays):
+    """A small flag for each note: filled while it is open, hollow when settled, with a question mark where its place has changed."""
+    if not places.pins:
+        return
+    surface.text(places.left - 8, places.notes, "notes", align="right")
+    feet = places.x(np.interp([note.sample for note in places.pins], arrays["sample"], arrays["time_s"]))
+    room, end = min(20.0, places.plot / len(feet)), -np.inf
+    for k in np.argsort(feet, kind="stable").tolist():
+        note, foot, most = places.pins[k], float(feet[k]), places.left + places.plot - 16
+        x = end = max(end + room, min(foot, most))
+        surface.line([(x, places.notes - 7), (x, places.notes + 6), (foot, places.strip - 1)], SOFT)
+        surface.rect(x, places.notes - 7, 16, 13, GROUND if note.note.settled else INK, INK)
+        surface.text(x + 8, places.notes, f"{k + 1}{'?' if note.stale else ''}", INK if note.note.settled else GROUND, "centre", 10)
+
+
+def draw_lane(surface, places, facts, arrays, lane):
+    left, plot, height, row, y = places.left, places.plot, lane.row["height"], lane.row, lane.y
     surface.rect(left, y, plot, height, fill=LANE)
     for start, end in facts["air"]:
         surface.rect(float(places.x(start)), y, float(places.x(end) - places.x(start)), height, fill=GROUND)
@@ -100,38 +158,47 @@ def _draw_row(surface, places, facts, arrays, index, row, y):
         for value, words in row["ticks"]:
             surface.text(left - 8, float(np.clip(height_of(row, y, value), y + 5, y + height - 5)), words, align="right")
     else:
-        surface.text(left - 8, y + height / 2, row["title"], INK, "right")
+        surface.text(left - 8, y + height / 2, shortened(surface, lane.title, left - 12), INK, "right")
     for finding in facts["findings"]:
-        if finding["row"] == index:
-            x = float(places.x(finding["from_s"]))
+        if finding["row"] == lane.index or finding["row"] in lane.away:
+            x, foot = float(places.x(finding["from_s"])), finding["row"] != lane.index
             width = max(2.0, float(places.x(finding["to_s"])) - x)
-            surface.hatch(x, y, width, height, finding["severity"], SEVERITY[finding["severity"]], 0.4)
-    for value, severity in row["bounds"]:
+            colour = SEVERITY[finding["severity"]]
+            surface.hatch(x, y + height - 4 if foot else y, width, 4 if foot else height, finding["severity"], colour, 1.0 if foot else 0.4)
+    for value, severity in () if row["word"] else row["bounds"]:
         at = float(height_of(row, y, value))
         if y < at < y + height:
             surface.line([(left, at), (left + plot, at)], QUIET, 1, (1, 3) if severity == "warn" else ())
+    if row["word"]:
+        surface.text(left + 6, y + height / 2, row["word"])
     _draw_lines(surface, places, arrays, row, y)
 
 
 def _draw_lines(surface, places, arrays, row, y):
     time = arrays["time_s"].astype(float)
     values = [arrays[name].reshape(len(time), -1)[:, column].astype(float) for name, column, _ in row["lines"]]
-    if len(values) == 2:
-        ceiling, speed = (np.minimum(v, row["high"]) for v in values)
-        for t, _ in beyond(time, speed - ceiling, 0.0, "above"):
-            edges = [np.column_stack([places.x(t), height_of(row, y, np.interp(t, time, v))]) for v in (speed, ceiling)]
-            surface.area(np.vstack([edges[0], edges[1][::-1]]), "fail", SEVERITY["fail"])
+    if row["lines"][0][2] == "ceiling":
+        _draw_shortage(surface, places, row, y, time, *(np.minimum(v, row["high"]) for v in (values[0], values[-1])))
     for value, (_, _, style) in zip(values, row["lines"]):
-        if style == "ceiling":
-            for t, v in pieces(time, value <= row["high"], value):
-                surface.line(thinned(places.x(t), height_of(row, y, v)), SOFT, 1.2, (6, 3))
+        shown = np.clip(value, row["low"], row["high"])
+        if style != "main":
+            colour, width, dash = (SOFT, 1.2, (6, 3)) if style == "ceiling" else (INK, 1.1, (1.5, 2.5))
+            for t, v in pieces(time, value <= row["high"], shown):
+                surface.line(thinned(places.x(t), height_of(row, y, v)), colour, width, dash)
             continue
-        shown = np.minimum(value, row["high"])
         for t, v in pieces(time, np.isfinite(shown), shown):
             surface.line(thinned(places.x(t), height_of(row, y, v)), LINE, 1.4)
         for bound, severity in row["bounds"]:
-            for t, v in beyond(time, shown, bound, row["bad"]):
+            bad = row["bad"] if row["bad"] != "outside" else "above" if bound > 50 else "below"
+            for t, v in beyond(time, shown, bound, bad):
                 surface.line(thinned(places.x(t), height_of(row, y, v)), SEVERITY[severity], 2.4 if severity == "fail" else 1.8)
+
+
+def _draw_shortage(surface, places, row, y, time, ceiling, speed):
+    """Where the tool speed lies above the largest possible."""
+    for t, _ in beyond(time, speed - ceiling, 0.0, "above"):
+        edges = [np.column_stack([places.x(t), height_of(row, y, np.interp(t, time, v))]) for v in (speed, ceiling)]
+        surface.area(np.vstack([edges[0], edges[1][::-1]]), "fail", SEVERITY["fail"])
 
 
 def pieces(time, mask, *values):
@@ -173,7 +240,7 @@ def thinned(x, y, tolerance=0.3):
     return points[keep]
 
 
-def _draw_axis(surface, places):
+def draw_axis(surface, places):
     step = nice_step(places.duration, places.plot / 80)
     digits = max(0, -int(np.floor(np.log10(step) + 1e-9)))
     first, last = places.offset / step, (places.offset + places.duration) / step

@@ -1,13 +1,20 @@
-"""The rows of the timeline: what each shows, over which range, and the bounds that it is judged by. Shared by every picture of an audit."""
+"""The rows of the timeline: what each shows, over which range, and the bounds that it is judged by. Shared by every picture of an audit.
 
-from dataclasses import asdict, dataclass
+A row is one lane. A joint has three, which are folded into the one of its speed or shown one below the other: a Group says so.
+"""
+
+from dataclasses import asdict, dataclass, replace
 
 import numpy as np
 
 
 @dataclass(frozen=True)
 class Row:
-    """One row. `lines` are (array name, column, style), style "main" or "ceiling"; a bound is (value, severity)."""
+    """One lane. `lines` are (array name, column, style), style "main", "ceiling" or "before"; the main line comes last.
+
+    A bound is (value, severity); bad: the side of the bounds that is flagged, "above", "below" or "outside" (beyond the nearer end).
+    ticks: (value, text) beside the row; word: what is said in a lane that has nothing to draw.
+    """
 
     title: str
     unit: str
@@ -19,35 +26,100 @@ class Row:
     bad: str = "above"
     log: bool = False
     digits: int = 0
-    head: str = ""
-    ticks: tuple = ()        # (value, text) beside the row, for rows that carry a scale
+    ticks: tuple = ()
+    word: str = ""
 
     def as_dict(self):
         return asdict(self)
 
 
-def rows_of(joint_names, thresholds, arrays, applied=False):
-    """One row a joint, then sigma_min, tool speed and factor. arrays: what the scene draws, by name; applied: the factor is in force already."""
-    return (*_joint_rows(joint_names, thresholds, arrays["share_percent"]), _sigma_row(thresholds, arrays["sigma_min"]),
-            _speed_row(thresholds, arrays["speed_mm_s"], arrays["process"] > 0), _factor_row(applied))
+@dataclass(frozen=True)
+class Group:
+    """Rows that belong together, by number: `lanes` from top to bottom, `main` the one that is left when the group is folded.
+
+    head: said above the group, once above neighbours that say the same; folded: how it is shown at first.
+    """
+
+    title: str
+    lanes: tuple
+    main: int
+    head: str
+    folded: bool = False
+
+    def as_dict(self):
+        return asdict(self)
+
+
+def rows_of(arm, thresholds, arrays, applied=False):
+    """The speed lane of each joint, then sigma_min, tool speed and factor, then the joints' lanes of travel and of acceleration.
+
+    arrays: what the scene draws, by name; applied: the factor is in force already.
+    """
+    return (*_speed_lanes(arm, thresholds, arrays), _sigma_row(thresholds, arrays["sigma_min"]), _speed_row(thresholds, arrays),
+            _factor_row(), *_travel_lanes(arm, thresholds, arrays["travel_percent"]), *_acceleration_lanes(arm, thresholds, arrays))
+
+
+def groups_of(arm, thresholds, arrays, findings, applied=False):
+    """The groups of `rows_of`. A joint is unfolded where one of the findings lies in a lane that folding would hide."""
+    names, n = arm.joint_names, arm.n
+    marked = {row_index(finding, names) for finding in findings}
+    warn, fail = 100 * thresholds.speed_share_warn, 100 * thresholds.speed_share_fail
+    head = f"Joints: percent of speed limit (warn {warn:g}, limit {fail:g})"
+    joints = tuple(Group(name, (n + 3 + j, j, 2 * n + 3 + j), j, head, not marked & {n + 3 + j, 2 * n + 3 + j}) for j, name in enumerate(names))
+    dotted = "as programmed" if "before_speed_mm_s" in arrays else "as suggested" if "suggested_speed_mm_s" in arrays else ""
+    speed = "Tool speed, mm/s; dashed: most possible" + (f"; dotted: {dotted}" if dotted else "")
+    factor = f"{'Retiming as shown' if applied else 'Suggested retiming'}, percent of programmed speed"
+    return (*joints, Group("sigma_min", (n,), n, "Nearness to singular: sigma_min, log scale"), Group("tool speed", (n + 1,), n + 1, speed),
+            Group("factor", (n + 2,), n + 2, factor))
 
 
 def row_index(finding, joint_names):
-    """The row that a finding belongs to, or -1 where it concerns the whole path."""
-    if finding.kind == "joint speed" and finding.joint in joint_names:
-        return joint_names.index(finding.joint)
-    return {"near-singular": len(joint_names), "tool speed": len(joint_names) + 1}.get(finding.kind, -1)
+    """The row of `rows_of` that a finding belongs to, or -1 where it concerns the whole path."""
+    n = len(joint_names)
+    if finding.joint in joint_names:
+        first = {"joint speed": 0, "joint travel": n + 3, "posture jump": n + 3, "joint acceleration": 2 * n + 3}.get(finding.kind)
+        return -1 if first is None else first + joint_names.index(finding.joint)
+    return {"near-singular": n, "tool speed": n + 1}.get(finding.kind, -1)
 
 
-def _joint_rows(names, thresholds, share):
-    warn, fail = 100 * thresholds.speed_share_warn, 100 * thresholds.speed_share_fail
-    limit = fail or 100.0      # a bound may be 0: everything is beyond it, but the row still needs a scale
-    high = np.clip(1.08 * _most(share, 0.0), 1.25 * limit, 2.0 * limit)
-    head = f"Joint speed, percent of its limit (warn {warn:g}, limit {fail:g})"
-    bounds = ((warn, "warn"), (fail, "fail"))
-    height = 28 if len(names) <= 7 else 20
-    return tuple(Row(name, "%", (("share_percent", j, "main"),), 0.0, float(high), height, bounds, head=head if j == 0 else "")
-                 for j, name in enumerate(names))
+def _speed_lanes(arm, thresholds, arrays):
+    height = 36 if arm.n <= 3 else 28 if arm.n <= 7 else 20 if arm.n <= 9 else 16
+    lane = _share_lane("speed", "share_percent", arrays, thresholds.speed_share_warn, thresholds.speed_share_fail)
+    return tuple(replace(lane, lines=_of_joint(lane, j), height=height) for j in range(arm.n))
+
+
+def _acceleration_lanes(arm, thresholds, arrays):
+    lane = _share_lane("accel.", "acceleration_percent", arrays, thresholds.acceleration_share_warn, thresholds.acceleration_share_fail)
+    return tuple(replace(lane, lines=_of_joint(lane, j), word="" if known else "no acceleration limit is known")
+                 for j, known in enumerate(np.isfinite(arm.acceleration)))
+
+
+def _share_lane(title, name, arrays, warn, fail):
+    limit = 100 * fail or 100.0      # a bound may be 0: everything is beyond it, but the row still needs a scale
+    names = [known for known in (f"before_{name}", name) if known in arrays]
+    high = np.clip(1.08 * max(_most(arrays[known], 0.0) for known in names), 1.25 * limit, 2.0 * limit)
+    lines = tuple((known, 0, "main" if known == name else "before") for known in names)
+    return Row(title, "%", lines, 0.0, float(high), 24, ((100 * warn, "warn"), (100 * fail, "fail")))
+
+
+def _of_joint(lane, j):
+    return tuple((name, j, style) for name, _, style in lane.lines)
+
+
+def _travel_lanes(arm, thresholds, travel):
+    """Place inside the travel: 0 and 100 are its ends. What lies past them is shown as far as 20 percent."""
+    room = np.asarray(arm.upper) - np.asarray(arm.lower)
+    kept = np.where(arm.prismatic, thresholds.travel_warn_mm / 1e3, np.radians(thresholds.travel_warn_deg))
+    for j in range(arm.n):
+        line = (("travel_percent", j, "main"),)
+        if not np.isfinite(room[j]):
+            yield Row("travel", "%", line, -4.0, 104.0, 24, word="turns without end")
+            continue
+        near = float(min(100 * kept[j] / room[j], 50.0)) if room[j] > 0 else 50.0
+        low = np.clip(1.08 * _least(travel[:, j], 0.0, floor=-np.inf), -20.0, -4.0)
+        high = np.clip(1.08 * _most(travel[:, j], 0.0) - 8.0, 104.0, 120.0)
+        yield Row("travel", "%", line, float(low), float(high), 24,
+                  ((near, "warn"), (100.0 - near, "warn"), (0.0, "fail"), (100.0, "fail")), "outside")
 
 
 def _sigma_row(thresholds, sigma):
@@ -56,28 +128,28 @@ def _sigma_row(thresholds, sigma):
     low = np.clip(_least(sigma, scale), scale / 30, scale / 2)
     high = max(1.3 * _most(sigma, warn), 2 * warn, 2 * scale)
     ticks = ((warn, f"warn {warn:g}"), (fail, f"fail {fail:g}"))
-    return Row("sigma_min", "", (("sigma_min", 0, "main"),), float(low), float(high), 64, ((warn, "warn"), (fail, "fail")), "below",
-               log=True, digits=3, head="Nearness to singular: sigma_min, log scale", ticks=ticks)
+    return Row("sigma_min", "", (("sigma_min", 0, "main"),), float(low), float(high), 56, ((warn, "warn"), (fail, "fail")), "below",
+               log=True, digits=3, ticks=ticks)
 
 
-def _speed_row(thresholds, speed, process):
+def _speed_row(thresholds, arrays):
     """Scaled to the process: air moves are many times faster and may leave the row at its top."""
-    ceiling = thresholds.tool_speed_mm_s
-    high = 1.6 * max(_most(speed[process] if process.any() else speed, 0.0), 1e-3)
+    ceiling, process = thresholds.tool_speed_mm_s, arrays["process"] > 0
+    others = [name for name in ("before_speed_mm_s", "suggested_speed_mm_s") if name in arrays]
+    speeds = [arrays[name] for name in (*others, "speed_mm_s")]
+    high = 1.6 * max(*(_most(speed[process] if process.any() else speed, 0.0) for speed in speeds), 1e-3)
     bounds = () if ceiling is None else ((float(ceiling), "fail"),)
     if ceiling is not None:
         high = max(high, 1.1 * ceiling)
     ticks = tuple((value, f"{value:g}") for value in np.arange(0.0, high, nice_step(high, 3)).tolist())
     if ceiling is not None:
         ticks = (0.0, "0"), (float(ceiling), f"limit {ceiling:g}")
-    return Row("tool speed", "mm/s", (("speed_limit_mm_s", 0, "ceiling"), ("speed_mm_s", 0, "main")), 0.0, float(high), 72, bounds,
-               digits=1, head="Tool speed, mm/s (dashed: the most the joints allow)", ticks=ticks)
+    lines = (("speed_limit_mm_s", 0, "ceiling"), *((name, 0, "before") for name in others), ("speed_mm_s", 0, "main"))
+    return Row("tool speed", "mm/s", lines, 0.0, float(high), 60, bounds, digits=1, ticks=ticks)
 
 
-def _factor_row(applied):
-    what = "Retiming as shown" if applied else "Suggested retiming"
-    return Row("factor", "%", (("factor_percent", 0, "main"),), 0.0, 110.0, 44,
-               head=f"{what}, percent of programmed speed", ticks=((0.0, "0"), (100.0, "100")))
+def _factor_row():
+    return Row("factor", "%", (("factor_percent", 0, "main"),), 0.0, 110.0, 44, ticks=((0.0, "0"), (100.0, "100")))
 
 
 def nice_step(span, wanted):
@@ -92,6 +164,6 @@ def _most(values, default):
     return float(values.max()) if values.size else default
 
 
-def _least(values, default):
-    values = values[np.isfinite(values) & (values > 0)]
+def _least(values, default, floor=0.0):
+    values = values[np.isfinite(values) & (values > floor)]
     return float(values.min()) if values.size else default

@@ -9,14 +9,18 @@ from pathlib import PurePath
 
 import numpy as np
 
-from .rows import row_index, rows_of
-from .skeleton import joint_points
+from ..causes import lost_words_along
+from .rows import groups_of, row_index, rows_of
+from .skeleton import arm_facts
 from .thinning import kept_samples, runs, spans
 
 MOST_SAMPLES = 5000
 _FINEST = 2000           # stretches nearer to each other than duration / this are drawn as one
 _LATEST_START = 1e5      # s; a start beyond is a clock's date, and times are written from the first sample on
-_EXACT = ("sample", "time_s")
+_EXACT = ("sample", "time_s", "programmed_s")
+_PEAKS = ("share_percent", "acceleration_percent", "sigma_min", "speed_mm_s", "speed_limit_mm_s", "factor_percent",
+          "before_share_percent", "before_acceleration_percent", "before_speed_mm_s")
+_PLACES = 40             # at most so many places of a near-singular stretch are asked what is lost there
 _ROUNDING = 10           # trailing mantissa bits dropped from everything else: 6e-5 of the value, far below a pixel
 
 
@@ -44,44 +48,63 @@ def _rounded(block, bits):
     return np.where(np.isfinite(block), (words + np.uint32(1 << (bits - 1))) & mask, words)
 
 
-def scene(audit, most=MOST_SAMPLES, *, applied=None):
+def scene(audit, most=MOST_SAMPLES, *, applied=None, before=None):
     """The Scene of an audit: at most `most` samples, with every peak and every finding's worst sample among them.
 
     applied: the Retiming that made this audit, where it is one of retimed times; its factor is shown instead of a suggestion's.
+    before: the Audit of the same poses as programmed, to be drawn with it; sample for sample the same pose.
     """
     again = applied or audit.suggestion
-    full = _full_arrays(audit, again.factor)
+    full = _full_arrays(audit, again, applied is not None)
+    if before is not None:
+        full |= _before_arrays(before)
     kept = _kept(audit, full, most)
     arrays = {"sample": kept.astype(float), **{name: values[kept] for name, values in full.items()}}
     cell = audit.cell
-    arrays["points_m"], arrays["axes"] = joint_points(cell.arm.chain, cell.placement, cell.tool, audit.joints[kept])
+    arrays["joints"] = audit.joints[kept]
     arrays["path_m"] = audit.path.position[kept] @ cell.part[:3, :3].T + cell.part[:3, 3]
     arrays = {name: np.ascontiguousarray(values, dtype=np.float32) for name, values in arrays.items()}
     return Scene(plain(_facts(audit, arrays, again, applied is not None)), arrays)
 
 
-def _full_arrays(audit, factor):
-    path, rates = audit.path, audit.rates
+def _full_arrays(audit, again, is_applied):
+    path, rates, arm = audit.path, audit.rates, audit.cell.arm
     severity = np.zeros(path.samples)
     for finding in audit.finding_list:
         stretch = slice(finding.first, finding.last + 1)
         severity[stretch] = np.maximum(severity[stretch], 2 if finding.severity == "fail" else 1)
+    factor, tool_speed = np.asarray(again.factor, dtype=float), 1e3 * rates.tool_speed
+    suggested = {} if is_applied or not again.feasible or factor.min() > 0.9995 else {"suggested_speed_mm_s": factor * tool_speed}
+    room = np.where(np.isfinite(arm.upper - arm.lower), arm.upper - arm.lower, np.nan)
     return {
         "time_s": audit.time - audit.time[0],
         "distance_mm": 1e3 * path.distance,
         "share_percent": 100 * rates.speed_share,
         "sigma_min": rates.sigma_min,
-        "speed_mm_s": 1e3 * rates.tool_speed,
+        "acceleration_percent": 100 * rates.acceleration_share,
+        "travel_percent": 100 * (audit.joints - arm.lower) / np.where(room > 0, room, np.nan),
+        "speed_mm_s": tool_speed,
+        **suggested,
         "speed_limit_mm_s": 1e3 * rates.tool_speed_limit,
         "reserve": rates.reserve,
-        "factor_percent": 100 * np.asarray(factor, dtype=float),
+        "factor_percent": 100 * factor,
         "severity": severity,
         "process": path.process.astype(float),
     }
 
 
+def _before_arrays(before):
+    rates = before.rates
+    return {
+        "programmed_s": before.time - before.time[0],
+        "before_share_percent": 100 * rates.speed_share,
+        "before_acceleration_percent": 100 * rates.acceleration_share,
+        "before_speed_mm_s": 1e3 * rates.tool_speed,
+    }
+
+
 def _kept(audit, full, most):
-    drawn = ("share_percent", "sigma_min", "speed_mm_s", "speed_limit_mm_s", "factor_percent")
+    drawn = [name for name in _PEAKS if name in full]
     series = np.column_stack([full[name] for name in drawn])
     findings = audit.finding_list
     always = [f.worst for f in findings] + [f.first for f in findings] + [f.last for f in findings]
@@ -98,10 +121,11 @@ def _facts(audit, arrays, again, is_applied):
         "name": cell.name, "file": PurePath(path.file).name, "verdict": audit.verdict,
         "samples": int(path.samples), "shown": len(arrays["sample"]), "offset_s": clock_offset(audit),
         "duration_s": float(path.duration), "length_mm": 1e3 * float(path.length), "joints": list(names),
-        "rows": [row.as_dict() for row in rows_of(names, cell.thresholds, arrays, is_applied)],
+        "rows": [row.as_dict() for row in rows_of(cell.arm, cell.thresholds, arrays)],
+        "groups": [group.as_dict() for group in groups_of(cell.arm, cell.thresholds, arrays, audit.finding_list, is_applied)],
         "findings": [_finding(k, f, audit, arrays, names) for k, f in enumerate(audit.finding_list, 1)],
         "air": spans(~path.process, time, gap).tolist(), "gaps": spans(~audit.motion.reached, time, gap).tolist(),
-        "retiming": _retiming(again, is_applied), "base": cell.placement.tolist(), "part": cell.part.tolist(),
+        "lost": _lost(audit, arrays), "retiming": _retiming(again, is_applied), "base": cell.placement.tolist(), "part": cell.part.tolist(), **arm_facts(cell),
     }
 
 
@@ -111,8 +135,25 @@ def _finding(number, finding, audit, arrays, names):
         "number": number, "kind": finding.kind, "severity": finding.severity, "joint": finding.joint or "",
         "from_s": float(finding.t_start - start), "to_s": float(finding.t_end - start), "worst_s": float(finding.worst_t - start),
         "from_mm": float(finding.from_mm), "to_mm": float(finding.to_mm), "worst": worst_text(finding), "why": finding.why,
+        "first": finding.first, "last": finding.last,
         "at": int(np.abs(arrays["sample"] - finding.worst).argmin()), "row": row_index(finding, names),
     }
+
+
+def _lost(audit, arrays):
+    """[first sample, last sample, words] of near-singular pieces: what the tool can hardly do there."""
+    sigma, sample = arrays["sigma_min"], arrays["sample"].astype(int)
+    found = []
+    for first, last in runs(sigma < audit.cell.thresholds.sigma_min_warn):
+        inside = sample[first:last + 1]
+        places = inside[:: -(-len(inside) // _PLACES)]
+        ends = np.r_[places[1:] - 1, inside[-1]]
+        for start, end, words in zip(places.tolist(), ends.tolist(), lost_words_along(audit.rates, places)):
+            if found and found[-1][2] == words and found[-1][1] + 1 == start:
+                found[-1][1] = end
+            else:
+                found.append([start, end, words])
+    return found
 
 
 def clock_offset(audit):

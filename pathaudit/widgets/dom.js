@@ -28,3 +28,34 @@ export function taken(event) {
   event.preventDefault();
   event.stopPropagation();
 }
+
+// A button that opens a box below itself, and the box. `fill` is called before it opens. Escape or a press elsewhere closes it; the focus
+// goes back to where it was.
+export function popover(words, title, inside, fill) {
+  let back = null;
+  const box = element("div", { class: "pa-box", role: "dialog", "aria-label": title, tabindex: "-1", "data-lm-suppress-shortcuts": "true" }, inside);
+  const set = (on) => {
+    box.hidden = !on;
+    opener.setAttribute("aria-expanded", on);
+  };
+  const open = () => {
+    back = document.activeElement;
+    fill();
+    set(true);
+    (box.querySelector("input, button") || box).focus();
+  };
+  const shut = () => {
+    set(false);
+    (back || opener).focus();
+  };
+  const opener = button(words, title, () => (box.hidden ? open() : shut()));
+  const node = element("span", { class: "pa-popover" }, opener, box);
+  node.addEventListener("keydown", (event) => {
+    if (event.key !== "Escape" || box.hidden) return;
+    shut();
+    taken(event);
+  });
+  node.addEventListener("focusout", (event) => node.contains(event.relatedTarget) || set(false));
+  set(false);
+  return { node, opener, box, open };
+}

@@ -3,7 +3,8 @@
 import { fixed, worstJoint } from "./data.js";
 import { button, element } from "./dom.js";
 
-const READOUT = [["time", "s"], ["distance", "mm"], ["tool speed", "mm/s"], ["busiest joint", "of limit"], ["reserve", "×"], ["sigma_min", ""]];
+const READOUT = [["time", "s"], ["distance", "mm"], ["tool speed", "mm/s"], ["as suggested", "mm/s"],
+  ["busiest joint, of limit", ""], ["reserve", "×"], ["sigma_min", ""]];
 
 export function headPanel(ui) {
   const node = element("div", { class: "pa-head" });
@@ -28,23 +29,30 @@ export function headPanel(ui) {
   return { node, show };
 }
 
-export function readoutPanel(...more) {
-  const values = READOUT.map(() => element("b")), here = element("b");
+export function readoutPanel() {
+  const names = READOUT.map(([name]) => element("span", {}, name)), values = READOUT.map(() => element("b"));
+  const here = element("b"), lost = element("b");
   const node = element("div", { class: "pa-read" },
-    ...READOUT.map(([name, unit], k) => element("div", {}, element("span", {}, name), values[k], element("span", { class: "pa-unit" }, unit))),
-    element("div", { class: "pa-where" }, element("span", {}, "at the cursor"), here), ...more);
+    ...READOUT.map(([, unit], k) => element("div", {}, names[k], values[k], element("span", { class: "pa-unit" }, unit))),
+    element("div", { class: "pa-where" }, element("span", {}, "at the cursor"), here),
+    element("div", { class: "pa-lost" }, element("span", {}, "lost direction"), lost));
+  const set = (one, words) => { if (one.textContent !== words) one.textContent = one.title = words; };
 
   // Gives the findings at kept sample i, and the place in words for those who listen.
   function show(facts, data, i) {
-    const time = data.time_s[0][i], worst = worstJoint(data, i), reserve = data.reserve[0][i];
-    const said = [fixed(facts.offset_s + time, 3), fixed(data.distance_mm[0][i], 1), fixed(data.speed_mm_s[0][i], 1),
+    const time = data.time_s[0][i], sample = data.sample[0][i], worst = worstJoint(data, i), reserve = data.reserve[0][i];
+    const other = data.before_speed_mm_s || data.suggested_speed_mm_s;
+    const said = [fixed(facts.offset_s + time, 3), fixed(data.distance_mm[0][i], 1), fixed(data.speed_mm_s[0][i], 1), other ? fixed(other[0][i], 1) : "–",
                   worst ? `${facts.joints[worst[0]]} ${worst[1].toFixed(0)} %` : "–",
                   reserve === Infinity ? "at rest" : reserve > 99 ? "> 99" : fixed(reserve, 2), fixed(data.sigma_min[0][i], 3)];
-    said.forEach((value, k) => { if (values[k].textContent !== value) values[k].textContent = value; });
+    set(names[3], data.before_speed_mm_s ? "as programmed" : "as suggested");
+    said.forEach((value, k) => set(values[k], value));
     const found = facts.findings.filter((f) => time >= f.from_s - 1e-6 && time <= f.to_s + 1e-6);
     const words = found.length ? found.map((f) => `${f.number} ${f.severity}: ${f.kind} ${f.joint}`.trim()).join(" · ") : "no finding";
-    if (here.textContent !== words) here.textContent = here.title = words;
-    return { found, words: `${said[0]} seconds, ${said[1]} millimetres, busiest joint ${said[3]}, ${words}` };
+    const gone = facts.lost.find(([from, to]) => sample >= from && sample <= to);
+    set(here, words);
+    set(lost, gone ? `can hardly ${gone[2]}` : "none");
+    return { found, words: `${said[0]} seconds, ${said[1]} millimetres, busiest joint ${said[4]}, ${words}${gone ? `, the tool can hardly ${gone[2]}` : ""}` };
   }
 
   return { node, show };

@@ -65,3 +65,12 @@ export function text(context, words, x, y, { colour, align = "left", size = 11, 
   context.fillStyle = colour;
   context.fillText(words, x, y);
 }
+
+// The words as far as there is room for them.
+export function shortened(context, words, room, { size = 11, family, weight = "" }) {
+  context.font = `${weight} ${size}px ${family}`;
+  if (context.measureText(words).width <= room) return words;
+  let end = words.length - 1;
+  while (end > 1 && context.measureText(`${words.slice(0, end)}…`).width > room) end -= 1;
+  return `${words.slice(0, end)}…`;
+}

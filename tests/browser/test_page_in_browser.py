@@ -94,8 +94,9 @@ def test_the_readout_says_what_the_audit_holds(opened, audit):
         page.keyboard.press("Shift+ArrowRight")
     i = cursor(page)
     worst = int(np.argmax(audit.rates.speed_share[i]))
-    assert readout(page)[:6] == [
-        f"{audit.time[i]:.3f}", f"{1e3 * audit.path.distance[i]:.1f}", f"{1e3 * audit.rates.tool_speed[i]:.1f}",
+    speed = 1e3 * audit.rates.tool_speed[i]
+    assert readout(page)[:7] == [
+        f"{audit.time[i]:.3f}", f"{1e3 * audit.path.distance[i]:.1f}", f"{speed:.1f}", f"{audit.suggestion.factor[i] * speed:.1f}",
         f"j{worst + 1} {100 * audit.rates.speed_share[i, worst]:.0f} %", f"{audit.rates.reserve[i]:.2f}", f"{audit.rates.sigma_min[i]:.3f}"]
     slider = page.locator(".pa-rows")
     assert slider.get_attribute("role") == "slider" and float(slider.get_attribute("aria-valuenow")) == pytest.approx(audit.time[i], abs=1e-3)
@@ -108,7 +109,7 @@ def test_an_unreached_place_has_no_numbers_and_no_arm(opened, audit):
     with_arm = pixels(page, ".pa-arm canvas:nth-child(2)")
     page.locator(".pa-findings tbody tr").nth(finding).click()
     values = readout(page)
-    assert values[3:6] == ["–", "–", "–"] and float(values[0]) > 0
+    assert values[4:7] == ["–", "–", "–"] and float(values[0]) > 0
     assert pixels(page, ".pa-arm canvas:nth-child(2)") != with_arm
 
 
@@ -162,14 +163,14 @@ def test_the_numbers_do_not_jump_while_scrubbing(opened, audit):
 
 
 def span(page):
-    """First and last time of the rows, from the mouse at both ends of them."""
-    ends = []
-    for x, y in ((5, 300), (2000, 300)):
-        page.evaluate("""([x, y]) => { const rows = document.querySelector('.pa-rows'), box = rows.getBoundingClientRect();
-            const at = { clientX: box.left + x, clientY: box.top + y, pointerId: 1, buttons: 1, bubbles: true };
-            rows.setPointerCapture = () => {}; rows.hasPointerCapture = () => true;
-            rows.dispatchEvent(new PointerEvent('pointerdown', at)); }""", [x, y])
+    """First and last place of the rows, as the readout says them, from a drag in the rows to both ends and beyond."""
+    box, ends = page.locator(".pa-rows").bounding_box(), []
+    for x in (box["x"] - 50, box["x"] + box["width"] + 50):
+        page.mouse.move(box["x"] + 0.5 * box["width"], box["y"] + 300)
+        page.mouse.down()
+        page.mouse.move(x, box["y"] + 300, steps=2)
         ends.append(float(readout(page)[0]))
+        page.mouse.up()
     return ends
 
 
@@ -257,7 +258,7 @@ def test_nothing_to_draw_is_drawn_too(opened):
         values[:] = np.nan
     audit.motion.reached[:] = False
     page = opened(audit)
-    assert readout(page)[3:] == ["–", "–", "–", "no finding"]
+    assert readout(page)[4:] == ["–", "–", "–", "no finding", "none"]
     page.keyboard.press("n")
     assert "No findings." in page.locator(".pa-findings").inner_text()
 

@@ -9,9 +9,7 @@ from fake_audit import fake_audit
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-import pathaudit as pa
 from pathaudit.report.scene import MOST_SAMPLES, scene, significant
-from pathaudit.report.skeleton import joint_points
 from pathaudit.report.thinning import kept_samples, spans
 
 
@@ -63,9 +61,9 @@ def test_many_gaps_do_not_break_the_bound():
 @pytest.mark.parametrize("samples, n", [(2, 1), (2, 6), (3, 12), (500, 12)])
 def test_small_paths_and_any_number_of_joints(samples, n):
     shown = scene(fake_audit(samples, n))
-    assert shown.arrays["points_m"].shape == (samples, n + 2, 3)
-    assert shown.arrays["axes"].shape == (samples, n, 3)
-    assert len(shown.facts["rows"]) == n + 3
+    assert shown.arrays["joints"].shape == shown.arrays["travel_percent"].shape == (samples, n)
+    assert len(shown.facts["rows"]) == 3 * n + 3
+    assert sorted(k for group in shown.facts["groups"] for k in group["lanes"]) == list(range(3 * n + 3))
     json.dumps(shown.facts, allow_nan=False)
 
 
@@ -100,30 +98,6 @@ def test_packing_keeps_infinity():
     audit = fake_audit(50)
     audit.rates.reserve[3] = np.inf
     assert unpacked(*scene(audit).packed())["reserve"][0, 3] == np.inf
-
-
-def test_joint_points_agree_with_the_arms_own_kinematics():
-    rows = [{"name": "lift", "type": "prismatic", "a_mm": 0, "alpha_deg": 20, "d_mm": 300, "theta_deg": 10, "lower_mm": -100, "upper_mm": 500, "speed_mm_s": 400}]
-    rows += [{"name": f"j{k}", "type": "revolute", "a_mm": 250 - 30 * k, "alpha_deg": (-1) ** k * 90, "d_mm": 40 * k, "theta_deg": 15 * k,
-              "lower_deg": -170, "upper_deg": 170, "speed_deg_s": 180} for k in range(5)]
-    arm = pa.Arm.from_dh(rows)
-    joints = np.random.default_rng(1).uniform(-1, 1, (40, 6))
-    joints[7] = np.nan
-    points, axes = joint_points(arm.chain, np.eye(4), np.eye(4), joints)
-    good = np.isfinite(joints).all(axis=1)
-    jacobian = arm.jacobian(joints[good])
-    np.testing.assert_allclose(points[good, -2], arm.flange_pose(joints[good])[:, :3, 3], atol=1e-12)
-    np.testing.assert_allclose(axes[good, 0], jacobian[:, :3, 0], atol=1e-12)      # a sliding joint moves the flange along its axis
-    np.testing.assert_allclose(axes[good, 1:], np.moveaxis(jacobian[:, 3:, 1:], 2, 1), atol=1e-12)
-    arms = points[good, -2, None] - points[good, 1:-2]
-    np.testing.assert_allclose(np.cross(axes[good, 1:], arms), np.moveaxis(jacobian[:, :3, 1:], 2, 1), atol=1e-12)
-    assert np.isnan(points[7]).all() and np.isnan(axes[7]).all()
-
-
-def test_the_tool_is_placed_in_the_world():
-    audit = fake_audit(300, gap=False)
-    shown = scene(audit)
-    np.testing.assert_allclose(shown.arrays["points_m"][:, -1], shown.arrays["path_m"], atol=2e-6)
 
 
 def test_times_count_from_the_first_sample_and_a_clocks_date_is_dropped():

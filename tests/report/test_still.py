@@ -107,8 +107,7 @@ def test_thinning_a_line_stays_within_its_tolerance():
 
 def test_rows_and_heights():
     places = Places(scene(fake_audit(500)).facts, 650)
-    tops = [y for _, y in places.rows]
-    assert all(above + row["height"] < below for (row, above), below in zip(places.rows, tops[1:]))
+    assert all(above.y + above.row["height"] < below.y for above, below in zip(places.lanes, places.lanes[1:]))
     linear, log = {"low": 0.0, "high": 200.0, "height": 50, "log": False}, {"low": 0.01, "high": 1.0, "height": 50, "log": True}
     assert height_of(linear, 10, 0.0) == 60 and height_of(linear, 10, 200.0) == 10 and height_of(linear, 10, 100.0) == 35
     assert height_of(log, 10, 0.1) == pytest.approx(35) and height_of(log, 10, 0.0) == 60

@@ -4,6 +4,8 @@ from types import SimpleNamespace
 
 import numpy as np
 
+from pathaudit.arm import Chain
+
 SPEED_DEG_S = (200.0, 180.0, 200.0, 400.0, 400.0, 600.0)
 
 
@@ -67,7 +69,8 @@ def finding(kind, severity, time, distance, mask, score, value, limit, unit, joi
                            from_mm=1e3 * distance[first], to_mm=1e3 * distance[last])
 
 
-def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0):
+def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0, tight=False):
+    """tight: the second joint comes close to the end of its travel, and the last but one has an acceleration limit that it passes."""
     q, time = motion(samples, n, duration)
     links = six_axis_links() if n == 6 else planar_links(n)
     tool = np.eye(4)
@@ -85,17 +88,25 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0):
     speed = np.gradient(q, axis=0) / dt[:, None]
     share = np.abs(speed) / limit
     share *= 1 + 0.02 * np.random.default_rng(seed).standard_normal(share.shape)
+    bend = np.abs(np.gradient(speed, axis=0) / dt[:, None])
+    lower, upper, acceleration = np.full(n, -np.pi), np.full(n, np.pi), np.full(n, np.nan)
+    if tight:
+        upper[1], acceleration[-2] = np.max(q[:, 1]) + np.deg2rad(2), 0.6 * np.max(bend[:, -2])
+    room, bend = np.minimum(q - lower, upper - q), bend / acceleration
     tool_speed = np.gradient(distance) / dt
     sigma = np.linalg.svd(jacobian(links, q), compute_uv=False)[:, -1]
     reached = np.ones(samples, dtype=bool)
     if gap and samples > 100:
         reached[int(0.88 * samples):int(0.92 * samples)] = False
-    for values in (q, share, sigma):
+    closest = q.copy()
+    for values in (q, share, sigma, bend, room):
         values[~reached] = np.nan
     worst = np.nanmax(np.where(np.isnan(share), -1, share), axis=1)
     worst[~reached] = np.nan
     names = tuple(f"j{k + 1}" for k in range(n))
     found = findings_of(time, distance, share, sigma, reached, names, np.rad2deg(limit))
+    if tight:
+        found = sorted([*found, *tight_findings(time, distance, room, bend, names)], key=lambda f: f.t_start)
     factor = np.minimum(1, 0.95 / np.where(np.isnan(worst), 0.1, np.maximum(worst, 0.1)))
     wide = int(0.05 * samples) + 1
     factor = np.array([factor[max(0, k - wide):k + wide].min() for k in range(samples)]) if samples <= 20000 else factor
@@ -105,9 +116,11 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0):
                                  acceleration_share_warn=0.9, acceleration_share_fail=1.0, travel_warn_deg=5.0, travel_warn_mm=5.0,
                                  deviation_mm=0.01, deviation_deg=0.01, tool_speed_mm_s=None, characteristic_length_mm=None)
     arm = SimpleNamespace(name="invented arm", joint_names=names, chain=SimpleNamespace(links=links, prismatic=np.zeros(n, dtype=bool)),
-                          lower=np.full(n, -np.pi), upper=np.full(n, np.pi), speed=limit, acceleration=np.full(n, np.nan),
+                          lower=lower, upper=upper, speed=limit, acceleration=acceleration,
                           effort=np.full(n, np.nan), n=n, prismatic=np.zeros(n, dtype=bool), reach=1.9)
-    cell = SimpleNamespace(name="Bracket cell <7>", arm=arm, placement=placement, tool=tool, part=part, start=None, thresholds=thresholds,
+    ends = np.array(links)
+    ends[0], ends[-1] = np.linalg.inv(part) @ placement @ links[0], links[-1] @ tool
+    cell = SimpleNamespace(chain=Chain(ends, np.zeros(n, dtype=np.uint8)), name="Bracket cell <7>", arm=arm, placement=placement, tool=tool, part=part, start=None, thresholds=thresholds,
                            file="cell.toml", sha256="a" * 64, sources=(("cell.toml", "a" * 64),), characteristic_length=0.95)
     path = SimpleNamespace(time=time, position=position, process=process, samples=samples, duration=float(time[-1] - time[0]),
                            distance=distance, length=float(distance[-1]), file="seam.csv", sha256="b" * 64, spin_free=False,
@@ -115,12 +128,22 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0):
     retiming = SimpleNamespace(time=np.cumsum(np.r_[0, np.diff(time) / factor[1:]]), factor=factor, style="local", feasible=True,
                                why="Slows 130 mm of the path, down to 65 % of programmed at 7.00 s.", slowest=float(factor.min()),
                                duration=float(np.sum(np.diff(time) / factor[1:])), binding=("",) * samples,
-                               audit=lambda: fake_audit(samples, n, 1.3 * duration, gap, seed))
-    rates = SimpleNamespace(speed_share=share, sigma_min=sigma, tool_speed=tool_speed, tool_speed_limit=tool_speed / worst, reserve=1 / worst)
+                               audit=lambda: fake_audit(samples, n, 1.3 * duration, gap, seed, tight))
+    followed = SimpleNamespace(cell=cell, closest=closest, reached=reached, rows=6, joints=q)
+    rates = SimpleNamespace(motion=followed, speed_share=share, acceleration_share=bend, travel_left=room, sigma_min=sigma, tool_speed=tool_speed, tool_speed_limit=tool_speed / worst, reserve=1 / worst)
     return SimpleNamespace(path=path, cell=cell, time=time, joints=q, rates=rates, finding_list=tuple(found), suggestion=retiming,
                            motion=SimpleNamespace(reached=reached, reasons={}, start_reason="start_deg of the cell"),
                            verdict="fail" if any(f.severity == "fail" for f in found) else "warn" if found else "pass",
                            cautions=("This is not a risk assessment.",), not_judged=(("joint acceleration", "no limit is given"),))
+
+
+def tight_findings(time, distance, room, bend, names):
+    near, fast = room[:, 1] < np.deg2rad(5), np.nan_to_num(bend[:, -2]) > 1
+    left, most = np.rad2deg(np.nanmin(room[:, 1])), 100 * np.nanmax(bend[:, -2])
+    return [finding("joint travel", "warn", time, distance, near, -room[:, 1], left, 0.0, "deg", names[1],
+                    f"Joint {names[1]} comes within {left:.1f} deg of the end of its travel."),
+            finding("joint acceleration", "fail", time, distance, fast, bend[:, -2], most, 100.0, "%", names[-2],
+                    f"Joint {names[-2]} must speed up or slow down at {most:.0f} % of its limit.")]
 
 
 def findings_of(time, distance, share, sigma, reached, names, limit_deg):

@@ -1,6 +1,7 @@
 """An audit on show in a notebook: the live timeline, and beside it the still form that readers without a kernel see."""
 
 import re
+import sys
 from pathlib import PurePath
 
 import anywidget
@@ -134,8 +135,11 @@ def show(audit):
     from IPython.display import display
 
     shell = get_ipython()
-    if shell is None or not hasattr(shell, "kernel"):
+    if shell is None:
+        sys.stdout.write(summary(audit))      # display() would write the bundle as it stands
+    elif not hasattr(shell, "kernel"):
         display({"text/plain": summary(audit)}, raw=True)
+    if not hasattr(shell, "kernel"):
         return Desk(Session(audit))
     shown = scene(audit)
     still = StillForm(shell)

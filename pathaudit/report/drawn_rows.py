@@ -140,12 +140,12 @@ def _draw_pins(surface, places, arrays):
     surface.text(places.left - 8, places.notes, "notes", align="right")
     feet = places.x(np.interp([note.sample for note in places.pins], arrays["sample"], arrays["time_s"]))
     room, end = min(20.0, places.plot / len(feet)), -np.inf
-    for k in np.argsort(feet, kind="stable").tolist():
-        note, foot, most = places.pins[k], float(feet[k]), places.left + places.plot - 16
-        x = end = max(end + room, min(foot, most))
+    for behind, k in zip(range(len(feet) - 1, -1, -1), np.argsort(feet, kind="stable").tolist()):
+        note, foot = places.pins[k], float(feet[k])
+        x = end = min(max(end + room, foot), places.left + places.plot - 16 - room * behind)
         surface.line([(x, places.notes - 7), (x, places.notes + 6), (foot, places.strip - 1)], SOFT)
-        surface.rect(x, places.notes - 7, 16, 13, GROUND if note.note.settled else INK, INK)
-        surface.text(x + 8, places.notes, f"{k + 1}{'?' if note.stale else ''}", INK if note.note.settled else GROUND, "centre", 10)
+        surface.rect(x, places.notes - 7, 16, 13, GROUND if note.note.status.settled else INK, INK)
+        surface.text(x + 8, places.notes, f"{k + 1}{'?' if note.stale else ''}", INK if note.note.status.settled else GROUND, "centre", 10)
 
 
 def draw_lane(surface, places, facts, arrays, lane):
@@ -240,12 +240,12 @@ def thinned(x, y, tolerance=0.3):
     return points[keep]
 
 
-def draw_axis(surface, places):
+def draw_axis(surface, places, name="time, s"):
     step = nice_step(places.duration, places.plot / 80)
     digits = max(0, -int(np.floor(np.log10(step) + 1e-9)))
     first, last = places.offset / step, (places.offset + places.duration) / step
     for k in range(int(np.ceil(first - 1e-4)), int(np.floor(last + 1e-4)) + 1):
-        x = float(places.x(k * step - places.offset))
+        x = float(places.left + places.plot * (k * step - places.offset) / places.duration)
         surface.line([(x, places.axis), (x, places.axis + 4)], SOFT)
         surface.text(x, places.axis + 13, f"{k * step:.{digits}f}", align="centre")
-    surface.text(places.left - 8, places.axis + 13, "time, s", align="right")
+    surface.text(places.left - 16, places.axis + 13, name, align="right")

@@ -9,6 +9,7 @@ from fake_audit import fake_audit
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from pathaudit.causes import lost_words
 from pathaudit.report.scene import MOST_SAMPLES, scene, significant
 from pathaudit.report.thinning import kept_samples, spans
 
@@ -80,14 +81,89 @@ def test_every_row_has_a_scale_whatever_the_thresholds(bounds, known):
         assert all(row["low"] <= value <= row["high"] or value == 0 for value, _ in row["bounds"])
 
 
+def test_travel_and_acceleration_are_shares_of_what_the_joint_has():
+    audit = fake_audit(600, tight=True)
+    arm, shown = audit.cell.arm, scene(audit)
+    travel, acceleration = shown.arrays["travel_percent"], shown.arrays["acceleration_percent"]
+    np.testing.assert_allclose(arm.lower + travel / 100 * (arm.upper - arm.lower), audit.joints, atol=1e-5)
+    np.testing.assert_allclose(acceleration[:, 4], 100 * audit.rates.acceleration_share[:, 4], rtol=1e-6)
+    assert np.isnan(acceleration[:, 0]).all()
+    lanes = [row for row in shown.facts["rows"] if row["title"] == "accel."]
+    assert [bool(row["word"]) for row in lanes] == [True, True, True, True, False, True]
+    arm.upper[2] = np.inf
+    shown = scene(audit)
+    assert np.isnan(shown.arrays["travel_percent"][:, 2]).all()
+    assert [row["word"] for row in shown.facts["rows"] if row["title"] == "travel"] == ["", "", "turns without end", "", "", ""]
+
+
+def test_a_finding_marks_the_lane_that_it_is_about_and_unfolds_its_joint():
+    facts = scene(fake_audit(600, tight=True)).facts
+    lane = {f["kind"]: (facts["rows"][f["row"]]["title"], facts["rows"][f["row"]]["lines"][-1]) for f in facts["findings"] if f["row"] >= 0}
+    assert lane["joint travel"] == ("travel", ["travel_percent", 1, "main"])
+    assert lane["joint acceleration"] == ("accel.", ["acceleration_percent", 4, "main"])
+    assert lane["joint speed"][0] == "speed" and lane["near-singular"][0] == "sigma_min"
+    assert [group["title"] for group in facts["groups"] if len(group["lanes"]) > 1 and not group["folded"]] == ["j2", "j5"]
+    assert all(group["folded"] for group in scene(fake_audit(600)).facts["groups"][:6])
+
+
+def test_the_travel_lane_shows_what_lies_past_the_end():
+    audit = fake_audit(300, gap=False)
+    audit.cell.arm.upper[0] = np.quantile(audit.joints[:, 0], 0.9)
+    shown = scene(audit)
+    row, travel = shown.facts["rows"][9], shown.arrays["travel_percent"][:, 0]
+    assert row["lines"] == [["travel_percent", 0, "main"]] and travel.max() > 100 and 104 <= row["high"] <= 120
+    assert row["bounds"][2:] == [[0.0, "fail"], [100.0, "fail"]] and row["bad"] == "outside"
+    near = row["bounds"][0][0]
+    assert near == pytest.approx(100 * np.deg2rad(5) / (audit.cell.arm.upper[0] - audit.cell.arm.lower[0]))
+
+
+def test_before_and_after_are_the_same_poses():
+    audit = fake_audit(8000)
+    after = audit.suggestion.audit()
+    shown = scene(after, applied=audit.suggestion, before=audit)
+    sample = shown.arrays["sample"].astype(int)
+    assert len(sample) <= MOST_SAMPLES
+    np.testing.assert_allclose(shown.arrays["programmed_s"], audit.time[sample], rtol=1e-6)
+    np.testing.assert_allclose(shown.arrays["before_share_percent"], 100 * audit.rates.speed_share[sample], rtol=1e-6)
+    np.testing.assert_allclose(shown.arrays["before_speed_mm_s"], 1e3 * audit.rates.tool_speed[sample], rtol=1e-6)
+    for name, full in (("before_share_percent", audit.rates.speed_share), ("share_percent", after.rates.speed_share)):
+        np.testing.assert_allclose(np.nanmax(shown.arrays[name], axis=0), 100 * np.nanmax(full, axis=0), rtol=1e-6)
+    styles = {line[0]: line[2] for row in shown.facts["rows"] for line in row["lines"]}
+    assert styles["before_share_percent"] == styles["before_speed_mm_s"] == styles["before_acceleration_percent"] == "before"
+    assert shown.facts["rows"][0]["high"] >= min(200.0, np.nanmax(shown.arrays["before_share_percent"]))
+    assert "suggested_speed_mm_s" not in shown.arrays and not any(name.startswith(("before", "programmed")) for name in scene(audit).arrays)
+
+
+def test_the_suggested_speed_is_drawn_only_where_there_is_one_to_suggest():
+    audit = fake_audit(500)
+    shown = scene(audit)
+    np.testing.assert_allclose(shown.arrays["suggested_speed_mm_s"], 1e3 * audit.suggestion.factor * audit.rates.tool_speed, rtol=1e-6)
+    audit.suggestion.factor = np.ones(500)
+    assert "suggested_speed_mm_s" not in scene(audit).arrays
+
+
+def test_the_lost_direction_is_said_wherever_the_tool_is_near_a_singular_place():
+    audit = fake_audit(1500)
+    shown = scene(audit)
+    said = np.zeros(1500, dtype=bool)
+    for first, last, words in shown.facts["lost"]:
+        assert words.startswith(("turn about", "move along")) and first <= last and not said[first:last + 1].any()
+        said[first:last + 1] = True
+    np.testing.assert_array_equal(said, np.nan_to_num(audit.rates.sigma_min, nan=1) < 0.06)
+    worst = int(np.nanargmin(audit.rates.sigma_min))
+    near = lost_words(audit.rates, worst)
+    assert near.split("(")[0] == next(words for first, last, words in shown.facts["lost"] if first <= worst <= last).split("(")[0]
+
+
 def test_packing_gives_the_columns_back():
-    shown = scene(fake_audit(1500))
+    audit = fake_audit(1500)
+    shown = scene(audit.suggestion.audit(), applied=audit.suggestion, before=audit)
     back = unpacked(*shown.packed())
     for name, values in shown.arrays.items():
         columns = values.reshape(len(values), -1).T
         assert back[name].shape == columns.shape
         np.testing.assert_array_equal(np.isnan(back[name]), np.isnan(columns))
-        if name in ("sample", "time_s"):
+        if name in ("sample", "time_s", "programmed_s"):
             np.testing.assert_array_equal(back[name], columns)
         else:
             np.testing.assert_allclose(back[name], columns, rtol=7e-5, atol=1e-30)

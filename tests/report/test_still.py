@@ -2,6 +2,7 @@
 
 import io
 import re
+from types import SimpleNamespace
 from xml.etree import ElementTree
 
 import numpy as np
@@ -9,6 +10,7 @@ import pytest
 from fake_audit import fake_audit
 from PIL import Image
 
+from pathaudit.report.drawn_close import height_of_windows, windows_of
 from pathaudit.report.drawn_rows import Places, beyond, height_of, thinned
 from pathaudit.report.scene import scene
 from pathaudit.report.still import png_picture, shown_sample, svg_picture
@@ -124,3 +126,75 @@ def test_findings_that_overlap_are_stacked():
 def test_the_title_can_be_left_out():
     shown = scene(fake_audit(100))
     assert "FAIL" in words_of(svg_picture(shown)) and "FAIL" not in words_of(svg_picture(shown, title=False))
+
+
+def test_the_lanes_of_an_unfolded_joint_are_named_and_marked():
+    shown = scene(fake_audit(2000, tight=True))
+    words = words_of(svg_picture(shown))
+    assert [words.count(word) for word in ("travel", "speed", "accel.", "no acceleration limit is known")] == [2, 2, 2, 1]
+    folded = words_of(svg_picture(scene(fake_audit(2000))))
+    assert "travel" not in folded and "j2" in folded
+    facts, places = shown.facts, Places(shown.facts, 650)
+    rows = {f["kind"]: f["row"] for f in facts["findings"]}
+    assert {rows["joint travel"], rows["joint acceleration"]} <= {lane.index for lane in places.lanes}
+
+
+def short_finding(facts, number, start, end, **other):
+    return {**facts["findings"][0], "number": number, "severity": "fail", "row": 1, "from_s": start, "to_s": end, **other}
+
+
+def test_short_fails_are_drawn_large_side_by_side(shown):
+    facts, places = shown.facts, Places(shown.facts, 650)
+    with_these = lambda *found: windows_of({**facts, "findings": found}, places)      # noqa: E731
+    short, near, long = short_finding(facts, 1, 3.0, 3.1), short_finding(facts, 2, 3.05, 3.2, row=2), short_finding(facts, 3, 6.0, 9.0)
+    (window,), left_out = with_these(short, near, long)
+    assert window.numbers == (1, 2) and window.lanes == (1, 2) and left_out == 0
+    assert window.start < 3.0 and window.end > 3.2 and window.duration < 1.0
+    window = windows_of({**facts, "findings": [short_finding(facts, 1, 0.0, 0.01)]}, places)[0][0]
+    assert window.start == 0.0 and window.end > 0.01
+    assert with_these(long)[0] == with_these({**short, "severity": "warn"})[0] == with_these({**short, "row": -1})[0] == ()
+    many = [short_finding(facts, k, k, k + 0.02) for k in range(1, 8)]
+    windows, left_out = with_these(*many)
+    assert len(windows) == 3 and left_out == 4 and height_of_windows(windows) > 0 == height_of_windows(())
+
+
+def test_a_magnified_peak_is_as_high_as_in_the_rows_and_says_which_finding_it_is():
+    audit = fake_audit(4000, duration=80.0)
+    audit.rates.speed_share[1000:1005, 2] = 0.5, 1.2, 1.5, 1.2, 0.5
+    audit.finding_list = (SimpleNamespace(**{**vars(audit.finding_list[0]), "kind": "joint speed", "joint": "j3", "severity": "fail", "first": 1001, "last": 1003,
+                                             "worst": 1002, "t_start": audit.time[1001], "t_end": audit.time[1003]}),)
+    shown = scene(audit)
+    svg = svg_picture(shown)
+    words = words_of(svg)
+    assert "finding 1 magnified" in words and words.count("j3 speed") == 1 and words.count("time, s") == 2
+    assert len(words_of(svg_picture(scene(fake_audit(400, gap=False, n=2))))) < len(words)
+    assert Image.open(io.BytesIO(png_picture(shown))).size[1] > Image.open(io.BytesIO(png_picture(scene(fake_audit(400, n=2))))).size[1]
+
+
+def test_notes_are_flags_on_the_strip(shown):
+    note = lambda sample, settled=False, stale="": SimpleNamespace(sample=sample, stale=stale, note=SimpleNamespace(status=SimpleNamespace(settled=settled)))      # noqa: E731
+    words = words_of(svg_picture(shown, notes=[note(100), note(104, settled=True), note(1999, stale="moved")]))
+    assert "notes" in words and {"1", "2", "3?"} <= set(words)
+    assert "notes" not in words_of(svg_picture(shown))
+    crowd = svg_picture(shown, notes=[note(1990)] * 40)
+    flags = [float(x) for x in re.findall(r'<rect x="([\d.]+)" y="[\d.]+" width="16.0" height="13.0"', crowd)]
+    assert len(flags) == 40 and min(np.diff(flags)) > 10 and max(flags) <= 650 - 10 - 16
+    png_picture(shown, notes=[note(1990)] * 40)
+
+
+def test_before_and_after_are_drawn_together():
+    audit = fake_audit(2000)
+    alone = scene(audit.suggestion.audit(), applied=audit.suggestion)
+    both = scene(audit.suggestion.audit(), applied=audit.suggestion, before=audit)
+    dotted = 'stroke-dasharray="1.5 2.5"'
+    assert svg_picture(alone).count(dotted) == 0 < svg_picture(both).count(dotted)
+    assert any("dotted: as programmed" in words for words in words_of(svg_picture(both)))
+
+
+def test_words_too_long_for_their_place_are_shortened():
+    audit = fake_audit(200)
+    audit.cell.name = "A cell with a very long name " * 8
+    audit.cell.arm.joint_names = ("shoulder_lift_joint_of_the_left_arm", *audit.cell.arm.joint_names[1:])
+    words = words_of(svg_picture(scene(audit)))
+    assert any(word.startswith("A cell with") and word.endswith("..") and len(word) < 120 for word in words)
+    assert any(word.startswith("shoulder_") and word.endswith("..") and len(word) < 16 for word in words)

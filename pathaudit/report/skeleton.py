@@ -1,32 +1,52 @@
 """Where the arm's joints stand in the world at each sample, for drawing it."""
 
+from typing import NamedTuple
+
 import numpy as np
 
 
-def joint_points(chain, placement, tool, joints):
-    """Points (M, n+2, 3) in m: the origin of every joint, the flange, the tool centre point; and axes (M, n, 3), each joint's direction.
+class Skeleton(NamedTuple):
+    """In m and world axes, M samples: points (M, n+2, 3), the origin of every joint, the flange, the tool point; roots (M, n, 3), where each
+    joint's slide begins (for a joint that turns, its origin); axes (M, n, 3), the joints' directions; tool (M, 3, 4), the tool's pose."""
 
-    chain: links (n+1, 4, 4) and prismatic (n,) from base to flange; placement (4, 4) base in world; tool (4, 4) in the flange;
-    joints (M, n) in rad or m. A row of NaN gives NaN. All in world axes; a sliding joint's origin is taken after its slide.
+    points: np.ndarray
+    roots: np.ndarray
+    axes: np.ndarray
+    tool: np.ndarray
+
+
+def arm_facts(cell):
+    """The arm of a cell as JSON values: what `skeleton` and space.js need beside the joints' positions, and the speed limits in rad/s or m/s."""
+    chain = cell.arm.chain
+    fixed = np.round(np.concatenate([chain.links, [cell.tool]])[:, :3], 12).tolist()
+    return {"links": fixed[:-1], "tool": fixed[-1], "prismatic": np.asarray(chain.prismatic, dtype=bool).tolist(),
+            "joint_speed": np.asarray(cell.arm.speed, dtype=float).tolist()}
+
+
+def skeleton(facts, joints):
+    """The Skeleton at joints (M, n), rad or m. A row of NaN gives NaN.
+
+    facts: those of `arm_facts` and "base", the arm's pose in the world. links[k] leads to joint k, which turns about its z or slides along it.
     """
-    links, prismatic = np.asarray(chain.links, dtype=float), np.asarray(chain.prismatic, dtype=bool)
+    joints, links, tool = np.asarray(joints, dtype=float), np.array(facts["links"]), np.array(facts["tool"])
     samples, n = joints.shape
-    points, axes = np.empty((samples, n + 2, 3)), np.empty((samples, n, 3))
-    start = placement @ links[0]
-    turned, at = np.broadcast_to(start[:3, :3], (samples, 3, 3)), np.broadcast_to(start[:3, 3], (samples, 3))
+    points, roots, axes = (np.empty((samples, count, 3)) for count in (n + 2, n, n))
+    base = np.array(facts["base"])
+    turned, at = (np.broadcast_to(part, (samples, *part.shape)) for part in (base[:3, :3], base[:3, 3]))
     for i in range(n):
-        axis = turned[:, :, 2]
-        if prismatic[i]:
-            at = at + axis * joints[:, i, None]
+        turned, at = _onward(turned, at, links[i])
+        roots[:, i], axes[:, i] = at, turned[:, :, 2]
+        if facts["prismatic"][i]:
+            at = at + axes[:, i] * joints[:, i, None]
         else:
             turned = _turn(turned, joints[:, i])
-        points[:, i], axes[:, i] = at, axis
-        turned, at = _onward(turned, at, links[i + 1])
-    points[:, n] = at
-    points[:, n + 1] = _onward(turned, at, tool)[1]
-    bad = ~np.isfinite(joints).all(axis=1)
-    points[bad] = axes[bad] = np.nan
-    return points, axes
+        points[:, i] = at
+    turned, points[:, n] = _onward(turned, at, links[n])
+    turned, points[:, n + 1] = _onward(turned, points[:, n], tool)
+    found = Skeleton(points, roots, axes, np.concatenate([turned, points[:, n + 1, :, None]], axis=2))
+    for values in found:
+        values[~np.isfinite(joints).all(axis=1)] = np.nan
+    return found
 
 
 def _turn(turned, angle):
@@ -36,4 +56,4 @@ def _turn(turned, angle):
 
 
 def _onward(turned, at, link):
-    return turned @ link[:3, :3], at + turned @ link[:3, 3]
+    return turned @ link[:, :3], at + turned @ link[:, 3]

@@ -1,170 +1,188 @@
-// The arm at the cursor in an honest perspective: floor, path, part frame on one canvas, the arm and what moves on another.
+// The arm at the cursor: floor, mounting, path and part frame on one canvas, the arm and what moves with it on another.
 
 import { clamp, niceStep, worstJoint } from "./data.js";
-import { fit, text } from "./theme.js";
+import { bounds, eyeOn } from "./eye.js";
+import { pen } from "./pen.js";
+import { MEASURES, SHADES, scaleOf, shadeColour } from "./shading.js";
+import { along, column, postureAt, velocityEllipsoid } from "./space.js";
 
-export function armView(facts, data) {
-  const samples = data.time_s[0].length;
-  const base = column(facts.base, 3), part = column(facts.part, 3);
-  const points = facts.joints.length + 2;
-  const point = (k, i) => [data.points_m[3 * k][i], data.points_m[3 * k + 1][i], data.points_m[3 * k + 2][i]];
-  const axis = (k, i) => [data.axes[3 * k][i], data.axes[3 * k + 1][i], data.axes[3 * k + 2][i]];
-  const onPath = (i) => [data.path_m[0][i], data.path_m[1][i], data.path_m[2][i]];
-  const seen = [base, part, ...pick(samples, 200).map(onPath),
-                ...pick(samples, 24).flatMap((i) => Array.from({ length: points }, (_, k) => point(k, i)))].filter(finite);
-  const box = bounds(seen);
-  const centre = box.map(([low, high]) => 0.5 * (low + high));
-  const radius = 0.5 * Math.hypot(...box.map(([low, high]) => high - low)) || 1;
-  const floor = Math.min(0, base[2], part[2]);
-  const away = Math.atan2(centre[1] - base[1], centre[0] - base[0]) - 0.9;
-  const camera = { turn: away, tilt: 0.38, width: 1, height: 1, scale: 1, shift: [0, 0] };
+// `old`: the view that this one takes the place of. Its choices stay, and where it shows the same place, the eye too.
+export function armView(facts, data, old) {
+  const last = data.time_s[0].length - 1, process = data.process[0];
+  const onPath = (i) => data.path_m.map((values) => values[i]);
+  const postures = pick(last, 24).map((i) => postureAt(facts, data, i)).filter(Boolean);
+  const room = roomOf(facts, [...pick(last, 200).map(onPath), ...postures.flatMap((one) => [...one.roots, ...one.points])]);
+  const { radius, place } = room, look = { measure: 0, ellipsoid: false, ...(old && old.look) };
+  if (!old || old.place !== place) Object.assign(look, { turn: room.views[3][0], tilt: room.views[3][1], width: 0 });
+  const eye = eyeOn(room, look), { project } = eye;
+  const fastest = Math.max(1e-9, ...postures.map((one) => velocityEllipsoid(facts, one).axes[0][0]));
+  let scale = {}, tip = room.centre, standing = [];
 
-  function project(p) {
-    const [x, y, z] = [p[0] - centre[0], p[1] - centre[1], p[2] - centre[2]];
-    const ct = Math.cos(camera.turn), st = Math.sin(camera.turn), ce = Math.cos(camera.tilt), se = Math.sin(camera.tilt);
-    const depth = 3.4 * radius - (ce * (ct * x + st * y) + se * z);
-    const size = camera.scale / Math.max(depth, 0.1 * radius);
-    return [camera.width / 2 + camera.shift[0] + size * (ct * y - st * x),
-            camera.height / 2 + camera.shift[1] - size * (ce * z - se * (ct * x + st * y)), size];
-  }
-
-  // The whole of path and arm fills the view as it is first seen; orbiting then keeps this scale.
+  // A new size shows all; an eye that was taken over has its size already.
   function frameAll(width, height) {
-    Object.assign(camera, { width, height, scale: 1, shift: [-width / 2, -height / 2] });
-    const tips = [0, 1, 2].map((k) => part.map((v, r) => v + 0.2 * radius * facts.part[r][k]));
-    const [xs, ys] = bounds([...seen, ...tips].map(project));
-    const scale = 0.84 * Math.min(width / (xs[1] - xs[0] || 1), height / (ys[1] - ys[0] || 1));
-    camera.scale = scale;
-    camera.shift = [-scale * 0.5 * (xs[0] + xs[1]), -scale * 0.5 * (ys[0] + ys[1])];
+    if (width !== look.width || height !== look.height) eye.fitTo(width, height);
   }
 
-  function polyline(context, list, colour, width, dash = []) {
-    context.strokeStyle = colour;
-    context.lineWidth = width;
-    context.lineJoin = context.lineCap = "round";
-    context.setLineDash(dash);
-    context.beginPath();
-    list.forEach((p, k) => (k ? context.lineTo(p[0], p[1]) : context.moveTo(p[0], p[1])));
-    context.stroke();
-    context.setLineDash([]);
-  }
+  const girth = (at, share) => clamp((0.07 - 0.05 * share) * radius * at[2], 4, 48);
 
-  function drawFloor(context, colours) {
-    const step = niceStep(2 * radius, 6);
-    const [x0, x1, y0, y1] = [...box[0], ...box[1]].map((v, k) => step * (k % 2 ? Math.ceil(v / step + 0.3) : Math.floor(v / step - 0.3)));
-    for (let x = x0; x <= x1 + 1e-9; x += step) polyline(context, [project([x, y0, floor]), project([x, y1, floor])], colours.faint, 1);
-    for (let y = y0; y <= y1 + 1e-9; y += step) polyline(context, [project([x0, y, floor]), project([x1, y, floor])], colours.faint, 1);
-    return step;
-  }
-
-  // Air moves dotted, clean process stretches thin, warn and fail thicker, fail with a light core so that it shows without its colour.
-  function drawPath(context, colours) {
-    const kind = (i) => (data.severity[0][i] ? data.severity[0][i] : data.process[0][i] ? 0 : -1);
-    const styles = { "-1": [colours.soft, 1.2, [1, 4]], 0: [colours.line, 1.8], 1: [colours.warn, 3.5], 2: [colours.fail, 5] };
-    const step = Math.max(1, Math.floor(samples / 1500));
-    for (let start = 0; start < samples - 1;) {
-      const code = kind(start), list = [project(onPath(start))];
-      let i = start + 1;
-      for (; i < samples && kind(i) === code; i++) if (i % step === 0) list.push(project(onPath(i)));
-      list.push(project(onPath(Math.min(i, samples - 1))));
-      polyline(context, list, ...styles[code]);
-      if (code === 2) polyline(context, list, colours.ground, 1.4);
-      start = i;
+  function tube({ line }, list) {
+    for (const [colour, more] of [["soft", 2], ["tube", 0]]) {
+      list.slice(1).forEach((to, k) => line([list[k], to], colour, girth(list[k], k / list.length) + more));
     }
   }
 
-  function drawFrame(context, pose, length, colours, words) {
-    const origin = project(column(pose, 3));
-    ["X", "Y", "Z"].forEach((name, k) => {
-      const end = project(column(pose, 3).map((v, r) => v + length * pose[r][k]));
-      polyline(context, [origin, end], colours.frame[k], 2);
-      text(context, name, end[0] + 5, end[1] - 4, { colour: colours.soft, size: 10, family: colours.font });
+  function drawFloor({ line }) {
+    const step = niceStep(2 * radius, 6), ends = room.box.slice(0, 2).map(([low, high]) => [Math.floor(low / step - 0.3), Math.ceil(high / step + 0.3)]);
+    ends.forEach(([low, high], k) => {
+      for (let at = low; at <= high; at++) {
+        line(ends[1 - k].map((to) => project([...(k ? [to, at] : [at, to]).map((v) => step * v), room.floor])), "faint", 1);
+      }
     });
-    if (words) text(context, words, origin[0] - 6, origin[1] + 11, { colour: colours.soft, size: 10, family: colours.font, align: "right" });
+    return `grid ${Math.round(1000 * step)} mm`;
+  }
+
+  // What carries the base: a post on a plate, which is crossed where it is not the floor.
+  function drawMounting(draw) {
+    const flat = room.plate.map(project);
+    draw.line([0, 1, 2, 3, 0, 2, 3, 1].slice(0, room.upright ? 5 : 8).map((k) => flat[k]), "soft", 1.2);
+    tube(draw, [room.foot, column(facts.base, 3)].map(project));
+    atEdge(draw, room.mounting, flat, room.upright ? 1 : -1);
+  }
+
+  // Words under the lowest of some places, or above the highest (side = -1).
+  function atEdge({ label }, words, flat, side = 1) {
+    const [x, y] = flat.reduce((a, b) => (side * (b[1] - a[1]) > 0 ? b : a));
+    label(words, [x, y + 10 * side], 0);
+  }
+
+  // Runs of equal kind(i), each drawn through its places on the path up to the next.
+  function alongPath(kind, draw) {
+    for (let i = 0; i < last;) {
+      const code = kind(i), list = [project(onPath(i))];
+      do list.push(project(onPath(++i))); while (i < last && kind(i) === code);
+      draw(code, list);
+    }
+  }
+
+  // Air moves dotted, warn and fail thicker, fail with a light core so that it shows without its colour.
+  function drawSeverity({ line, write, widthOf }, y) {
+    const styles = [["soft", 1.2, [1, 4]], ["line", 1.8], ["warn", 3.5], ["fail", 5]];
+    const stretch = (code, list) => {
+      line(list, ...styles[code]);
+      if (code > 2) line(list, "ground", 1.4);
+    };
+    alongPath((i) => (data.severity[0][i] ? data.severity[0][i] + 1 : process[i]), stretch);
+    ["air", "clean", "warn", "fail"].reduce((x, words, code) => {
+      stretch(code, [[x, y], [x + 18, y]]);
+      write(words, x + 24, y);
+      return x + 36 + widthOf(words);
+    }, 10);
+  }
+
+  // The process with an edge, air moves thin, dotted where nothing is known; and the scale of the colours.
+  function drawMeasure({ line, write, widthOf }, y, measure) {
+    if (scale.measure !== measure) scale = { measure, ...scaleOf(measure, data) };
+    alongPath((i) => process[i], (on, list) => on && line(list, "soft", 6));
+    alongPath((i) => 2 * scale.shade(i) + process[i], (code, list) => {
+      if (code < 0) line(list, "soft", 1.2, [1, 4]); else line(list, shadeColour(code >> 1), code % 2 ? 4 : 2);
+    });
+    for (let k = 0; k < SHADES; k++) line([[12 + 5 * k, y - 16], [16 + 5 * k, y - 16]], shadeColour(k), 8);
+    write(measure.title, 10, y - 30);
+    scale.ends.forEach((value, k) => {
+      const words = String(Number(value.toPrecision(3)));
+      write(words, 10 + k * (5 * SHADES - widthOf(words)) / 2, y);
+    });
+  }
+
+  function drawFrame({ line, label }, pose, length, words) {
+    const at = (by, k) => project(along(column(pose, 3), by * length * radius, column(pose, k)));
+    ["fail", "#009E73", "line"].forEach((colour, k) => {
+      line([at(0, k), at(1, k)], colour, 2);
+      label("XYZ"[k], at(1.25, k), 0);
+    });
+    atEdge({ label }, words, [at(0, 0)]);
   }
 
   function drawStage(canvas, colours) {
-    const context = fit(canvas, camera.width, camera.height);
-    const step = drawFloor(context, colours);
-    drawPath(context, colours);
-    drawFrame(context, facts.part, 0.16 * radius, colours, "part");
-    text(context, `grid ${Math.round(1000 * step)} mm`, camera.width - 8, camera.height - 10,
-         { colour: colours.soft, align: "right", family: colours.font });
+    const draw = pen(canvas, colours, look, standing = []), y = look.height - 12, grid = drawFloor(draw);
+    drawMounting(draw);
+    if (look.measure) drawMeasure(draw, y, MEASURES[look.measure]); else drawSeverity(draw, y);
+    draw.write(grid, look.width - 8 - draw.widthOf(grid), y);
+    drawFrame(draw, facts.part, 0.14, "part");
   }
 
   function drawArm(canvas, colours, i) {
-    const context = fit(canvas, camera.width, camera.height);
-    const chain = [[base[0], base[1], Math.min(floor, base[2])], base, ...Array.from({ length: points }, (_, k) => point(k, i))];
-    if (!chain.every(finite)) {
-      polyline(context, [project(chain[0]), project(base)], colours.soft, 6);
-      const at = project(onPath(i));
-      ring(context, at, 5, colours.fail, colours.ground);
-      text(context, "not reached: no posture to draw", 10, 14, { colour: colours.ink, family: colours.font });
-      return;
+    const draw = pen(canvas, colours, look, [...standing]), posture = postureAt(facts, data, i);
+    tip = onPath(i);
+    if (!posture) {
+      draw.mark(project(tip), 5, "fail");
+      return draw.write("not reached: no posture to draw", 10, 14, "ink");
     }
-    const flat = chain.map(project);
-    const last = flat.length - 1;
-    const girth = (k) => clamp((0.075 - 0.05 * (k / last)) * radius * flat[k][2], 4, 26);
-    for (const [colour, more] of [[colours.soft, 2], [colours.tube, 0]]) {
-      for (let k = 0; k < last - 1; k++) polyline(context, [flat[k], flat[k + 1]], colour, girth(k + 1) + more);
-    }
-    polyline(context, [flat[last - 1], flat[last]], colours.ink, 2.4);
-    drawJoints(context, colours, i, flat, girth);
-    ring(context, flat[last], 3.5, colours.ink, colours.ground);
+    const { points, roots } = posture, flat = points.map(project), flange = flat.length - 2;
+    tube(draw, [project(column(facts.base, 3)), ...flat.slice(0, -1).flatMap((p, k) => (facts.prismatic[k] ? [project(roots[k]), p] : [p]))]);
+    draw.line(flat.slice(flange), "ink", 2.4);
+    drawJoints(draw, i, flat, posture);
+    if (look.ellipsoid) drawEllipsoid(draw, posture);
+    drawFrame(draw, posture.tool, 0.08, "tool");
+    draw.mark(flat[flange + 1], 3.5, "ink");
   }
 
-  // Each joint's axis as a short line: joints that line up are seen to line up. The busiest joint is named when it is past its warn line.
-  function drawJoints(context, colours, i, flat, girth) {
-    facts.joints.forEach((name, k) => {
-      const at = point(k, i), along = axis(k, i), reach = 0.11 * radius;
-      const ends = [1, -1].map((side) => project(at.map((v, r) => v + side * reach * along[r])));
-      polyline(context, ends, colours.soft, 1.4, [4, 2]);
-      ring(context, flat[k + 2], Math.max(3, girth(k + 2) * 0.42), colours.soft, colours.ground);
+  // Each joint's axis as a short line: joints that line up are seen to line up; a square slides. The busiest joint is named past its warn line.
+  function drawJoints({ line, mark, label }, i, flat, { points, axes }) {
+    const size = (k) => Math.max(3, 0.42 * girth(flat[k], k / axes.length));
+    axes.forEach((axis, k) => {
+      line([1, -1].map((side) => project(along(points[k], 0.11 * side * radius, axis))), "soft", 1.4, [4, 2]);
+      mark(flat[k], size(k), "soft", 1.5, facts.prismatic[k]);
     });
-    const worst = worstJoint(data, i), [[warn], [fail]] = facts.rows[0].bounds;
-    if (!worst || worst[1] < warn) return;
-    const [k, share] = worst, at = flat[k + 2];
-    ring(context, at, Math.max(5, girth(k + 2) * 0.6), share > fail ? colours.fail : colours.warn, colours.ground, 3);
-    text(context, `${facts.joints[k]} ${share.toFixed(0)} %`, at[0] + 14, at[1] - 14,
-         { colour: colours.ink, size: 12, weight: "600", family: colours.font });
+    const [k, share] = worstJoint(data, i) || [], [[warn], [fail]] = facts.rows[0].bounds;
+    if (!(share >= warn)) return;
+    mark(flat[k], size(k) + 2, share > fail ? "fail" : "warn", 3, facts.prismatic[k]);
+    label(`${facts.joints[k]} ${share.toFixed(0)} %`, flat[k], size(k) + 4, "ink", "600");
   }
 
-  function ring(context, [x, y], r, colour, fill, width = 1.5) {
-    context.beginPath();
-    context.arc(x, y, r, 0, 7);
-    context.fillStyle = fill;
-    context.fill();
-    context.strokeStyle = colour;
-    context.lineWidth = width;
-    context.stroke();
+  // Outline and axes of the velocity ellipsoid, through the projection as it is at the tool point. Equal lengths are equal speeds all along the path.
+  function drawEllipsoid({ line, oval, label, write }, posture) {
+    const { w, axes } = velocityEllipsoid(facts, posture), tool = column(posture.tool, 3), at = project(tool), size = 0.18 * radius / fastest;
+    const mm = (speed) => (1000 * speed).toFixed(0);
+    const slope = [0, 1, 2].map((r) => project(tool.map((v, k) => v + (k === r ? 1e-4 * radius : 0))).map((v, k) => (v - at[k]) / (1e-4 * radius) * size));
+    const seen = (direction) => [0, 1].map((k) => slope.reduce((sum, s, r) => sum + s[k] * direction[r], 0));
+    const [[a, b], [, d]] = [0, 1].map((k) => seen(w.map((row) => seen(row)[k])));
+    const half = Math.hypot((a - d) / 2, b);
+    oval(at, [half, -half].map((v) => Math.sqrt(Math.max(0, (a + d) / 2 + v))), Math.atan2(2 * b, a - d) / 2, "ink", 1.6);
+    axes.forEach(([speed, direction], k) => {
+      const end = (by) => seen(direction).map((v, r) => at[r] + by * speed * v);
+      line([end(-1), end(1)], "ink", 1, [5, 3]);
+      if (!k) label(`${mm(speed)} mm/s`, end(1), 1, "ink");
+    });
+    write(`half axes ${axes.map(([speed]) => mm(speed)).join(", ")} mm/s`, 10, 14, "ink");
   }
 
-  function orbit(dx, dy) {
-    camera.turn -= 0.01 * dx;
-    camera.tilt = clamp(camera.tilt + 0.008 * dy, -0.2, 1.5);
-  }
-
-  function reset() {
-    camera.turn = away;
-    camera.tilt = 0.38;
-  }
-
-  return { frameAll, drawStage, drawArm, orbit, reset };
+  return { ...eye, look, place, frameAll, drawStage, drawArm, orbit: (dx, dy) => eye.orbit(dx, dy, look.scale > 1.4 * look.fitted ? tip : room.centre) };
 }
 
-function column(pose, k) {
-  return [pose[0][k], pose[1][k], pose[2][k]];
+// The size of the scene and what the arm stands on. `posed`: places of path and arm.
+function roomOf(facts, posed) {
+  const [x, y, up, base] = [0, 1, 2, 3].map((k) => column(facts.base, k)), part = column(facts.part, 3);
+  const seen = [base, part, ...posed], low = bounds(seen)[2][0], upright = up[2] > 0.98;
+  const ground = Math.min(0, base[2], part[2]), floor = low - ground > halfDiagonal(seen) ? low : ground;      // one far below all else would only make that small
+  const foot = along(base, upright ? floor - base[2] : -0.14 * halfDiagonal(seen), up);
+  seen.push(foot, [part[0], part[1], floor]);
+  const box = bounds(seen), centre = box.map(([from, to]) => 0.5 * (from + to)), radius = halfDiagonal(seen);
+  const plate = [[1, 1], [-1, 1], [-1, -1], [1, -1]].map(([a, b]) => along(along(foot, 0.1 * radius * a, x), 0.1 * radius * b, y));
+  seen.push(...plate, ...[0, 1, 2].map((k) => along(part, 0.2 * radius, column(facts.part, k))));
+  return {
+    floor, foot, plate, upright, box, centre, radius, seen, place: JSON.stringify([facts.base, facts.part, facts.links, facts.length_mm]),
+    mounting: upright ? "base" : up[2] < -0.98 ? "base, hanging" : Math.abs(up[2]) < 0.2 ? "base, on a wall" : "base, tilted",
+    views: [[-Math.PI / 2, 0], [0, 0], [-Math.PI / 2, Math.PI / 2], [Math.atan2(centre[1] - base[1], centre[0] - base[0]) - 0.9, 0.38]],
+  };
 }
 
-function finite(p) {
-  return p.every(Number.isFinite);
+function halfDiagonal(list) {
+  return 0.5 * Math.hypot(...bounds(list).map(([low, high]) => high - low)) || 1;
 }
 
-function pick(count, most) {
-  const step = Math.max(1, Math.floor(count / most));
-  return Array.from({ length: Math.ceil(count / step) }, (_, k) => k * step);
-}
-
-function bounds(list) {
-  return [0, 1, 2].map((k) => [Math.min(...list.map((p) => p[k])), Math.max(...list.map((p) => p[k]))]);
+// At most about `most` sample numbers from 0 to `last`, evenly.
+function pick(last, most) {
+  const step = Math.max(1, Math.floor(last / most));
+  return Array.from({ length: Math.ceil((last + 1) / step) }, (_, k) => k * step);
 }

@@ -3,8 +3,6 @@
 import difflib
 import math
 import os
-import re
-import tomllib
 from dataclasses import fields, replace
 
 import numpy as np
@@ -16,6 +14,7 @@ from ..conventions import DEG, MM
 from ..errors import ModelError, ReadError, quoted
 from ..kernels import rotations
 from .sources import decode, read_bytes
+from .toml_text import parse_toml, shown
 
 EXPECTED = "a cell as TOML text"
 FRAME_KEYS = ("xyz_mm", "rpy_deg")
@@ -32,7 +31,7 @@ KEYS = {
 def read_cell_toml(file) -> Cell:
     """The cell in `file`. Raises ReadError."""
     data, sha256 = read_bytes(file, EXPECTED)
-    top = _Table(file, "", _parse(file, decode(file, data, EXPECTED)), KEYS[""])
+    top = _Table(file, "", parse_toml(file, decode(file, data, EXPECTED), EXPECTED), KEYS[""])
     arm_table = top.table("arm", required=True)
     arm, sources = _arm(arm_table)
     try:
@@ -52,24 +51,13 @@ def read_cell_toml(file) -> Cell:
         raise ReadError(file, error.field, error.value, error.reason) from None
 
 
-def _parse(file, text):
-    try:
-        return tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        place = re.search(r"\(at (.*)\)$", str(error))
-        reason = re.sub(r" \(at .*\)$", "", str(error))
-        raise ReadError(file, place[1] if place else "", f"text that is not TOML ({reason})", EXPECTED) from None
-    except (ValueError, RecursionError) as error:
-        raise ReadError(file, "", f"text that is not TOML ({type(error).__name__})", EXPECTED) from None
-
-
 class _Table:
     """One TOML table with known keys; every error names the file and the key's full name."""
 
     def __init__(self, file, name, values, known):
         self.file, self.name, self.values = file, name, values
         if not isinstance(values, dict):
-            raise ReadError(file, name, _shown(values), f"a table with the keys {', '.join(known)}")
+            raise ReadError(file, name, shown(values), f"a table with the keys {', '.join(known)}")
         for key in values:
             if key not in known:
                 raise self.error(key, "an unknown key", f"a known one (the nearest is {nearest(key, known)})")
@@ -91,7 +79,7 @@ class _Table:
     def text(self, key, missing=None):
         value = self.values.get(key, missing)
         if value is not None and not (isinstance(value, str) and value.strip()):
-            raise self.error(key, _shown(value), "a text that is not empty")
+            raise self.error(key, shown(value), "a text that is not empty")
         return value
 
     def number(self, key, value=None, endless=False):
@@ -102,30 +90,19 @@ class _Table:
         except OverflowError:
             number = math.nan
         if math.isnan(number) or (math.isinf(number) and not endless):
-            raise self.error(key, _shown(value), "a number")
+            raise self.error(key, shown(value), "a number")
         return number
 
     def numbers(self, key, count, value=None, what=None, endless=False):
         value = self.values[key] if value is None else value
         if not isinstance(value, list) or len(value) != count:
-            raise self.error(key, _shown(value), what or f"{count} numbers in brackets")
+            raise self.error(key, shown(value), what or f"{count} numbers in brackets")
         return np.array([self.number(key, item, endless) for item in value])
 
 
 def nearest(key, known):
     """The known word that is most like `key`."""
     return max(known, key=lambda word: difflib.SequenceMatcher(None, key.lower(), word.lower()).ratio())
-
-
-def _shown(value):
-    """A TOML value as it is named in messages."""
-    if isinstance(value, dict):
-        return "a table"
-    if isinstance(value, list):
-        return f"a list of {len(value)}"
-    if isinstance(value, bool):
-        return str(value).lower()
-    return quoted(value) if isinstance(value, str) else quoted(value)[1:-1]
 
 
 def _frame(table):
@@ -171,7 +148,7 @@ def _arm_from_rows(table):
         raise table.error("dh", "nothing", "dh = \"standard\" or \"modified\", the convention of the joint rows")
     rows = table.values["joint"]
     if not isinstance(rows, list):
-        raise table.error("joint", _shown(rows), "[[arm.joint]] rows")
+        raise table.error("joint", shown(rows), "[[arm.joint]] rows")
     for number, row in enumerate(rows, 1):
         row = _Table(table.file, f"arm.joint row {number}", row, arms.ROW_KEYS)
         row.text("name")

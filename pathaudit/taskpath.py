@@ -7,6 +7,7 @@ the column names of a timed path get their meaning.
 import hashlib
 import re
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -153,15 +154,16 @@ def assemble(header, cells, numbers, *, name, sha256, place, label=None, lines=N
     """Build a Path from named columns.
 
     header, cells: the column names and, for each, its values as given.
-    numbers(column) -> (N,) float64 that nobody else holds, raises ReadError.  place(row) -> words that name a row for the user.
+    numbers(column) -> (N,) float64, or a list of such arrays that follow each other; raises ReadError.
+    place(row) -> words that name a row for the user.
     label: the texts of the column of that name, where they are at hand already.  lines, made: the path's `source_line` and `made`.
-    What is formed on the way is formed in blocks of rows: a path of millions of samples needs little more memory than it keeps.
+    All is formed in blocks of rows: a path of millions of samples needs little more memory than it keeps.
     """
     source = _Source(header, numbers, name, place)
-    time = source.quantity("time", TIME)
+    time = np.concatenate(source.quantity("time", TIME))
     position = np.empty((len(time), 3))
     for k, c in enumerate("xyz"):
-        position[:, k] = source.quantity(f"the tool centre point's {c}", _units(c, LENGTH))
+        np.concatenate(source.quantity(f"the tool centre point's {c}", _units(c, LENGTH)), out=position[:, k])
     if len(time) < 2:
         raise ReadError(name, "", f"{len(time)} sample" + "s" * (len(time) != 1), "at least 2 samples")
     _check_time(source, time)
@@ -170,15 +172,14 @@ def assemble(header, cells, numbers, *, name, sha256, place, label=None, lines=N
     process = _process(source, len(time))
     if label is None:
         label = map(str, cells[header.index("label")]) if "label" in header else ("",) * len(time)
-    if lines is not None:
-        lines = owned(lines)
+    lines = None if lines is None else owned(lines)
     columns = tuple(header), tuple(cells)
     return Path(owned(time), owned(position), owned(rotation), spin_free, owned(process), tuple(label), *columns, str(name), sha256, lines, tuple(made))
 
 
 @dataclass(frozen=True)
 class _Source:
-    """The named columns of one source and the words for its places."""
+    """The named columns of one source and the words for its places. A column comes in blocks of rows, the same for every column."""
 
     header: tuple
     numbers: Callable
@@ -190,11 +191,14 @@ class _Source:
 
     def column(self, column):
         values = self.numbers(column)
-        bad = ~np.isfinite(values)
-        if bad.any():
-            row = int(np.argmax(bad))
-            raise ReadError(self.name, f"{self.place(row)}, column {column}", f"{values[row]}", "a finite number")
-        return values
+        pieces = [values] if isinstance(values, np.ndarray) else values
+        blocks = [piece[at : at + BLOCK] for piece in pieces for at in range(0, len(piece) or 1, BLOCK)]
+        for start, block in _numbered(blocks):
+            bad = ~np.isfinite(block)
+            if bad.any():
+                row = int(np.argmax(bad))
+                raise ReadError(self.name, f"{self.place(start + row)}, column {column}", f"{block[row]}", "a finite number")
+        return blocks
 
     def quantity(self, title, units):
         """The column that gives one quantity, converted; `units` maps column names to conversions."""
@@ -203,7 +207,7 @@ class _Source:
             raise ReadError(self.name, "header", f"both {given[0]} and {given[1]}", f"{title} once")
         if not given:
             raise ReadError(self.name, "header", self._missing(units), f"{title} as {_either(units)}")
-        return units[given[0]](self.column(given[0]))
+        return [units[given[0]](block) for block in self.column(given[0])]
 
     def _missing(self, wanted):
         """What to say was found where none of the `wanted` columns is there: a column that looks like a try at one."""
@@ -213,6 +217,14 @@ class _Source:
         if near:
             return f"a column {quoted(near[0])}" + (" without a unit" if near[0].lower() in names else "")
         return f"the columns {quoted(', '.join(self.header))}"
+
+
+def _numbered(blocks):
+    """(first row, block) of blocks of rows that follow each other."""
+    start = 0
+    for block in blocks:
+        yield start, block
+        start += len(block)
 
 
 def _units(name, units):
@@ -236,26 +248,22 @@ def _check_time(source, time):
 
 
 def _check_position(source, position):
-    for rows in _blocks(len(position)):
-        far = ~(np.abs(position[rows]) <= FARTHEST)
+    for start in range(0, len(position), BLOCK):
+        far = ~(np.abs(position[start : start + BLOCK]) <= FARTHEST)
         if far.any():
-            row, c = np.argwhere(far)[0] + (rows.start, 0)
+            row, c = np.argwhere(far)[0] + (start, 0)
             raise source.error(row, f"a tool centre point at {position[row, c]:g} m", f"coordinates within {FARTHEST:g} m (check the unit of the column)")
 
 
 def _process(source, samples):
     if "process" not in source.header:
         return np.ones(samples, dtype=bool)
-    process = source.column("process")
+    process = np.concatenate(source.column("process"))
     wrong = (process != 0) & (process != 1)
     if wrong.any():
         row = int(np.argmax(wrong))
         raise source.error(row, f"process = {process[row]:g}", "1 while the process runs or 0 on an air move")
     return process != 0
-
-
-def _blocks(samples):
-    return [slice(start, min(start + BLOCK, samples)) for start in range(0, samples, BLOCK)]
 
 
 def _rotation(source, samples):
@@ -271,30 +279,45 @@ def _rotation(source, samples):
         raise _no_orientation(source, groups, there)
     rotation = np.empty((samples, 3, 3))
     if whole == ["angles"]:
-        rpy = [source.quantity(f"the turn about {c.upper()}", names) for c, names in zip("xyz", angles)]
-        for rows in _blocks(samples):
-            rotation[rows] = rotations.matrix_from_rpy(np.stack([angle[rows] for angle in rpy], axis=-1))
+        columns = [source.quantity(f"the turn about {c.upper()}", names) for c, names in zip("xyz", angles)]
+        _in_blocks(lambda start, *rpy: _put(rotation, start, rotations.matrix_from_rpy(np.stack(rpy, axis=-1))), columns)
     elif whole == ["quaternion"]:
-        for rows, wxyz in _unit(source, QUATERNION, "a quaternion"):
-            _frames_from_wxyz(wxyz, rotation[rows])
+        columns = [source.column(c) for c in QUATERNION]
+        _in_blocks(lambda start, *q: _frames_from_wxyz(_unit(source, start, q, QUATERNION, "a quaternion"), rotation[start : start + len(q[0])]), columns)
     else:
-        for rows, axis in _unit(source, AXIS, "a tool axis"):
-            rotation[rows] = _carried_on(axis, rotation[rows.start - 1] if rows.start else None)
+        start = 0
+        for axis in zip(*(source.column(c) for c in AXIS)):
+            axes = np.stack(_unit(source, start, axis, AXIS, "a tool axis"), axis=-1)
+            start = _put(rotation, start, _carried_on(axes, rotation[start - 1] if start else None))
     return rotation, whole == ["axis"]
 
 
-def _unit(source, columns, title):
-    """(rows, one array a column) for each block of rows, as vectors of length 1: what is within the tolerance of 1 is scaled to it."""
-    values = [source.column(c) for c in columns]
-    for rows in _blocks(len(values[0])):
-        vectors = [value[rows] for value in values]
-        with np.errstate(over="ignore"):
-            length = np.sqrt(sum(value * value for value in vectors))
-        bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
-        if bad.any():
-            row = int(np.argmax(bad))
-            raise source.error(row + rows.start, f"{title} of length {length[row]:.6g} ({', '.join(columns)})", "length 1")
-        yield rows, [value / length for value in vectors]
+def _put(out, start, values):
+    """Write rows from `start` on; returns the row after them."""
+    out[start : start + len(values)] = values
+    return start + len(values)
+
+
+def _in_blocks(work, columns):
+    """work(first row, one block a column) for each block of rows; many blocks are shared by two threads."""
+    jobs = [(start, blocks) for (start, _), blocks in zip(_numbered(columns[0]), zip(*columns))]
+    if len(jobs) < 8:
+        for start, blocks in jobs:
+            work(start, *blocks)
+        return
+    with ThreadPoolExecutor(2) as pool:
+        list(pool.map(lambda job: work(job[0], *job[1]), jobs))
+
+
+def _unit(source, start, vectors, columns, title):
+    """One block of vectors, an array a component, with length 1: what is within the tolerance of 1 is scaled to it."""
+    with np.errstate(over="ignore"):
+        length = np.sqrt(sum(value * value for value in vectors))
+    bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
+    if bad.any():
+        row = int(np.argmax(bad))
+        raise source.error(start + row, f"{title} of length {length[row]:.6g} ({', '.join(columns)})", "length 1")
+    return [value / length for value in vectors]
 
 
 def _frames_from_wxyz(wxyz, out):
@@ -307,12 +330,11 @@ def _frames_from_wxyz(wxyz, out):
             out[:, i, j] = entry
 
 
-def _carried_on(axis, before):
-    """Frames on the axes (three arrays), each reached from the one before by the least turn; the first from the frame `before`.
+def _carried_on(axes, before):
+    """Frames on the axes (M, 3), each reached from the one before by the least turn; the first from the frame `before`.
 
     The least turn does not depend on the spin: frames carried from any first frame differ from these by one spin about their +Z.
     """
-    axes = np.stack(axis, axis=-1)
     if before is None:
         return rotations.carry_frames(axes)
     frames = rotations.carry_frames(np.concatenate([before[None, :, 2], axes]))

@@ -6,9 +6,14 @@ def read_path(file):
 
     >>> path = read_path("seam.csv")  # doctest: +SKIP
     """
-    from .timed_csv import read_timed_csv
+    from dataclasses import replace
 
-    return read_timed_csv(file)
+    from .sources import hash_meanwhile, read_all
+    from .timed_csv import EXPECTED, read_timed_csv
+
+    data = read_all(file, EXPECTED)
+    with hash_meanwhile(data) as sha256:
+        return replace(read_timed_csv(data, file, ""), sha256=sha256())
 
 
 def read_cell(file):

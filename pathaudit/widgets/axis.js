@@ -3,7 +3,7 @@
 import { clamp } from "./data.js";
 
 // places: where the kept samples lie on it. Spans come in seconds after the first sample, marks by sample number; both find their place here.
-export function axisOf(facts, data, far) {
+export function rowAxis(facts, data, far) {
   const time = data.time_s[0], places = far ? data.distance_mm[0] : time;
   return {
     far, places, size: places.at(-1) || 1, offset: far ? 0 : facts.offset_s, name: far ? "distance, mm" : "time, s",

@@ -1,7 +1,7 @@
 // The audit on show: joins the parts of the timeline. Knows nothing of where the data comes from (widget.js).
 
 import { armPanel } from "./armpanel.js";
-import { axisOf } from "./axis.js";
+import { rowAxis } from "./axis.js";
 import { rowChoice } from "./choice.js";
 import { clamp, fixed, nearest } from "./data.js";
 import { button, element, focusable } from "./dom.js";
@@ -75,7 +75,7 @@ export function mount(root, ask, onCursor) {
 
   function show(facts, data) {
     const sample = state.data ? ui.sample() : null, ends = state.place?.zoomed ? state.span.map(sampleAt) : null;
-    Object.assign(state, { facts, data, axis: axisOf(facts, data, state.far), selected: -1, width: 0 });
+    Object.assign(state, { facts, data, axis: rowAxis(facts, data, state.far), selected: -1, width: 0 });
     if (!state.dragging) state.tried = null;
     state.i = sample === null ? firstPlace(facts) : at(sample);
     state.span = ends ? ends.map(state.axis.ofSample) : [0, state.axis.size];
@@ -104,7 +104,8 @@ export function mount(root, ask, onCursor) {
     const { width, facts, axis, span, pins } = state;
     if (!width) return;
     const wide = width >= 760, rowsWidth = wide ? Math.round(width * 0.63) : width;
-    const { height } = state.place = layOut(facts, choice.groups(), axis, rowsWidth, span, pins);
+    const { height, left, plot, process, lanes, pins: flags } = state.place = layOut(facts, choice.groups(), axis, rowsWidth, span, pins);
+    root.dataset.place = JSON.stringify({ span, left, plot, process, lanes: lanes.map(({ index, y, height: tall }) => [index, y, tall]), pins: flags.map((pin) => pin.x) });
     Object.assign(rows.style, { width: `${rowsWidth}px`, height: `${height}px` });
     const size = wide ? [width - rowsWidth - 10, clamp(height, 320, 620)] : [width, 300];
     if (state.arm !== String(size)) arm.fit(...size);
@@ -162,7 +163,7 @@ export function mount(root, ask, onCursor) {
     if (distance.disabled) return false;
     const ends = state.span.map(sampleAt), { zoomed } = state.place;
     state.far = !state.far;
-    state.axis = axisOf(state.facts, state.data, state.far);
+    state.axis = rowAxis(state.facts, state.data, state.far);
     const [from, to] = zoomed ? ends.map(state.axis.ofSample) : [0, state.axis.size];
     showSpan(from, to - from);
   }
@@ -204,14 +205,16 @@ export function mount(root, ask, onCursor) {
       state.colours = theme(root);
       drawRows(rowsBase, place, state.colours, facts, data, state.marks);
     }
-    drawOverlay(rowsOver, place, state.colours, data, { i, finding: state.selected, stretch: stretch(), factor: factor() });
+    const marked = stretch();
+    drawOverlay(rowsOver, place, state.colours, data, { i, finding: state.selected, stretch: marked, factor: factor() });
     arm.paint(state.colours, i, stale);
     const { found, words } = readout.show(facts, data, i);
     findings.mark(found);
     rows.setAttribute("aria-valuemax", facts.duration_s);
     rows.setAttribute("aria-valuenow", data.time_s[0][i].toFixed(3));
-    rows.setAttribute("aria-valuetext", words);
+    rows.setAttribute("aria-valuetext", marked ? `${words}, ${marked.words}` : words);
     root.dataset.cursor = i;
+    root.dataset.marked = state.chosen ? `${state.chosen.first} ${state.chosen.last}` : "";
     root.dataset.painted = Number(root.dataset.painted || 0) + 1;
   }
 

@@ -162,22 +162,40 @@ def test_the_numbers_do_not_jump_while_scrubbing(opened, audit):
     assert all(np.array_equal(lefts[0][:, 1], other[:, 1]) for other in lefts)
 
 
+def placed(page):
+    """Where things stand in the rows: the span on the axis, the plot's left edge and width, lanes as [row, top, height], the process bar, flags."""
+    cursor(page)
+    return json.loads(page.locator(".pa").get_attribute("data-place"))
+
+
 def span(page):
-    """First and last place of the rows, as the readout says them, from a drag in the rows to both ends and beyond."""
-    box, ends = page.locator(".pa-rows").bounding_box(), []
-    for x in (box["x"] - 50, box["x"] + box["width"] + 50):
-        page.mouse.move(box["x"] + 0.5 * box["width"], box["y"] + 300)
-        page.mouse.down()
-        page.mouse.move(x, box["y"] + 300, steps=2)
-        ends.append(float(readout(page)[0]))
-        page.mouse.up()
-    return ends
+    return placed(page)["span"]
+
+
+def marked(page):
+    """First and last sample of the marked stretch, or []."""
+    cursor(page)
+    return [int(word) for word in page.locator(".pa").get_attribute("data-marked").split()]
+
+
+def point(page, value, y):
+    """Where a place on the axis is on the screen, y px below the top of the rows."""
+    box, place = page.locator(".pa-rows").bounding_box(), placed(page)
+    low, high = place["span"]
+    return box["x"] + place["left"] + place["plot"] * (value - low) / (high - low), box["y"] + y
+
+
+def drag(page, start, end):
+    page.mouse.move(*start)
+    page.mouse.down()
+    page.mouse.move(*end, steps=4)
+    page.mouse.up()
 
 
 def test_zoom_keeps_the_cursor_in_sight(opened, audit):
     page = opened(audit)
     whole = page.get_by_role("button", name="Show the whole path")
-    assert whole.is_disabled() and span(page) == [0.0, 14.0]
+    assert whole.is_disabled() and span(page) == pytest.approx([0.0, 14.0])
     page.locator(".pa-rows").focus()
     for key in ("Home", *["PageUp"] * 4, "+", "+"):
         page.keyboard.press(key)
@@ -192,7 +210,7 @@ def test_zoom_keeps_the_cursor_in_sight(opened, audit):
     low, high = span(page)
     assert high - low == pytest.approx(7.0, abs=0.02)
     whole.click()
-    assert span(page) == [0.0, 14.0] and whole.is_disabled()
+    assert span(page) == pytest.approx([0.0, 14.0]) and whole.is_disabled()
     for _ in range(20):
         page.locator(".pa-rows").press("+")
     assert span(page)[0] <= span(page)[1]
@@ -209,6 +227,309 @@ def test_a_short_finding_is_shown_large(opened):
     assert low < short.t_start < short.t_end < high and 5 * (short.t_end - short.t_start) < high - low < 20 * (short.t_end - short.t_start)
 
 
+def test_the_rows_end_where_they_say(opened, audit):
+    page = opened(audit)
+    page.locator(".pa-rows").focus()
+    page.keyboard.press("+")
+    for end in span(page):
+        page.mouse.click(*point(page, end, 300))
+        assert float(readout(page)[0]) == pytest.approx(end, abs=0.01)
+
+
+def press(page, *keys):
+    page.locator(".pa-rows").focus()
+    for key in keys:
+        page.keyboard.press(key)
+
+
+def lanes(page):
+    return [row for row, _, _ in placed(page)["lanes"]]
+
+
+FOLDED = [*range(9)]
+
+
+@pytest.fixture(scope="module")
+def tight():
+    return fake_audit(2000, tight=True)
+
+
+def test_a_joint_with_a_hidden_finding_is_unfolded_at_first(opened, tight):
+    page = opened(tight)
+    assert lanes(page) == [0, 10, 1, 16, 2, 3, 13, 4, 19, 5, 6, 7, 8]
+    press(page, "u")
+    assert lanes(page) == FOLDED
+    press(page, "u")
+    assert lanes(page) == [row for j in range(6) for row in (9 + j, j, 15 + j)] + [6, 7, 8]
+
+
+def test_a_click_on_a_joints_name_folds_it(opened, tight):
+    page = opened(tight)
+    box = page.locator(".pa-rows").bounding_box()
+    at = {row: y + height / 2 for row, y, height in placed(page)["lanes"]}
+    where = cursor(page)
+    page.mouse.click(box["x"] + 20, box["y"] + at[1])
+    assert lanes(page) == [0, 1, 2, 3, 13, 4, 19, 5, 6, 7, 8]
+    page.mouse.click(box["x"] + 20, box["y"] + at[0])
+    assert lanes(page)[:4] == [9, 0, 15, 1] and cursor(page) == where
+
+
+def test_a_folded_lane_still_shows_the_findings_of_those_behind_it(opened):
+    audit = fake_audit(2000, tight=True)
+    base = ".pa-rows canvas:nth-child(1)"
+    page = opened(audit)
+    press(page, "u")
+    with_marks = pixels(page, base)
+    audit.finding_list = tuple(f for f in audit.finding_list if f.kind not in ("joint travel", "joint acceleration"))
+    page = opened(audit)
+    assert lanes(page) == FOLDED and pixels(page, base) != with_marks
+
+
+def test_rows_are_chosen_ordered_and_folded_by_keyboard(opened, tight):
+    page = opened(tight)
+    press(page, "r")
+    box = page.get_by_role("dialog", name="Which rows are shown")
+    assert box.is_visible() and box.get_by_label("j1", exact=True).evaluate("(e) => e === document.activeElement")
+    page.keyboard.press("Space")
+    assert lanes(page)[0] == 10 and box.is_visible()
+    page.keyboard.press("Space")
+    assert lanes(page)[0] == 0
+    for name, expected in (("Unfold j1", [9, 0, 15]), ("Fold j1", [0, 10, 1]), ("Move j1 down", [10, 1, 16, 0]), ("Move j1 up", [0, 10, 1])):
+        box.get_by_role("button", name=name).focus()
+        page.keyboard.press("Enter")
+        assert lanes(page)[:len(expected)] == expected and box.is_visible(), name
+    assert box.get_by_label("j1", exact=True).evaluate("(e) => e === document.activeElement")      # where the pressed button cannot be pressed again
+    box.get_by_role("button", name="Move factor up").press("Enter")
+    assert lanes(page)[-2:] == [8, 7]
+    for name in ("tool speed", "sigma_min", "j3"):
+        box.get_by_label(name, exact=True).uncheck()
+    assert set(FOLDED) - set(lanes(page)) == {2, 6, 7}
+    box.get_by_role("button", name="Show all rows in the first order").press("Enter")
+    assert lanes(page) == [0, 10, 1, 16, 2, 3, 13, 4, 19, 5, 6, 7, 8]
+    for box_of in [f"j{k}" for k in range(1, 7)] + ["sigma_min", "tool speed", "factor"]:
+        box.get_by_label(box_of, exact=True).uncheck()
+    assert lanes(page) == []
+    page.keyboard.press("Escape")
+    assert box.is_hidden() and page.locator(".pa-rows").evaluate("(e) => e === document.activeElement")
+
+
+def test_the_help_lists_the_keys_and_gives_the_focus_back(opened, audit):
+    page = opened(audit)
+    press(page, "?")
+    box = page.get_by_role("dialog", name="All keys")
+    assert box.is_visible() and "next finding" in box.inner_text() and box.locator("tr").count() >= 20
+    page.keyboard.press("Escape")
+    assert box.is_hidden() and page.locator(".pa-rows").evaluate("(e) => e === document.activeElement")
+    page.get_by_role("button", name="All keys").click()
+    assert box.is_visible()
+    page.mouse.click(5, 5)
+    assert box.is_hidden()
+
+
+def test_the_distance_axis_gives_dwells_no_width(opened):
+    audit = fake_audit(2000)
+    still = slice(800, 1200)
+    audit.path.distance[still] = audit.path.distance[800]
+    audit.path.distance[1200:] -= audit.path.distance[1200] - audit.path.distance[800]
+    page = opened(audit)
+    press(page, "d")
+    total = 1e3 * audit.path.distance[-1]
+    assert span(page) == pytest.approx([0, total], rel=1e-4)
+    assert page.get_by_role("button", name="Rows over distance").get_attribute("aria-pressed") == "true"
+    seen = []
+    for share in (0.1, 0.5, 0.9):
+        page.mouse.click(*point(page, share * total, 300))
+        seen.append(float(readout(page)[1]))
+    assert seen == pytest.approx([0.1 * total, 0.5 * total, 0.9 * total], abs=0.01 * total)
+    press(page, "+", "+")
+    low, high = span(page)
+    place = float(readout(page)[1])
+    assert high - low == pytest.approx(total / 4, rel=1e-3) and low <= place <= high
+    press(page, "d")
+    times = span(page)
+    distance = 1e3 * audit.path.distance
+    assert np.interp(times, audit.time, distance) == pytest.approx([low, high], abs=0.01 * total)
+    press(page, "0", "d", "Home", *["PageUp"] * 4)
+    first = cursor(page)
+    press(page, "ArrowRight")
+    assert cursor(page) == first + 1 and float(readout(page)[0]) > 0      # inside a dwell the keys still step
+
+
+def test_a_stretch_is_marked_by_dragging_with_shift_and_its_ends_move(opened, audit):
+    page = opened(audit)
+    where = cursor(page)
+    page.keyboard.down("Shift")
+    drag(page, point(page, 9.0, 300), point(page, 5.0, 300))
+    page.keyboard.up("Shift")
+    first, last = marked(page)
+    assert audit.time[[first, last]] == pytest.approx([5.0, 9.0], abs=0.05) and cursor(page) == where
+    assert f"marked: {audit.time[last] - audit.time[first]:.2f} s, {1e3 * (audit.path.distance[last] - audit.path.distance[first]):.1f} mm" \
+        in page.locator(".pa-rows").get_attribute("aria-valuetext")
+    drag(page, point(page, audit.time[last], 300), point(page, 11.0, 320))
+    assert marked(page)[0] == first and audit.time[marked(page)[1]] == pytest.approx(11.0, abs=0.05)
+    drag(page, point(page, audit.time[first], 300), point(page, 13.0, 320))      # no further than the other end
+    assert marked(page) == [marked(page)[1]] * 2
+    press(page, "Escape")
+    assert marked(page) == []
+    drag(page, point(page, 9.0, 300), point(page, 5.0, 300))
+    assert marked(page) == [] and float(readout(page)[0]) == pytest.approx(5.0, abs=0.05)
+
+
+def test_the_marking_button_makes_dragging_mark(opened, audit):
+    page = opened(audit)
+    page.get_by_role("button", name="Dragging in the rows marks").click()
+    drag(page, point(page, 2.0, 300), point(page, 3.0, 300))
+    assert audit.time[marked(page)] == pytest.approx([2.0, 3.0], abs=0.05)
+    page.mouse.click(*point(page, 8.0, 300))
+    assert float(readout(page)[0]) == pytest.approx(8.0, abs=0.05) and len(marked(page)) == 2      # a press without a drag is a place
+    page.get_by_role("button", name="Unmark the stretch").click()
+    assert marked(page) == [] and page.get_by_role("button", name="Unmark the stretch").is_disabled()
+    press(page, "m")
+    drag(page, point(page, 2.0, 300), point(page, 3.0, 300))
+    assert marked(page) == []
+
+
+def test_keys_mark_a_stretch(opened, audit):
+    page = opened(audit)
+    press(page, "Home", "PageUp", "[")
+    assert marked(page) == [200, 200]
+    press(page, "PageUp", "]")
+    assert marked(page) == [200, 400]
+    press(page, "PageUp", "[")
+    assert marked(page) == [600, 600]
+    press(page, "PageDown", "PageDown", "]")
+    assert marked(page) == [200, 200]
+    finding = next(f for f in audit.finding_list if f.kind == "joint speed")
+    page.locator(".pa-findings tbody tr").nth(audit.finding_list.index(finding)).click()
+    press(page, "s")
+    assert marked(page) == [finding.first, finding.last]
+    press(page, "0", "f")
+    low, high = span(page)
+    assert low < finding.t_start < finding.t_end < high and high - low < 14 / 3
+    press(page, "Escape")
+    assert marked(page) == []
+
+
+def test_the_wheel_is_the_pages_until_the_timeline_has_the_focus(opened, audit):
+    page = opened(audit, height=500)
+    page.mouse.move(*point(page, 4.0, 200))
+    page.mouse.wheel(0, 100)
+    page.wait_for_function("() => scrollY > 50")
+    assert span(page) == pytest.approx([0, 14])
+    page.evaluate("scrollTo(0, 0)")
+    press(page, "Home")
+    page.mouse.move(*point(page, 4.0, 200))
+    page.mouse.wheel(0, -300)
+    page.wait_for_function("() => JSON.parse(document.querySelector('.pa').dataset.place).span[0] > 0")
+    low, high = span(page)
+    assert high - low == pytest.approx(14 * 1.002 ** -300, rel=1e-3) and (4 - low) / (high - low) == pytest.approx(4 / 14, abs=0.02)
+    assert page.evaluate("scrollY") == 0
+    page.mouse.wheel(60, 0)
+    page.wait_for_function("(low) => JSON.parse(document.querySelector('.pa').dataset.place).span[0] > low", arg=low)
+    moved, end = span(page)
+    assert end - moved == pytest.approx(high - low)
+
+
+def test_a_pinch_zooms_without_the_focus(opened, audit):
+    page = opened(audit)
+    x, y = point(page, 7.0, 300)
+    page.locator(".pa-rows").dispatch_event("wheel", {"deltaY": -200, "ctrlKey": True, "clientX": x, "clientY": y, "bubbles": True, "cancelable": True})
+    low, high = span(page)
+    assert high - low == pytest.approx(14 * 1.002 ** -200, rel=1e-3)
+    page.evaluate("""([x, y]) => {
+        const rows = document.querySelector('.pa-rows');
+        rows.setPointerCapture = () => {}; rows.hasPointerCapture = () => true;
+        const send = (type, pointerId, clientX) => rows.dispatchEvent(new PointerEvent(type, { pointerId, clientX, clientY: y, buttons: 1, bubbles: true }));
+        send('pointerdown', 7, x - 50); send('pointerdown', 8, x + 50); send('pointermove', 7, x - 100); send('pointermove', 8, x + 100);
+        send('pointerup', 7, x); send('pointerup', 8, x);
+    }""", [x, y])
+    closer = span(page)
+    assert closer[1] - closer[0] == pytest.approx((high - low) / 2, rel=1e-3)
+
+
+def test_the_window_on_the_strip_slides_the_rows(opened, audit):
+    page = opened(audit)
+    press(page, "Home", "+", "+")
+    assert span(page) == pytest.approx([0, 3.5], abs=0.01)
+    box, place = page.locator(".pa-rows").bounding_box(), placed(page)
+    on_strip = lambda time: (box["x"] + place["left"] + place["plot"] * time / 14, box["y"] + place["process"])      # noqa: E731
+    drag(page, on_strip(1.0), on_strip(6.0))
+    assert span(page) == pytest.approx([5.0, 8.5], abs=0.05) and cursor(page) == 0
+    page.mouse.click(*on_strip(6.0))
+    assert float(readout(page)[0]) == pytest.approx(6.0, abs=0.05)
+    press(page, ".")
+    assert span(page) == pytest.approx([5.875, 9.375], abs=0.05)
+    press(page, ",", ",")
+    assert span(page) == pytest.approx([4.125, 7.625], abs=0.05)
+    page.mouse.click(*on_strip(12.0))
+    low, high = span(page)
+    assert float(readout(page)[0]) == pytest.approx(12.0, abs=0.05) and low < 12 < high
+
+
+def listed(page):
+    return [int(row.split("\t")[0]) for row in page.locator(".pa-findings tbody tr").all_inner_texts()]
+
+
+def test_the_findings_are_sorted_and_filtered(opened, tight):
+    page = opened(tight)
+    found = {k: f for k, f in enumerate(tight.finding_list, 1)}
+    heads = page.locator(".pa-findings th")
+    assert listed(page) == list(found) and heads.nth(0).get_attribute("aria-sort") == "ascending"
+    heads.nth(3).get_by_role("button").click()
+    assert [found[k].t_start for k in listed(page)] == sorted(f.t_start for f in found.values())
+    heads.nth(1).get_by_role("button").focus()
+    page.keyboard.press("Enter")
+    assert [found[k].severity for k in listed(page)] == sorted(f.severity for f in found.values())
+    page.keyboard.press("Enter")
+    assert heads.nth(1).get_attribute("aria-sort") == "descending" and heads.nth(3).get_attribute("aria-sort") == "none"
+    assert [found[k].severity for k in listed(page)] == sorted((f.severity for f in found.values()), reverse=True)
+    heads.nth(2).get_by_role("button").click()
+    assert [f"{found[k].kind} {found[k].joint or ''}" for k in listed(page)] == sorted(f"{f.kind} {f.joint or ''}" for f in found.values())
+    page.get_by_label("Which findings are listed").select_option("warn")
+    assert [found[k].severity for k in listed(page)] == ["warn"] * len(listed(page)) and 0 < len(listed(page)) < len(found)
+    page.get_by_label("Which findings are listed").select_option("all")
+    page.get_by_label("List only findings with these words").fill("TRAVEL")
+    assert [found[k].kind for k in listed(page)] == ["joint travel"] and f"1 of {len(found)}" in page.locator(".pa-filter").inner_text()
+    (k,) = listed(page)
+    page.locator(".pa-findings tbody tr").press("Enter")
+    assert cursor(page) == found[k].worst
+    page.get_by_label("List only findings with these words").fill("no such words")
+    assert "No finding is like this." in page.locator(".pa-findings").inner_text()
+
+
+def test_arrows_walk_through_the_findings(opened, tight):
+    page = opened(tight)
+    rows = page.locator(".pa-findings tbody tr")
+    rows.nth(0).focus()
+    for _ in range(2):
+        page.keyboard.press("ArrowDown")
+    page.keyboard.press("Space")
+    assert cursor(page) == tight.finding_list[2].worst and rows.nth(2).get_attribute("aria-selected") == "true"
+    page.keyboard.press("ArrowUp")
+    page.keyboard.press("Enter")
+    assert cursor(page) == tight.finding_list[1].worst
+
+
+def test_going_to_a_finding_fits_it(opened, tight):
+    page = opened(tight)
+    k = next(k for k, f in enumerate(tight.finding_list) if f.kind == "near-singular")
+    f = tight.finding_list[k]
+    page.locator(".pa-findings tbody tr").nth(k).click()
+    low, high = span(page)
+    assert low < f.t_start < f.t_end < high and high - low == pytest.approx(1.6 * (f.t_end - f.t_start), rel=0.02)
+
+
+def test_what_the_tool_can_hardly_do_is_said_where_it_is_lost(opened, audit):
+    page = opened(audit)
+    page.locator(".pa-findings tbody tr").nth(next(k for k, f in enumerate(audit.finding_list) if f.kind == "near-singular")).click()
+    cursor(page)
+    assert page.locator(".pa-lost b").inner_text().startswith("can hardly ")
+    assert "the tool can hardly " in page.locator(".pa-rows").get_attribute("aria-valuetext")
+    audit_good = fake_audit(500, n=12)
+    page = opened(audit_good)
+    assert page.locator(".pa-lost b").inner_text() == "none"
+
+
 def test_the_arm_turns_and_comes_back(opened, audit):
     page = opened(audit)
     stage = ".pa-arm canvas:nth-child(1)"
@@ -223,7 +544,7 @@ def test_the_arm_turns_and_comes_back(opened, audit):
     page.locator(".pa-arm").focus()
     page.keyboard.press("ArrowLeft")
     assert pixels(page, stage) != dragged
-    page.keyboard.press("Home")
+    page.keyboard.press("4")
     assert pixels(page, stage) == first
 
 

@@ -19,6 +19,7 @@ TURN = 0.5  # mm a degree
 SLIP = 0.05  # mm a mm: a move of 5 mm is as likely as a slip of 100 mm along the path
 NEARBY = 5.0  # mm along the path, before and behind: the neighbourhood that tells the direction and the speed
 SAME_WAY = 0.5  # cosine of the largest angle between the directions of the path then and now
+AHEAD = 0.8  # cosine of the smallest angle between the path and the way to a place that lies beside it
 GONE = 50.0  # mm: farther away it is another place
 MOVED = 0.2  # mm, above what rounded columns do
 TURNED = 0.3  # degrees, likewise
@@ -193,39 +194,42 @@ class _Track:
         here, axis = np.array(place.position_mm), np.array(place.axis if place.axis else (0.0, 0.0, 0.0))
         length, direction = self.pieces
         k = np.flatnonzero((np.abs(self.position[:-1] - here) <= GONE + length[:, None]).all(axis=1))
-        share = self._shares(k, here, axis)
-        near = np.linalg.norm(self.position[k] + (share * length[k])[:, None] * direction[k] - here, axis=1)
+        share = np.clip(self._shares(k, here, axis, place.at_s), 0.0, 1.0)
+        off = here - self.position[k] - (share * length[k])[:, None] * direction[k]
+        near = np.linalg.norm(off, axis=1)
         turned = _angles(self.axis[k] + share[:, None] * (self.axis[k + 1] - self.axis[k]), axis)
         along = self.along[k] + share * length[k]
         slip = np.abs(along - at_mm)
         if place.left_mm is not None:
             slip = np.minimum(slip, np.abs(self.along[-1] - along - place.left_mm))
         cost = near + TURN * turned + SLIP * slip
-        cost[(near > GONE) | ~self._same_way(place, along)] = np.inf
+        cost[(near > GONE) | ~self._alike(place, along, off, near)] = np.inf
         if not len(cost) or not np.isfinite(cost.min()):
             return None
         best = self._waiting(np.flatnonzero(cost <= cost.min() + 1e-9), k, place)
         sample = int(k[best] + (share[best] > 0.5))
-        slack = self._slack(int(k[best]))
-        return _Spot(sample, float(np.interp(share[best], [0, 1], self.time[k[best] : k[best] + 2])), float(along[best]), float(near[best]),
-                     float(turned[best]), self.speed(along[best]), *slack)
+        time = np.interp(share[best], [0, 1], self.time[k[best] : k[best] + 2])
+        return _Spot(sample, float(time), float(along[best]), float(near[best]), float(turned[best]), self.speed(along[best]), *self._slack(int(k[best])))
 
-    def _shares(self, k, here, axis):
-        """(len(k),) where on each piece, 0 to 1, the place comes nearest; where the tool point rests, where the axis does."""
+    def _shares(self, k, here, axis, at_s=None):
+        """(len(k),) where on each piece, 0 to 1, the place comes nearest; where the tool point rests, where the axis does; else by the time."""
         length, direction = self.pieces
-        moving = length[k] > 1e-6
-        turn = self.axis[k + 1] - self.axis[k]
+        turn, step = self.axis[k + 1] - self.axis[k], self.time[k + 1] - self.time[k]
         turning = np.einsum("ij,ij->i", turn, turn)
-        by_point = np.einsum("ij,ij->i", here - self.position[k], direction[k]) / np.where(moving, length[k], 1.0)
+        by_point = np.einsum("ij,ij->i", here - self.position[k], direction[k]) / np.where(length[k] > 1e-6, length[k], 1.0)
         by_axis = np.einsum("ij,ij->i", axis - self.axis[k], turn) / np.where(turning > 0, turning, 1.0)
-        return np.clip(np.where(moving, by_point, by_axis), 0.0, 1.0)
+        by_time = 0.0 if at_s is None else (at_s - self.time[k]) / step
+        return np.where(length[k] > 1e-6, by_point, np.clip(np.where(turning > 0, by_axis, by_time), 0.0, 1.0))
 
-    def _same_way(self, place, along):
+    def _alike(self, place, along, off, near):
+        """(len(along),) where the path goes the same way as it did, and the place lies beside it, not before it or behind it."""
+        way = self.at(along + NEARBY) - self.at(along - NEARBY)
+        size = np.linalg.norm(way, axis=1)
+        beside = (near < 1.0) | (np.abs(np.einsum("ij,ij->i", off, way)) <= AHEAD * near * size)
         if place.before_mm is None or place.after_mm is None:
-            return np.ones(len(along), dtype=bool)
-        then, now_ = np.array(place.after_mm) - np.array(place.before_mm), self.at(along + NEARBY) - self.at(along - NEARBY)
-        size = np.linalg.norm(then) * np.linalg.norm(now_, axis=1)
-        return now_ @ then >= SAME_WAY * size - 1e-9
+            return beside
+        then = np.array(place.after_mm) - np.array(place.before_mm)
+        return beside & (way @ then >= SAME_WAY * np.linalg.norm(then) * size - 1e-9)
 
     def _waiting(self, alike, k, place):
         """Of pieces that are as good as each other, as where the tool waits, the one nearest in time."""
@@ -241,7 +245,7 @@ class _Track:
         around = slice(max(0, k - 5), k + 6)
         moving = length[around][length[around] > 1e-6]
         usual = float(np.median(moving)) if len(moving) else 0.0
-        bends = [np.radians(min(45.0, _angles(direction[i], direction[k]))) for i in (k - 1, k + 1) if 0 <= i < len(length)]
+        bends = [np.radians(min(60.0, _angles(direction[i], direction[k]))) for i in (k - 1, k + 1) if 0 <= i < len(length)]
         near = 0.0
         if len(bends) == 2 and min(bends) > 0 and length[k] <= 3 * usual:
             first, second = np.tan(bends)
@@ -252,9 +256,9 @@ class _Track:
         here = np.array(place.position_mm)
         length, direction = self.pieces
         k = np.arange(len(length))
-        share = self._shares(k, here, np.zeros(3))
+        share = np.clip(self._shares(k, here, np.zeros(3)), 0.0, 1.0)
         near = np.linalg.norm(self.position[:-1] + (share * length)[:, None] * direction - here, axis=1).min()
-        return f"the path does not come nearer than {near:.0f} mm." if near > GONE else "the path no longer passes it in this direction."
+        return f"the path does not come nearer than {near:.0f} mm." if near > GONE else "the path does not pass it as it did."
 
 
 def _angles(a, b):

@@ -64,7 +64,7 @@ def _words(plan, b, locked):
     slow, path = slowed_stretches(np.sqrt(b)), plan.rates.motion.path
     if not slow:
         return "Nothing is slowed: the path runs as programmed."
-    length = 1000.0 * sum(path.distance[last] - path.distance[first] for first, last in slow)
+    length = 1000.0 * sum(path.distance[min(last + 1, path.samples - 1)] - path.distance[max(first - 1, 0)] for first, last in slow)
     k = int(np.argmin(b))
     words = f"Slows {length:.0f} mm of the path, down to {100 * np.sqrt(b[k]):.0f} % of programmed at {plan.u[k]:.2f} s."
     if locked.any() and b[locked].min() < 1.0 - 1e-6:

@@ -3,7 +3,7 @@
 import numpy as np
 
 from ..edits import Lock, Slow
-from .session import Session
+from .session import PROGRAMMED, Session
 
 
 class Desk:
@@ -25,6 +25,11 @@ class Desk:
     def retiming(self):
         """The Retiming that made it, or None as programmed"""
         return self._session.shown.retiming
+
+    @property
+    def variants(self):
+        """name -> Audit of every variant that was kept, the path as programmed first"""
+        return {PROGRAMMED: self._session.given, **{name: variant.audit for name, variant in self._session.variants.items()}}
 
     def slow(self, from_s, to_s, factor):
         """Run the stretch at `factor`, above 0 and at most 1, of the programmed speed."""

@@ -46,6 +46,8 @@ def test_variants_are_kept_and_compared(desk, audit):
     desk.slow(*span(audit, 10, 30), 0.8)
     frame = desk.compared()
     assert list(frame.index) == ["as programmed", "as suggested", "on trial"] and list(frame["shown"]) == [False, False, True]
+    assert list(desk.variants) == ["as programmed", "as suggested"] and desk.variants["as programmed"] is audit
+    assert desk.variants["as suggested"].path.duration == frame.loc["as suggested", "duration_s"]
     assert frame.loc["as suggested", "duration_s"] == pytest.approx(audit.suggestion.duration)
     assert frame.loc["as programmed", "slowest_percent"] == 100.0
     desk.show("as suggested")

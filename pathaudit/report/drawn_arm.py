@@ -42,7 +42,10 @@ class _View:
         self.low, self.high = seen.min(axis=0), seen.max(axis=0)
         self.centre, self.radius = 0.5 * (self.low + self.high), _half_diagonal(seen)
         plate = self.foot + _PLATE[:4] @ (0.1 * self.radius * self.base[:3, :2]).T
-        self._place(np.vstack([seen, plate, self.part[:3, 3] + 0.2 * self.radius * self.part[:3, :3].T]))
+        axes = 0.11 * self.radius * np.array([[[1]], [[-1]]])[..., None] * posed.axes + posed.points[:, :-2]
+        tools = posed.tool[:, None, :, 3] + 0.08 * self.radius * np.swapaxes(posed.tool[:, :, :3], 1, 2)
+        tips = np.vstack([plate, self.part[:3, 3] + 0.17 * self.radius * self.part[:3, :3].T, axes.reshape(-1, 3), tools.reshape(-1, 3)])
+        self._place(np.vstack([seen, tips[np.isfinite(tips).all(axis=1)]]))
 
     def _stand(self, seen):
         """The floor, unless it is so far below everything that it would only make the rest small, and where the base is carried."""

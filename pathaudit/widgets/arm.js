@@ -11,7 +11,7 @@ export function armView(facts, data, old) {
   const last = data.time_s[0].length - 1, process = data.process[0];
   const onPath = (i) => data.path_m.map((values) => values[i]);
   const postures = pick(last, 24).map((i) => postureAt(facts, data, i)).filter(Boolean);
-  const room = roomOf(facts, [...pick(last, 200).map(onPath), ...postures.flatMap((one) => [...one.roots, ...one.points])]);
+  const room = roomOf(facts, pick(last, 200).map(onPath), postures);
   const { radius, place } = room, look = { measure: 0, ellipsoid: false, ...(old && old.look) };
   if (!old || old.place !== place) Object.assign(look, { turn: room.views[3][0], tilt: room.views[3][1], width: 0 });
   const eye = eyeOn(room, look), { project } = eye;
@@ -104,10 +104,10 @@ export function armView(facts, data, old) {
   }
 
   function drawStage(canvas, colours) {
-    const draw = pen(canvas, colours, look, standing = []), y = look.height - 12, grid = drawFloor(draw);
-    drawMounting(draw);
+    const draw = pen(canvas, colours, look, standing = [[0, 14, 260]]), y = look.height - 12, grid = drawFloor(draw);      // the top line is kept free
     if (look.measure) drawMeasure(draw, y, MEASURES[look.measure]); else drawSeverity(draw, y);
     draw.write(grid, look.width - 8 - draw.widthOf(grid), y);
+    drawMounting(draw);
     drawFrame(draw, facts.part, 0.14, "part");
   }
 
@@ -121,17 +121,17 @@ export function armView(facts, data, old) {
     const { points, roots } = posture, flat = points.map(project), flange = flat.length - 2;
     tube(draw, [project(column(facts.base, 3)), ...flat.slice(0, -1).flatMap((p, k) => (facts.prismatic[k] ? [project(roots[k]), p] : [p]))]);
     draw.line(flat.slice(flange), "ink", 2.4);
-    drawJoints(draw, i, flat, posture);
     if (look.ellipsoid) drawEllipsoid(draw, posture);
+    drawJoints(draw, i, flat, posture);
     drawFrame(draw, posture.tool, 0.08, "tool");
     draw.mark(flat[flange + 1], 3.5, "ink");
   }
 
   // Each joint's axis as a short line: joints that line up are seen to line up; a square slides. The busiest joint is named past its warn line.
-  function drawJoints({ line, mark, label }, i, flat, { points, axes }) {
-    const size = (k) => Math.max(3, 0.42 * girth(flat[k], k / axes.length));
-    axes.forEach((axis, k) => {
-      line([1, -1].map((side) => project(along(points[k], 0.11 * side * radius, axis))), "soft", 1.4, [4, 2]);
+  function drawJoints({ line, mark, label }, i, flat, posture) {
+    const size = (k) => Math.max(3, 0.42 * girth(flat[k], k / facts.joints.length));
+    facts.joints.forEach((name, k) => {
+      line(axisOf(posture, k, radius).map(project), "soft", 1.4, [4, 2]);
       mark(flat[k], size(k), "soft", 1.5, facts.prismatic[k]);
     });
     const [k, share] = worstJoint(data, i) || [], [[warn], [fail]] = facts.rows[0].bounds;
@@ -160,21 +160,27 @@ export function armView(facts, data, old) {
   return { ...eye, look, place, frameAll, drawStage, drawArm, orbit: (dx, dy) => eye.orbit(dx, dy, look.scale > 1.4 * look.fitted ? tip : room.centre) };
 }
 
-// The size of the scene and what the arm stands on. `posed`: places of path and arm.
-function roomOf(facts, posed) {
+// The size of the scene and what the arm stands on, from places of the path and some postures.
+function roomOf(facts, path, postures) {
   const [x, y, up, base] = [0, 1, 2, 3].map((k) => column(facts.base, k)), part = column(facts.part, 3);
-  const seen = [base, part, ...posed], low = bounds(seen)[2][0], upright = up[2] > 0.98;
+  const seen = [base, part, ...path, ...postures.flatMap((one) => [...one.roots, ...one.points])], low = bounds(seen)[2][0], upright = up[2] > 0.98;
   const ground = Math.min(0, base[2], part[2]), floor = low - ground > halfDiagonal(seen) ? low : ground;      // one far below all else would only make that small
   const foot = along(base, upright ? floor - base[2] : -0.14 * halfDiagonal(seen), up);
   seen.push(foot, [part[0], part[1], floor]);
   const box = bounds(seen), centre = box.map(([from, to]) => 0.5 * (from + to)), radius = halfDiagonal(seen);
   const plate = [[1, 1], [-1, 1], [-1, -1], [1, -1]].map(([a, b]) => along(along(foot, 0.1 * radius * a, x), 0.1 * radius * b, y));
-  seen.push(...plate, ...[0, 1, 2].map((k) => along(part, 0.2 * radius, column(facts.part, k))));
+  const tips = (pose, length) => [0, 1, 2].map((k) => along(column(pose, 3), length * radius, column(pose, k)));
+  seen.push(...plate, ...tips(facts.part, 0.17), ...postures.flatMap((one) => [...tips(one.tool, 0.08), ...facts.joints.flatMap((name, k) => axisOf(one, k, radius))]));
   return {
     floor, foot, plate, upright, box, centre, radius, seen, place: JSON.stringify([facts.base, facts.part, facts.links, facts.length_mm]),
     mounting: upright ? "base" : up[2] < -0.98 ? "base, hanging" : Math.abs(up[2]) < 0.2 ? "base, on a wall" : "base, tilted",
     views: [[-Math.PI / 2, 0], [0, 0], [-Math.PI / 2, Math.PI / 2], [Math.atan2(centre[1] - base[1], centre[0] - base[0]) - 0.9, 0.38]],
   };
+}
+
+// The ends of the short line that shows the axis of joint k.
+function axisOf({ points, axes }, k, radius) {
+  return [1, -1].map((side) => along(points[k], 0.11 * side * radius, axes[k]));
 }
 
 function halfDiagonal(list) {

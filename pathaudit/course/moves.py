@@ -4,7 +4,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from ..conventions import FARTHEST, frozen
+from ..conventions import FARTHEST, MM, frozen
 from ..errors import ReadError
 from ..kernels.rotations import carry_frames, continuous_wxyz, wxyz_from_matrix
 from .curves import spline
@@ -14,6 +14,7 @@ from .turning import EVEN, SPLINED, Even, Splined, between
 HALF_TURN = np.pi - 1e-6  # rad: beyond, the way round is open
 CURVE_TURN = 0.5 * np.pi  # rad between two points of a curve: beyond, a spline of quaternions says little
 SAME_POINT = 1e-9  # m
+SLOWEST, FASTEST = 1e-9, 1e4  # m/s; what lies outside is a mistake in the unit
 
 
 @dataclass(frozen=True, eq=False)
@@ -147,6 +148,7 @@ class Draft:
         kind, line, pose = np.array(kind, dtype=np.uint8), np.array(line, dtype=np.int64), np.array([self.first_pose, *pose])
         points = np.array([self.begin, *end], dtype=np.float64)
         self._check_points(points, line)
+        self._check_speeds(np.array(speed), line)
         arcs, curve = self._arc_table(points[1:][kind == ARC]), kind == CURVE
         runs = _runs(curve)
         curves = Curves(_padded([spline(points[a : b + 1], _chords(points[a : b + 1])) for a, b in runs]))
@@ -169,6 +171,12 @@ class Draft:
             k = int(np.argmax(bad))
             where, far = self.first_line if k == 0 else line[k - 1], points[k][np.argmax(~(np.abs(points[k]) <= FARTHEST))]
             raise ReadError(self.file, f"line {where}", f"a tool centre point at {far:g} m", f"coordinates within {FARTHEST:g} m (check the unit)")
+
+    def _check_speeds(self, speed, line):
+        bad = ~np.isnan(speed) & ~((speed >= SLOWEST) & (speed <= FASTEST))
+        if bad.any():
+            k = int(np.argmax(bad))
+            raise ReadError(self.file, f"line {line[k]}", f"a speed of {speed[k] / MM:g} mm/s", f"{SLOWEST / MM:g} to {FASTEST / MM:g} mm/s (check the unit)")
 
     def _arc_table(self, ends):
         given = np.array(self.arcs, dtype=np.float64).reshape(-1, 10)

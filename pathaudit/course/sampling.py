@@ -47,8 +47,8 @@ def _ceilings(course, speed, acceleration, turn_speed, turn_acceleration):
     given = {"speed_mm_s (--speed)": speed, "acceleration_mm_s2 (--acceleration)": acceleration, "turn_speed_deg_s (--turn-speed)": turn_speed,
              "turn_acceleration_deg_s2 (--turn-acceleration)": turn_acceleration}  # fmt: skip
     for name, value in given.items():
-        if value is not None and not 0.0 < value < np.inf:
-            raise ReadError(course.file, "", f"{name} = {value:g}", "a number above 0")
+        if value is not None and not 1e-9 <= value <= 1e9:
+            raise ReadError(course.file, "", f"a ceiling {name} of {value:g} in SI units", "a number above 0 that a tool can reach")
     if acceleration is None:
         raise ReadError(course.file, "", "moves without times", "the ceiling acceleration_mm_s2 (--acceleration) of the tool, to time them")
     moving, turns = course.kind != STILL, (course.kind == STILL) & (course.dwell == 0.0)

@@ -4,6 +4,7 @@ Read: PARTNO REMARK UNITS FROM GOTO GODLTA MULTAX FEDRAT RAPID FINI, $ to go on 
 the tip to the holder, so the tool's +Z is its opposite. All else is refused by name: what other words do differs between dialects.
 """
 
+import math
 import re
 
 import numpy as np
@@ -111,7 +112,7 @@ class _Moves:
         return tuple(_metres(value, self.unit) for value in values[:3])
 
     def _unit(self, vector, what):
-        length = float(np.linalg.norm(vector))
+        length = math.hypot(*vector)
         if not 1e-9 < length < 1e9:
             raise self.refuse(f"{what} with a vector of length {length:.3g}", "a vector from the tip to the holder")
         if abs(length - 1.0) > 1e-3 and not self.scaled:

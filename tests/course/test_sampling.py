@@ -87,3 +87,11 @@ def test_nothing_is_no_course():
     course.line_to((2e4, 0.0, 0.0), 3)
     with pytest.raises(pa.ReadError, match="line 3: found a tool centre point at 20000 m, expected coordinates within 10000 m"):
         course.finish()
+
+
+@pytest.mark.parametrize("speed", [1e-10, 2e4, float("inf")])
+def test_speeds_that_are_mistakes_in_the_unit_are_refused(speed):
+    course = draft()
+    course.line_to((0.1, 0.0, 0.0), 2, speed=speed)
+    with pytest.raises(pa.ReadError, match="line 2: found a speed of .* mm/s, expected 1e-06 to 1e.07 mm/s"):
+        course.finish()

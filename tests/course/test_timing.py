@@ -146,8 +146,8 @@ def test_a_turn_in_place_takes_the_closed_form():
                                 "course: line 12: found a move without a speed, expected the ceiling speed_mm_s (--speed)"),
         ({"acceleration": 1.0, "speed": 1.0}, "course: line 11: found a tool that turns in place, expected the ceiling turn_speed_deg_s (--turn-speed)"),
         ({"acceleration": 1.0, "speed": 1.0, "turn_speed": 1.0}, "expected the ceiling turn_acceleration_deg_s2 (--turn-acceleration)"),
-        ({"acceleration": 0.0}, "course: found acceleration_mm_s2 (--acceleration) = 0, expected a number above 0"),
-        ({"acceleration": float("nan")}, "course: found acceleration_mm_s2 (--acceleration) = nan, expected a number above 0"),
+        ({"acceleration": 0.0}, "course: found a ceiling acceleration_mm_s2 (--acceleration) of 0 in SI units, expected a number above 0"),
+        ({"acceleration": float("nan")}, "course: found a ceiling acceleration_mm_s2 (--acceleration) of nan in SI units, expected a number above 0"),
         ({"acceleration": 1.0, "speed": 1.0, "turn_speed": 1.0, "turn_acceleration": 1.0, "step": 1e-9}, "samples, expected at most 20,000,000: larger chord_mm (--chord)"),
     ],
 )  # fmt: skip

@@ -349,7 +349,7 @@ export function mount(root, ask, onCursor) {
 
   function showTrial(value) {
     trial.show(value);
-    state.marks = (value.edits || []).map(({ kind, first, last, factor }) => ({ first, last, words: { lock: "locked", slow: `${fixed(100 * factor, 0)} %` }[kind] || "accepted" }));
+    state.marks = (value.edits || []).map(({ kind, first, last, percent }) => ({ first, last, words: { lock: "locked", adopt: "accepted", decline: "rejected" }[kind] || `${fixed(percent, 0)} %` }));
     repaint(true);
   }
 

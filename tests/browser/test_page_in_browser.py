@@ -419,11 +419,12 @@ def test_the_wheel_is_the_pages_until_the_timeline_has_the_focus(opened, audit):
     page.evaluate("scrollTo(0, 0)")
     press(page, "Home")
     page.mouse.move(*point(page, 4.0, 200))
+    scrolled = page.evaluate("scrollY")
     page.mouse.wheel(0, -300)
     page.wait_for_function("() => JSON.parse(document.querySelector('.pa').dataset.place).span[0] > 0")
     low, high = span(page)
     assert high - low == pytest.approx(14 * 1.002 ** -300, rel=1e-3) and (4 - low) / (high - low) == pytest.approx(4 / 14, abs=0.02)
-    assert page.evaluate("scrollY") == 0
+    assert page.evaluate("scrollY") == scrolled
     page.mouse.wheel(60, 0)
     page.wait_for_function("(low) => JSON.parse(document.querySelector('.pa').dataset.place).span[0] > low", arg=low)
     moved, end = span(page)
@@ -584,22 +585,124 @@ def test_nothing_to_draw_is_drawn_too(opened):
     assert "No findings." in page.locator(".pa-findings").inner_text()
 
 
+def packed(shown):
+    """A Scene as a page takes it: facts and the block as text."""
+    block, layout = shown.packed()
+    return {"facts": {**shown.facts, "layout": layout}, "text": base64.b64encode(block).decode()}
+
+
 @pytest.fixture
 def stage(watched, audit):
     """An empty page with the modules loaded, a stub model and window.start(place): what any host of the timeline does."""
-    shown = scene(audit)
-    block, layout = shown.packed()
     page = watched().page
     page.set_content(f"<style>{style_sheet()}</style><div id='one'></div><div id='two'></div>")
-    page.evaluate("([facts, text]) => { window.facts = facts; window.text = text; }", [{**shown.facts, "layout": layout}, base64.b64encode(block).decode()])
+    page.evaluate("(first) => { window.first = first; }", packed(scene(audit)))
     page.add_script_tag(type="module", content=joined_modules() + """
-        const held = { facts: window.facts, block: Uint8Array.from(atob(window.text), (c) => c.charCodeAt(0)), status: "", cursor: 0 };
+        const given = ({ facts, text }) => ({ facts, block: Uint8Array.from(atob(text), (c) => c.charCodeAt(0)) });
+        const held = { ...given(window.first), status: "", cursor: 0 };
         window.listeners = [];
+        window.sent = [];
         window.model = { get: (name) => held[name], set: (name, value) => { held[name] = value; }, save_changes() {},
                          on: (name, act) => window.listeners.push([name, act]), off: () => window.listeners.pop() };
+        window.change = (values) => {
+            Object.assign(held, values);
+            return Promise.all(Object.keys(values).flatMap((name) => window.listeners.filter(([event]) => event === `change:${name}`).map(([, act]) => act())));
+        };
+        window.data = (values) => window.change(given(values)).then(() => null);
         window.start = (place) => render({ model: window.model, el: document.getElementById(place) });""")
     page.wait_for_function("() => Boolean(window.start)")
     return page
+
+
+@pytest.fixture
+def heard(stage):
+    """The stage with somebody who listens: what is sent is kept in window.sent."""
+    stage.evaluate("() => { window.model.send = (message) => window.sent.push(message); return window.start('one').then(() => null); }")
+    stage.wait_for_selector(".pa[data-painted]")
+    return stage
+
+
+def factor_lane(page):
+    """Left edge of the plot, top and height of the factor row on the screen."""
+    box, place = page.locator(".pa-rows").bounding_box(), placed(page)
+    y, height = next((y, height) for row, y, height in place["lanes"] if row == 8)
+    return box["y"] + y, height
+
+
+def test_the_factor_of_a_marked_stretch_is_dragged(heard, audit):
+    heard.evaluate("scrollTo(0, 200)")
+    press(heard, "Home", "PageUp", "PageUp", "[", "PageUp", "PageUp", "]")
+    assert marked(heard) == [400, 800]
+    (x, _), (top, height) = point(heard, audit.time[600], 0), factor_lane(heard)
+    drag(heard, (x, top + height * 10 / 110), (x, top + height * 60 / 110))
+    heard.wait_for_function("() => window.sent.length && Math.abs(window.sent.at(-1).factor - 0.5) < 0.02")
+    sent = heard.evaluate("window.sent")
+    assert {(m["do"], m["first"], m["last"]) for m in sent} == {("slow", 400, 800)} and len({m["gesture"] for m in sent}) == 1
+    where = cursor(heard)
+    drag(heard, (x, top + height * 60 / 110), (x, top + height * 30 / 110))
+    heard.wait_for_function("() => Math.abs(window.sent.at(-1).factor - 0.8) < 0.02")
+    assert heard.evaluate("new Set(window.sent.map((m) => m.gesture)).size") == 2 and cursor(heard) == where
+    over = pixels(heard, ".pa-rows canvas:nth-child(2)")
+    heard.evaluate("(same) => window.data(same)", packed(scene(audit)))
+    assert pixels(heard, ".pa-rows canvas:nth-child(2)") != over      # the answer takes the preview's place
+    assert marked(heard) == [400, 800]
+
+
+def test_without_a_listener_no_factor_can_be_dragged(opened, audit):
+    page = opened(audit)
+    press(page, "Home", "PageUp", "PageUp", "[", "PageUp", "PageUp", "]")
+    (x, _), (top, height) = point(page, audit.time[600], 0), factor_lane(page)
+    drag(page, (x, top + height * 10 / 110), (x, top + height * 50 / 110))
+    assert cursor(page) == pytest.approx(600, abs=3) and marked(page) == [400, 800]
+
+
+def test_new_data_keep_place_span_and_rows(heard, audit):
+    press(heard, "u", "Home", *["PageUp"] * 3, "+", "+", "r")
+    heard.get_by_role("dialog", name="Which rows").get_by_label("j2", exact=True).uncheck()
+    heard.keyboard.press("Escape")
+    rows, (low, high) = lanes(heard), span(heard)
+    assert 1 not in rows and 9 in rows
+    after = audit.suggestion.audit()
+    heard.evaluate("(next) => window.data(next)", packed(scene(after, applied=audit.suggestion, before=audit)))
+    assert lanes(heard) == rows and cursor(heard) == 600
+    assert np.interp([low, high], audit.time, after.time) == pytest.approx(span(heard), abs=0.05)
+    assert heard.locator(".pa-read span").nth(6).inner_text() == "as programmed"
+    assert readout(heard)[3] == f"{1e3 * audit.rates.tool_speed[600]:.1f}"
+    assert heard.locator(".pa-head").inner_text().startswith("FAIL") and "other speeds" in heard.locator(".pa-head").inner_text()
+
+
+def test_before_and_after_lie_on_each_other(heard, audit):
+    base = ".pa-rows canvas:nth-child(1)"
+    after = audit.suggestion.audit()
+    heard.evaluate("(next) => window.data(next)", packed(scene(after, applied=audit.suggestion)))
+    alone = pixels(heard, base)
+    heard.evaluate("(next) => window.data(next)", packed(scene(after, applied=audit.suggestion, before=audit)))
+    assert pixels(heard, base) != alone
+
+
+def test_notes_are_flags_that_lead_to_them(heard, audit):
+    assert placed(heard)["pins"] == []
+    before = placed(heard)["process"]
+    note = lambda k, sample, **other: {"id": f"n{k}", "sample": sample, "finding": None, "author": "a", "date": "2026-12-01", "text": f"text {k}",      # noqa: E731
+                                       "settled": False, "stale": "", "where": "here", **other}
+    value = {"file": "notes.txt", "writable": True, "fault": "", "author": "a",
+             "notes": [note(0, 1000), note(1, 1001, settled=True), note(2, 10, stale="The place has moved."), *(note(k, 1990) for k in range(3, 9))]}
+    heard.evaluate("(notes) => window.change({ notes })", value)
+    pins = placed(heard)["pins"]
+    assert len(pins) == 9 and placed(heard)["process"] > before
+    assert all(b - a >= 17 for a, b in zip(pins, pins[1:])) and pins[-1] <= placed(heard)["left"] + placed(heard)["plot"] + 20
+    first = pixels(heard, ".pa-rows canvas:nth-child(1)")
+    value["notes"][0]["settled"] = True
+    heard.evaluate("(notes) => window.change({ notes })", value)
+    assert pixels(heard, ".pa-rows canvas:nth-child(1)") != first
+
+
+def test_what_was_tried_is_bracketed_in_the_factor_row(heard):
+    plain = pixels(heard, ".pa-rows canvas:nth-child(1)")
+    trial = {"edits": [{"kind": "lock", "first": 300, "last": 700, "percent": 100.0}], "offers": [], "undo": True, "redo": False, "busy": False,
+             "why": "", "changes": [], "variants": []}
+    heard.evaluate("(trial) => window.change({ trial })", trial)
+    assert pixels(heard, ".pa-rows canvas:nth-child(1)") != plain
 
 
 def test_a_timeline_made_in_a_hidden_tab_is_drawn_when_the_tab_is_shown(stage):
@@ -617,7 +720,7 @@ def test_a_timeline_made_in_a_hidden_tab_is_drawn_when_the_tab_is_shown(stage):
 def test_two_views_of_one_model_move_together(stage):
     stage.evaluate("() => Promise.all([window.start('one'), window.start('two')]).then(() => null)")
     stage.wait_for_function("() => document.querySelectorAll('.pa[data-painted]').length === 2")
-    stage.evaluate("() => { window.model.set('cursor', 123); window.listeners.filter(([n]) => n === 'change:cursor').forEach(([, act]) => act()); }")
+    stage.evaluate("() => { window.change({ cursor: 123 }); }")
     stage.wait_for_function("() => [...document.querySelectorAll('.pa')].every((root) => root.dataset.cursor === '123')")
 
 

@@ -12,7 +12,7 @@ MOST_SAMPLES = 5000
 PATTERNS = {"warn": {"shape": "/", "size": 8, "solidity": 0.16}, "fail": {"shape": "x", "size": 6, "solidity": 0.22}}
 SYMBOLS = {"warn": "triangle-up", "fail": "x"}
 _GAP, _BOTTOM, _LABEL = 18, 54, 15  # px between rows, below them, a line of labels
-_WIDTH, _SIGN = 820.0, 6.4  # px: a plot on a page of usual width, a sign of a label; labels are kept apart by them
+_WIDTH, _SIGN = 660.0, 6.4  # px: a plot in a notebook beside a side bar, a sign of a label; labels are kept apart by them
 _LEVELS = 4
 
 

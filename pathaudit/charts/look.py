@@ -44,7 +44,7 @@ def plain(text):
     return escape(str(text), quote=False)
 
 
-def lines_of(text, width=110):
+def lines_of(text, width=100):
     """A text as lines of at most `width` signs, for headings and hover labels."""
     return [plain(line) for line in wrap(str(text), width)]
 

@@ -11,7 +11,7 @@ from .look import FAINT, LINE, SEVERITY, SOFT, lines_of, plain, turned_out
 
 _BAR, _LEAST = 34, 110  # px: a variant, all of them at least
 _WIDTHS = (1.0, 1.0, 1.0, 1.0, 1.5)
-_ENDS = (1.7, 1.7, 1.7, 1.7, 2.4)  # times the longest bar: where a column ends, with room for the words
+_ENDS = (2.0, 2.0, 2.0, 2.0, 2.9)  # times the longest bar: where a column ends, with room for the words
 
 
 @dataclass(frozen=True)
@@ -51,11 +51,11 @@ def variants_compared(audits):
         most = _ENDS[number] * (max([*np.sum([bar["x"] for bar in bars], axis=0), *bounds]) or 1.0)
         figure.add_scatter(x=[most] * len(places), y=places, xaxis=axis, mode="text", text=words, textposition="middle left", hoverinfo="skip", showlegend=False)
         domain = [ends[number] + 0.012, ends[number + 1] - 0.012]
-        figure.update_layout({f"xaxis{axis[1:]}": {"title": {"text": title, "standoff": 6}, "domain": domain, "range": [0.0, most], "gridcolor": FAINT, "nticks": 4}})
+        figure.update_layout({f"xaxis{axis[1:]}": {"title": {"text": title, "standoff": 6}, "domain": domain, "range": [0.0, most], "gridcolor": FAINT, "nticks": 4, "tickangle": 0}})
     rows = {"tickvals": places, "ticktext": ["<br>".join(lines_of(name, 28)) for name in audits], "range": [len(found) - 0.5, -0.5],
             "automargin": True, "zeroline": False, "showgrid": False, "ticksuffix": " "}
     turned_out(figure, "Variants side by side", lines_of("Dashed: the bounds that a finding is judged by, where all variants have the same."), "variants",
-               plot_height=max(_LEAST, _BAR * len(found)), yaxis=rows, barmode="stack", bargap=0.35, hovermode="closest")
+               plot_height=max(_LEAST, _BAR * len(found)), bottom=74, yaxis=rows, barmode="stack", bargap=0.35, hovermode="closest")
     return figure.update_layout(legend={"x": 1, "xanchor": "right"})
 
 
@@ -65,9 +65,9 @@ def _columns(found, limits):
     counts = [f"{one.fails} fail, {one.warns} warn" if one.fails and one.warns else f"{one.fails} fail" if one.fails else f"{one.warns} warn" if one.warns else "none"
               for one in found]
     return [
-        ("worst joint speed,<br>% of its limit", _common(limits, lambda one: [100.0 * one.speed_share_fail]), *_bar(shares, ".0f", [one.worst_where for one in found])),
-        ("least sigma_min", _common(limits, lambda one: [one.sigma_min_warn, one.sigma_min_fail]), *_bar([one.least_sigma for one in found], ".3f")),
-        ("least reserve,<br>times programmed", [1.0], *_bar([one.reserve for one in found], ".2f")),
+        ("worst joint<br>speed, % of<br>its limit", _common(limits, lambda one: [100.0 * one.speed_share_fail]), *_bar(shares, ".0f", [one.worst_where for one in found])),
+        ("least<br>sigma_min", _common(limits, lambda one: [one.sigma_min_warn, one.sigma_min_fail]), *_bar([one.least_sigma for one in found], ".3f")),
+        ("least reserve,<br>times<br>programmed", [1.0], *_bar([one.reserve for one in found], ".2f")),
         ("duration, s", [], *_bar([one.duration for one in found], ".2f")),
         ("findings", [], counts, [_count("fail", [one.fails for one in found]), _count("warn", [one.warns for one in found])]),
     ]

@@ -60,7 +60,7 @@ def _programmed(v, word):
 def _label(v, word):
     """Words with an arrow to the programmed speed, in front of everything."""
     ends = {letter: float(value) for letter, value in zip("xyz", v, strict=False)}
-    return {**ends, "text": f"programmed: {word}", "ax": 60, "ay": -70, "arrowcolor": SOFT, "arrowwidth": 1, "font": {"size": 12}, "bgcolor": "rgba(255,255,255,0.8)"}
+    return {**ends, "text": f"programmed: {word}", "ax": 80, "ay": 60 if len(v) == 2 else -70, "arrowcolor": SOFT, "arrowwidth": 1, "font": {"size": 12}, "bgcolor": "rgba(255,255,255,0.8)"}
 
 
 def _told(audit, k, some):

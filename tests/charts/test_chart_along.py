@@ -90,7 +90,7 @@ def test_labels_of_bands_never_lie_on_each_other(gap):
     for a in labels:
         for b in labels:
             if a is not b and a.yshift == b.yshift:
-                assert abs(a.x - b.x) * 820 >= 3.2 * (len(a.text) + len(b.text)) - 1e-6
+                assert abs(a.x - b.x) * 660 >= 3.2 * (len(a.text) + len(b.text)) - 1e-6
 
 
 def test_a_path_of_two_samples_is_drawn(arms):

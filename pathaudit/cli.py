@@ -1,4 +1,4 @@
-"""The command line: `pathaudit check` and `pathaudit demo`.
+"""The command line: `pathaudit check`, `pathaudit notes` and `pathaudit demo`.
 
 Exit status: 0 nothing fails; 1 a finding fails; 2 something given cannot be used, said in one line on stderr.
 """
@@ -54,9 +54,34 @@ def _parser():
     check.add_argument("--joints", metavar="FILE.csv", help="write the joint motion and its measures, one row a sample")
     check.add_argument("--retimed", metavar="FILE.csv", help="write the path with the suggested times")
     check.add_argument("--html", metavar="FILE", help="write the whole audit as one self-contained page")
+    check.add_argument("--notes", metavar="FILE.notes.toml", help="put these notes into the summary, the JSON and the page, with what is stale")
+    _add_notes(commands)
     demo = commands.add_parser("demo", help="write a ready cell, path and notebook", description="Write a ready cell, path and notebook into a folder.", allow_abbrev=False)
     demo.add_argument("folder", metavar="FOLDER", help="made where it is missing; nothing in it is overwritten")
     return parser
+
+
+NOTES = """examples:
+  pathaudit notes list seam.notes.toml seam.csv --cell cell.toml
+  pathaudit notes merge mine.notes.toml theirs.notes.toml --out seam.notes.toml
+
+exit status of merge: 0 merged, 1 merged and marked where somebody has to decide, 2 unusable input or arguments
+"""
+
+
+def _add_notes(commands):
+    shape = {"formatter_class": argparse.RawDescriptionHelpFormatter, "allow_abbrev": False, "epilog": NOTES}
+    notes = commands.add_parser("notes", help="merge or list the notes pinned to a path", description="Notes pinned to a path: merge them or list them.", **shape)
+    acts = notes.add_subparsers(dest="act", metavar="ACT", required=True)
+    merging = acts.add_parser("merge", help="make one file of two people's notes", description="Make one file of two people's notes, without loss.", **shape)
+    merging.add_argument("ours", metavar="OURS", help="a file of notes")
+    merging.add_argument("theirs", metavar="THEIRS", help="another one")
+    merging.add_argument("--base", metavar="BASE", help="what both began with; it tells changes that were made by hand in an editor")
+    merging.add_argument("--out", metavar="FILE", required=True, help="the merged notes: OURS, THEIRS or a new file")
+    listing = acts.add_parser("list", help="show notes; with path and cell, what is stale", description="Show notes; with path and cell, where they are now and what is stale.", **shape)
+    listing.add_argument("file", metavar="FILE", help="a file of notes")
+    listing.add_argument("path", metavar="PATH", nargs="?", help="the timed path, a CSV file")
+    listing.add_argument("--cell", metavar="CELL.toml", help="the cell; goes with PATH")
 
 
 def _run(arguments):
@@ -65,15 +90,17 @@ def _run(arguments):
     except SystemExit:  # argparse has printed what --help or --version asks for
         _say("", sys.stdout)
         return 0
+    if options.command == "notes":
+        return _merge_notes(options) if options.act == "merge" else _list_notes(options)
     return _check(options) if options.command == "check" else _demo(options.folder)
 
 
 def _check(options):
     from .reading import read_cell, read_path
 
-    path, cell = read_path(options.path), read_cell(options.cell)
+    path, cell, noted = read_path(options.path), read_cell(options.cell), _read_notes(options.notes)
     outputs = {name: getattr(options, name) for name in ("json", "joints", "retimed", "html") if getattr(options, name) is not None}
-    _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources)])
+    _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources), *([options.notes] if noted else [])])
 
     from .pipeline import audit
     from .writing import write_whole
@@ -82,26 +109,93 @@ def _check(options):
     if path.samples > LONG:
         _say(f"pathaudit: auditing {path.samples:,} samples ...\n", sys.stderr)
     judged = audit(path, cell)
+    notes = _placed(noted, judged)
     for name, file in outputs.items():
         if file != "-":
-            write_whole(file, _content(name, judged))
+            write_whole(file, _content(name, judged, notes))
     piped = outputs.get("json") == "-"
     if piped:
-        _say(_content("json", judged), sys.stdout)
-    _say(summary(judged), sys.stderr if piped else sys.stdout)
+        _say(_content("json", judged, notes), sys.stdout)
+    _say(summary(judged, notes), sys.stderr if piped else sys.stdout)
     return 1 if judged.verdict == "fail" else 0
 
 
-def _content(name, judged):
+def _content(name, judged, notes):
     from .report import tables
 
     if name == "html":
         from .report.page import one_page
 
-        return one_page(judged)
+        return one_page(judged, notes)
     if name == "retimed":
         return tables.retimed_csv(judged.suggestion)
-    return tables.check_json(judged) if name == "json" else tables.joints_csv(judged)
+    return tables.check_json(judged, notes) if name == "json" else tables.joints_csv(judged)
+
+
+def _read_notes(file):
+    if file is None:
+        return None
+    from .notes import read_notes
+
+    return read_notes(file)
+
+
+def _placed(notes, judged):
+    if notes is None:
+        return ()
+    from .notes import placed
+
+    return placed(notes, judged)
+
+
+def _merge_notes(options):
+    from .notes import merge, notes_text
+    from .writing import write_whole
+
+    sources = [options.ours, options.theirs]
+    ours, theirs = map(_read_notes, sources)
+    base = None if options.base is None or _is_empty(options.base) else _read_notes(options.base)
+    if not options.out.strip("-"):
+        raise UsageError(f"--out: found {quoted(options.out)}, expected a file name")
+    if os.path.lexists(options.out) and not any(os.path.realpath(options.out) == os.path.realpath(file) for file in sources):
+        raise UsageError(f"--out {options.out}: found a file that is neither OURS nor THEIRS, expected one of them or a new name")
+    merged = merge(ours, theirs, base)
+    write_whole(options.out, notes_text(merged))
+    _say(f"{options.out}: " + _merged_words(merged), sys.stdout)
+    return 1 if any(note.marked for note in merged.items) else 0
+
+
+def _is_empty(file):
+    """Version control gives an empty file where two people have added the same file."""
+    return os.path.isfile(file) and os.path.getsize(file) == 0
+
+
+def _merged_words(merged):
+    from .report.noted import to_decide, visible
+
+    marked = [f"  {note.id} at {note.at_mm:.1f} mm: {visible(to_decide(note))}\n" for note in merged.items if note.marked]
+    removed = len(merged.items) - len(merged.kept)
+    return f"{len(merged.kept)} note{'' if len(merged.kept) == 1 else 's'}, {removed} deleted, {len(marked) or 'nothing'} to decide\n{''.join(marked)}"
+
+
+def _list_notes(options):
+    from .report.text import notes_text
+
+    if (options.path is None) != (options.cell is None):
+        raise UsageError("notes list: found " + ("PATH without --cell" if options.cell is None else "--cell without PATH") + ", expected both or neither")
+    notes = _read_notes(options.file)
+    if options.path is None:
+        from .notes import Placed
+
+        shown = notes_text([Placed(note, 0, 0.0, note.at_mm, "") for note in notes.kept])
+    else:
+        from .pipeline import audit
+        from .reading import read_cell, read_path
+
+        judged = audit(read_path(options.path), read_cell(options.cell))
+        shown = notes_text(_placed(notes, judged), judged)
+    _say((shown or "No notes.") + "\n", sys.stdout)
+    return 0
 
 
 def _check_outputs(outputs, inputs):

@@ -209,6 +209,15 @@ def one_line(capfd, *arguments):
         (["check", "seam.csv", "--cell", "cell.toml", "--json", "."], ".: cannot be written: it is a folder"),
         (["check", "seam.csv", "--cell", "cell.toml", "--html", "-"], "--html: found '-', expected a file name"),
         (["check", "seam.csv", "--cell", "cell.toml", "--html", ""], "--html: found '', expected a file name"),
+        (["check", "seam.csv", "--cell", "cell.toml", "--notes", "none.toml"], "none.toml: found no such file, expected notes as TOML text"),
+        (["check", "seam.csv", "--cell", "cell.toml", "--notes", "cell.toml"], "cell.toml: line 1, name: found 'bench', expected lines that begin with the id of a note"),
+        (["notes"], "the following arguments are required: ACT (see pathaudit notes --help)"),
+        (["notes", "merge", "a", "b"], "the following arguments are required: --out"),
+        (["notes", "merge", "cell.toml", "none", "--out", "x"], "cell.toml: line 1, name: found 'bench', expected lines that begin with the id of a note"),
+        (["notes", "list", "seam.csv"], "seam.csv: line 1, column 4: found text that is not TOML"),
+        (["notes", "list", "none.toml"], "none.toml: found no such file, expected notes as TOML text"),
+        (["notes", "list", "a", "seam.csv"], "notes list: found PATH without --cell, expected both or neither"),
+        (["notes", "list", "a", "--cell", "cell.toml"], "notes list: found --cell without PATH, expected both or neither"),
         (["demo"], "the following arguments are required: FOLDER"),
         (["demo", "seam.csv"], "seam.csv: cannot be written"),
     ],
@@ -295,3 +304,86 @@ def test_the_demo_is_written_runs_as_it_says_and_is_never_overwritten(tmp_path, 
     (folder / names[-1]).unlink()
     one_line(capfd, "demo", folder)
     assert {name: (folder / name).read_bytes() for name in os.listdir(folder)} == {name: before[name] for name in names[:-1]}
+
+
+@pytest.fixture
+def noted(bench):
+    """Notes on the bench's path: one at a place, one at another; beside it what two people made of them."""
+    import pathaudit as pa
+    from pathaudit.notes import Notes, new_note, write_notes
+
+    audit, notes = pa.audit(pa.read_path("seam.csv"), pa.read_cell("cell.toml")), Notes()
+    for sample, text in ((200, "Gas on\nbefore here?"), (900, "<script>alert(1)</script> \x1b[31mred")):
+        notes = notes.put(new_note(audit, sample, text, "Ann", date="2026-12-01T09:30:00Z", taken=notes.by_id))
+    write_notes("seam.notes.toml", notes)
+    write_notes("bob.notes.toml", notes.put(notes.items[0].edit("Bob's", "Bob", "2026-12-01T10:00:00Z")))
+    write_notes("cy.notes.toml", notes.put(notes.items[0].edit("Cy's", "Cy", "2026-12-01T11:00:00Z")).put(notes.items[1].delete("Cy")))
+    return notes
+
+
+def test_notes_in_every_output_of_check(bench, noted, capfd):
+    before = (bench / "seam.notes.toml").read_bytes()
+    assert cli.main(["check", "seam.csv", "--cell", "cell.toml", "--notes", "seam.notes.toml", "--json", "a.json", "--html", "d.html"]) == 0
+    out = capfd.readouterr().out
+    assert "Notes: 2 notes\n1  open; 1.00 s, " in out and "\n      Gas on\n      before here?\n" in out and "\x1b" not in out and "\\x1b[31mred" in out
+    assert [note["sample"] for note in json.loads((bench / "a.json").read_text())["notes"]] == [200, 900]
+    assert "before here?" in (bench / "d.html").read_text() and "<script>alert" not in (bench / "d.html").read_text()
+    assert (bench / "seam.notes.toml").read_bytes() == before
+    assert "--html seam.notes.toml: found the same file as the input" in one_line(
+        capfd, "check", "seam.csv", "--cell", "cell.toml", "--notes", "seam.notes.toml", "--html", "seam.notes.toml")
+
+
+def test_merging_notes(bench, noted, capfd):
+    assert cli.main(["notes", "merge", "seam.notes.toml", "bob.notes.toml", "--out", "all.notes.toml"]) == 0
+    assert capfd.readouterr().out == "all.notes.toml: 2 notes, 0 deleted, nothing to decide\n"
+    assert (bench / "all.notes.toml").read_bytes() == (bench / "bob.notes.toml").read_bytes()
+    for base in ([], ["--base", "seam.notes.toml"]):
+        assert cli.main(["notes", "merge", "bob.notes.toml", "cy.notes.toml", *base, "--out", "bob.notes.toml"]) == 1
+        assert capfd.readouterr().out.startswith("bob.notes.toml: 1 note, 1 deleted, 1 to decide\n  " + noted.items[0].id + " at ")
+    text = (bench / "bob.notes.toml").read_text()
+    assert "Cy's" in text and "Bob's" in text and "script" not in text
+    assert "--out cell.toml: found a file that is neither OURS nor THEIRS" in one_line(capfd, "notes", "merge", "bob.notes.toml", "cy.notes.toml", "--out", "cell.toml")
+    assert "none/x: cannot be written" in one_line(capfd, "notes", "merge", "bob.notes.toml", "cy.notes.toml", "--out", "none/x")
+
+
+def test_as_git_s_merge_driver(bench, noted):
+    """With this in its settings git makes one file of what two branches did to the notes; an empty base is what it gives where both added the file."""
+    def git(*words):
+        return subprocess.run(["git", "-c", "user.name=x", "-c", "user.email=x", *words], capture_output=True, text=True)
+
+    driver = f'"{sys.executable}" -m pathaudit notes merge %A %B --base %O --out %A'
+    git("init", "-q")
+    git("config", "merge.pathaudit.driver", driver)
+    (bench / ".gitattributes").write_text("*.notes.toml merge=pathaudit\n")
+    ours, theirs = (bench / "bob.notes.toml").read_text(), (bench / "cy.notes.toml").read_text()
+    for base in ((bench / "seam.notes.toml").read_text(), None):
+        (bench / "seam.notes.toml").unlink()
+        git("checkout", "-q", "--orphan", f"start{base is None}")
+        if base:
+            (bench / "seam.notes.toml").write_text(base)
+        git("add", "-A")
+        git("commit", "-qm", "base")
+        for name, text in (("theirs", theirs), ("ours", ours)):
+            git("checkout", "-q", "-b", f"{name}{base is None}", f"start{base is None}")
+            (bench / "seam.notes.toml").write_text(text)
+            git("add", "-A")
+            git("commit", "-qm", name)
+        assert git("merge", f"theirs{base is None}").returncode == 1      # something is to decide, so git does not commit by itself
+        merged = (bench / "seam.notes.toml").read_text()
+        assert "Cy's" in merged and "Bob's" in merged and "deleted = [" in merged and "<<<<" not in merged
+        git("add", "-A")
+        git("commit", "-qm", "merged")
+
+
+def test_listing_notes(bench, noted, capfd):
+    assert cli.main(["notes", "list", "seam.notes.toml"]) == 0
+    out = capfd.readouterr().out
+    assert out.startswith("Notes: 2 notes\n1  open; ") and "before here?" in out and "\x1b" not in out
+    header, rows = table("seam.csv")
+    with open("moved.csv", "w", newline="") as stream:
+        csv.writer(stream).writerows([header, *([*row[:3], float(row[3]) + 3.0 * (k > 600), *row[4:]] for k, row in enumerate(rows))])
+    assert cli.main(["notes", "list", "seam.notes.toml", "moved.csv", "--cell", "cell.toml"]) == 0
+    out = capfd.readouterr().out
+    assert out.startswith("Notes: 2 notes, 1 stale\n") and out.count("Stale: The path has moved by ") == 1
+    (bench / "seam.notes.toml").write_text("# nothing\n")
+    assert cli.main(["notes", "list", "seam.notes.toml"]) == 0 and capfd.readouterr().out == "No notes.\n"

@@ -8,12 +8,14 @@ from pathlib import PurePath
 
 import numpy as np
 
+from . import noted
 from .scene import clock_offset, significant, worst_text
 
 _LEFT = "text-align:left;vertical-align:top;padding:3px 14px 3px 0"
 _NUMBER = _LEFT + ";white-space:nowrap;font-variant-numeric:tabular-nums"
 _SHORT = _LEFT + ";white-space:nowrap"
 _HEAD = _SHORT + ";opacity:0.7"
+_NOTE = "margin-left:2em;white-space:pre-wrap;unicode-bidi:plaintext"
 _SEVERITY = {"warn": "WARN", "fail": "FAIL"}
 
 _THRESHOLDS = {      # name in [thresholds]: (what it is, unit)
@@ -80,8 +82,8 @@ _STILL_STYLE = ("<style><!-- .jp-OutputArea-child:has(+ .jp-OutputArea-child + .
                 ".jp-OutputArea-child:has(+ .jp-OutputArea-child .pathaudit-tables) .jp-RenderedSVG > img { max-width: 100%; } --></style>")
 
 
-def still_tables(audit):
-    """The findings and what belongs to them for the notebook's still form; the class marks it for the live timeline, which hides it.
+def still_tables(audit, notes=()):
+    """The findings, placed notes and what belongs to them for the notebook's still form; the class marks it for the live timeline, which hides it.
 
     One table only: a sanitising export writes the tag of a table's body before each.
     """
@@ -91,8 +93,18 @@ def still_tables(audit):
     lines += [f"<b>{what}</b> &nbsp; {escape(file)}, sha256 {sha256}" for what, file, sha256 in given]
     lines += [f"<b>Not judged</b> &nbsp; {escape(rule)}: {escape(why)}" for rule, why in audit.not_judged]
     lines += ["<b>Cautions</b>", *map(escape, audit.cautions)]
-    return (f'<div class="pathaudit-tables">{verdict_line(audit)}{findings_table(audit)}{"".join(f"<div>{line}</div>" for line in lines)}'
+    shown = f"<div><b>Notes</b> &nbsp; {noted.counted(notes)}</div>{notes_list(audit, notes)}" if notes else ""
+    return (f'<div class="pathaudit-tables">{verdict_line(audit)}{findings_table(audit)}{shown}{"".join(f"<div>{line}</div>" for line in lines)}'
             f"{_STILL_STYLE}</div>")
+
+
+def notes_list(audit, notes, most=noted.LONGEST):
+    """Placed notes, a div for each line: a sanitising export shows the tag of a line break as text. most: signs of a text that are shown."""
+    lines = []
+    for number, placed in enumerate(notes, 1):
+        lines.append(f"<div><b>{escape(noted.head(number, placed, audit))}</b></div>")
+        lines += [f'<div style="{_NOTE}">{escape(line) or "&nbsp;"}</div>' for line in noted.body(placed, most)]
+    return "".join(lines)
 
 
 def inputs_table(audit):

@@ -5,6 +5,7 @@ import json
 from html import escape
 
 from . import html_tables as tables
+from .noted import for_view
 from .scene import scene
 from .script import joined_modules, style_sheet
 from .still import svg_picture
@@ -25,6 +26,7 @@ table { margin: 2px 0; } td { border-top: 1px solid #dfe3e7; } .pa-wide + p { ma
 # A model that holds what a notebook's model would hold, and talks to nobody.
 _START = """
 const held = { facts: JSON.parse(document.getElementById("facts").textContent), status: "", cursor: 0,
+               notes: { file: "", writable: false, fault: "", author: "", notes: JSON.parse(document.getElementById("notes").textContent) },
                block: Uint8Array.from(atob(document.getElementById("block").textContent), (c) => c.charCodeAt(0)) };
 const model = { get: (name) => held[name], set: (name, value) => { held[name] = value; }, save_changes() {}, on() {}, off() {} };
 document.body.classList.add("is-live");
@@ -32,11 +34,11 @@ render({ model, el: document.getElementById("live") }).catch(() => document.body
 """
 
 
-def one_page(audit):
-    """The whole page as a string."""
+def one_page(audit, notes=()):
+    """The whole page as a string. notes: placed notes, all of their texts."""
     shown = scene(audit)
     block, layout = shown.packed()
-    facts = json.dumps({**shown.facts, "layout": layout}, allow_nan=False).replace("<", "\\u003c")
+    facts, told = _json({**shown.facts, "layout": layout}), _json([for_view(placed, audit) for placed in notes])
     title = f"{audit.verdict.upper()}: {audit.cell.name}"
     return f"""<!DOCTYPE html>
 <html lang="en"><head><meta charset="utf-8">
@@ -48,14 +50,23 @@ def one_page(audit):
 <h1>Path audit</h1>
 <div class="pa-still">{tables.verdict_line(audit)}</div>
 <div id="live"></div>
-<div class="pa-still pa-picture">{svg_picture(shown, title=False)}</div>
+<div class="pa-still pa-picture">{svg_picture(shown, title=False, notes=notes)}</div>
 <div class="pa-still"><h2>Findings</h2><div class="pa-wide">{tables.findings_table(audit)}</div></div>
-{_rest(audit)}
+{_notes(audit, notes)}{_rest(audit)}
 <script type="application/json" id="facts">{facts}</script>
+<script type="application/json" id="notes">{told}</script>
 <script type="text/plain" id="block">{base64.b64encode(block).decode()}</script>
 <script type="module">{joined_modules()}{_START}</script>
 </body></html>
 """
+
+
+def _json(values):
+    return json.dumps(values, allow_nan=False).replace("<", "\\u003c")
+
+
+def _notes(audit, notes):
+    return f'<div class="pa-still"><h2>Notes</h2>{tables.notes_list(audit, notes, most=1_000_000)}</div>\n' if notes else ""
 
 
 def _rest(audit):

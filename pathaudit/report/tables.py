@@ -8,17 +8,18 @@ import math
 import numpy as np
 
 from ..taskpath import TIME
+from .noted import json_text, note_values
 from .scene import plain
 
 FORMAT = "pathaudit.check/1"
 
 
-def check_json(audit) -> str:
-    """The verdict, the findings and the suggested retiming as JSON; null where a number is not known or not finite."""
-    return json.dumps(plain(check_values(audit)), indent=1, allow_nan=False, ensure_ascii=False) + "\n"
+def check_json(audit, notes=()) -> str:
+    """The verdict, the findings, the suggested retiming and placed notes as JSON; null where a number is not known or not finite."""
+    return json_text(json.dumps(plain(check_values(audit, notes)), indent=1, allow_nan=False, ensure_ascii=False)) + "\n"
 
 
-def check_values(audit) -> dict:
+def check_values(audit, notes=()) -> dict:
     """What `check_json` writes."""
     path, cell, again = audit.path, audit.cell, audit.suggestion
     return {
@@ -38,6 +39,7 @@ def check_values(audit) -> dict:
             "style": again.style, "duration_s": again.duration, "slowest_fraction_of_programmed_speed": again.slowest,
             "feasible": bool(again.feasible), "why": again.why,
         },
+        "notes": [note_values(k, placed, audit) for k, placed in enumerate(notes, 1)],
         "cautions": list(audit.cautions),
     }  # fmt: skip
 

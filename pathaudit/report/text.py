@@ -3,6 +3,7 @@
 import os
 import textwrap
 
+from . import noted
 from .scene import significant, worst_text
 
 WIDTH = 110
@@ -10,9 +11,9 @@ SHARES = ("joint speed", "joint acceleration", "joint torque", "tool speed")
 """Kinds whose value is a share of their limit."""
 
 
-def summary(audit) -> str:
-    """Verdict, findings with where, how much and why, the suggested retiming, what was not judged, cautions."""
-    parts = [_head(audit), *map(_finding, audit.finding_list), _retiming(audit), _not_judged(audit), _cautions(audit)]
+def summary(audit, notes=()) -> str:
+    """Verdict, findings with where, how much and why, the suggested retiming, placed notes, what was not judged, cautions."""
+    parts = [_head(audit), *map(_finding, audit.finding_list), _retiming(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
     return "\n\n".join(part for part in parts if part) + "\n"
 
 
@@ -57,6 +58,18 @@ def _retiming(audit):
         return ""
     line = f"Suggested retiming ({again.style}): {again.duration:.3f} s in place of {programmed:.3f} s, at the slowest {100 * again.slowest:.3g} % of the programmed speed"
     return f"{line}\n{_indented(again.why)}"
+
+
+def notes_text(notes, audit=None) -> str:
+    """Notes for a terminal; without an audit, where they were written."""
+    if not notes:
+        return ""
+    return "\n".join([f"Notes: {noted.counted(notes)}", *("\n".join(_note(k, placed, audit)) for k, placed in enumerate(notes, 1))])
+
+
+def _note(number, placed, audit):
+    yield textwrap.fill(noted.head(number, placed, audit), WIDTH, subsequent_indent="      ")
+    yield from map(_indented, noted.body(placed))
 
 
 def _not_judged(audit):

@@ -67,7 +67,7 @@ def test_names_cannot_break_out_of_their_place():
     audit.finding_list[0].why = "<img src=x onerror=alert(1)>"
     page = one_page(audit)
     assert "<script>alert" not in page and "<img src=x" not in page
-    assert page.count("<script") == 3
+    assert page.count("<script") == 4
     assert audit.cell.name in text_of(page)
     facts = re.search(r'id="facts">(.*?)</script>', page, re.DOTALL).group(1)
     assert json.loads(facts)["name"] == audit.cell.name

@@ -51,7 +51,7 @@ def variants_compared(audits):
         most = _ENDS[number] * (max([*np.sum([bar["x"] for bar in bars], axis=0), *bounds]) or 1.0)
         figure.add_scatter(x=[most] * len(places), y=places, xaxis=axis, mode="text", text=words, textposition="middle left", hoverinfo="skip", showlegend=False)
         domain = [ends[number] + 0.012, ends[number + 1] - 0.012]
-        figure.update_layout({f"xaxis{axis[1:]}": {"title": {"text": title, "standoff": 6}, "domain": domain, "range": [0.0, most], "gridcolor": FAINT, "nticks": 4, "tickangle": 0}})
+        figure.update_layout({f"xaxis{axis[1:]}": {"title": {"text": title, "standoff": 6}, "domain": domain, "range": [0.0, most], "gridcolor": FAINT, "nticks": 3, "tickangle": 0}})
     rows = {"tickvals": places, "ticktext": ["<br>".join(lines_of(name, 28)) for name in audits], "range": [len(found) - 0.5, -0.5],
             "automargin": True, "zeroline": False, "showgrid": False, "ticksuffix": " "}
     turned_out(figure, "Variants side by side", lines_of("Dashed: the bounds that a finding is judged by, where all variants have the same."), "variants",

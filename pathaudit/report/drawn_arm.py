@@ -64,8 +64,8 @@ class _View:
         self.scale, self.shift = 1.0, np.zeros(2)
         flat = self.project(seen)[0]
         spread = np.maximum(np.ptp(flat, axis=0), 1e-9)
-        self.scale = float(min((box[2] - 64) / spread[0], (box[3] - 84) / spread[1]))
-        middle = np.array([box[0] + box[2] / 2, box[1] + box[3] / 2 - 8])
+        self.scale = float(min((box[2] - 64) / spread[0], (box[3] - 72) / spread[1]))
+        middle = np.array([box[0] + box[2] / 2, box[1] + box[3] / 2 - 4])
         self.shift = middle - self.scale * 0.5 * (flat.min(axis=0) + flat.max(axis=0))
 
     def project(self, points):

@@ -2,6 +2,7 @@
 
 import { armView } from "./arm.js";
 import { button, element, focusable, taken } from "./dom.js";
+import { keyTable } from "./keys.js";
 import { MEASURES } from "./shading.js";
 
 const VIEWS = ["front", "side", "top", "three-quarter"];
@@ -9,39 +10,33 @@ const ELLIPSOID = "Velocity ellipsoid: how fast the tool point can go each way, 
 
 // repaint(): ask for all pictures to be drawn again.
 export function armPanel(ui, repaint) {
-  const stage = element("canvas"), over = element("canvas");
-  const box = focusable("div", { class: "pa-arm", role: "img", "aria-label": "The arm at the cursor. Arrow keys turn it, with Shift move it, plus and minus zoom, "
-    + "1 front, 2 side, 3 top, 4 three-quarter view, Home shows all" }, stage, over);
-  const measure = focusable("select", { "aria-label": "Colour of the path", title: "Colour of the path" },
-    ...MEASURES.map(({ name }, k) => element("option", { value: k }, name)));
-  const ellipsoid = button("ellipsoid", ELLIPSOID, act(() => {
-    view.look.ellipsoid = !view.look.ellipsoid;
-    ellipsoid.setAttribute("aria-pressed", view.look.ellipsoid);
-  }));
-  ellipsoid.setAttribute("aria-pressed", false);
-  measure.addEventListener("change", act(() => { view.look.measure = Number(measure.value); }));
-  const bar = element("div", { class: "pa-arm-bar" },
-    ...VIEWS.map((name, k) => button(k < 3 ? name : "3/4", `View from the ${name}`, act(() => view.view(k)))),
-    button("fit", "Show all of path and arm", act(() => view.fitTo())), measure, ellipsoid);
-  const node = element("div", { class: "pa-arm-pane" }, bar, box);
   let view = null;
 
   // What a hand does to the view, and then the picture again.
-  function act(how) {
-    return (...given) => {
-      how(...given);
-      repaint();
-    };
-  }
+  const act = (how) => (event) => {
+    how(event);
+    repaint();
+  };
+  const stage = element("canvas"), over = element("canvas"), keys = keyTable("Keys of the view", "Keys on the view of the arm");
+  const node = focusable("div", { class: "pa-arm", role: "img", "aria-label": "The arm at the cursor; arrow keys turn the view" }, stage, over);
+  const measure = focusable("select", { "aria-label": "Colour of the path", title: "Colour of the path" },
+    ...MEASURES.map(({ name }, k) => element("option", { value: k }, name)));
+  measure.addEventListener("change", act(() => { view.look.measure = Number(measure.value); }));
+  const ellipsoid = button("ellipsoid", ELLIPSOID, act(() => ellipsoid.setAttribute("aria-pressed", view.look.ellipsoid = !view.look.ellipsoid)));
+  ellipsoid.setAttribute("aria-pressed", false);
+  const all = act(() => view.fitTo()), from = VIEWS.map((_, k) => act(() => view.view(k)));
+  const bar = element("div", { class: "pa-arm-bar" }, ...VIEWS.map((name, k) => button(k < 3 ? name : "3/4", `${name} view`, from[k])),
+    button("fit", "Show all of path and arm", all), measure, ellipsoid, keys.node);
+  const pane = element("div", { class: "pa-arm-pane" }, bar, node);
 
   function show() {
     view = armView(ui.facts(), ui.data(), view);
   }
 
   function fit(width, height) {
-    node.style.width = `${width}px`;
+    pane.style.width = `${width}px`;
     const room = height - bar.offsetHeight;
-    box.style.height = `${room}px`;
+    node.style.height = `${room}px`;
     view.frameAll(width - 2, room - 2);
   }
 
@@ -51,29 +46,28 @@ export function armPanel(ui, repaint) {
     view.drawArm(over, colours, i);
   }
 
-  box.addEventListener("pointerdown", (event) => box.setPointerCapture(event.pointerId));
-  box.addEventListener("pointermove", (event) => {
-    if (box.hasPointerCapture(event.pointerId)) act(event.shiftKey ? view.pan : view.orbit)(event.movementX, event.movementY);
-  });
-  box.addEventListener("dblclick", act(() => view.view(3)));
+  const move = (dx, dy) => act((event) => (event.shiftKey ? view.pan : view.orbit)(dx, dy));
+  for (const entry of [
+    [["ArrowLeft"], "← →", "turn, with Shift move", move(-8, 0)],
+    [["ArrowRight"], "", "", move(8, 0)],
+    [["ArrowUp"], "↑ ↓", "tilt, with Shift move", move(0, -8)],
+    [["ArrowDown"], "", "", move(0, 8)],
+    [["+", "="], "+", "nearer (also the wheel, after a click or with Ctrl)", act(() => view.zoom(1.25))],
+    [["-"], "−", "farther", act(() => view.zoom(0.8))],
+    ...VIEWS.map((name, k) => [[`${k + 1}`], k + 1, `${name} view`, from[k]]),
+    [["Home"], "Home", "all of path and arm", all],
+  ]) keys.add(...entry);
+
+  node.addEventListener("keydown", keys.onKey);
+  node.addEventListener("dblclick", from[3]);
+  node.addEventListener("pointerdown", (event) => node.setPointerCapture(event.pointerId));
+  node.addEventListener("pointermove", (event) => node.hasPointerCapture(event.pointerId) && move(event.movementX, event.movementY)(event));
   // The plain wheel stays the page's until the view has the focus.
-  box.addEventListener("wheel", (event) => {
-    if (!event.ctrlKey && document.activeElement !== box) return;
-    act(view.zoom)(1.002 ** -event.deltaY, event.offsetX, event.offsetY);
+  node.addEventListener("wheel", (event) => {
+    if (!event.ctrlKey && document.activeElement !== node) return;
+    act(() => view.zoom(1.002 ** -event.deltaY, event.offsetX, event.offsetY))();
     taken(event);
   }, { passive: false });
-  box.addEventListener("keydown", (event) => {
-    if (event.altKey || event.ctrlKey || event.metaKey) return;
-    const by = { ArrowLeft: [-8, 0], ArrowRight: [8, 0], ArrowUp: [0, -8], ArrowDown: [0, 8] }[event.key];
-    const factor = { "+": 1.25, "=": 1.25, "-": 0.8 }[event.key];
-    if (by) (event.shiftKey ? view.pan : view.orbit)(...by);
-    else if (factor) view.zoom(factor);
-    else if ("1234".includes(event.key)) view.view(event.key - 1);
-    else if (event.key === "Home") view.fitTo();
-    else return;
-    repaint();
-    taken(event);
-  });
 
-  return { node, show, fit, paint };
+  return { node: pane, show, fit, paint };
 }

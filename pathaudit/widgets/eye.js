@@ -17,8 +17,8 @@ export function eyeOn({ centre, radius, seen, views }, look) {
   function fitTo(width = look.width, height = look.height) {
     Object.assign(look, { width, height, scale: 1, x: 0, y: 0 });
     const [xs, ys] = bounds(seen.map(project));
-    look.scale = look.fitted = Math.min((width - 64) / (xs[1] - xs[0] || 1e-9), (height - 84) / (ys[1] - ys[0] || 1e-9));
-    pan((width - look.scale * (xs[0] + xs[1])) / 2, (height - look.scale * (ys[0] + ys[1])) / 2 - 8);
+    look.scale = look.fitted = Math.min((width - 64) / (xs[1] - xs[0] || 1e-9), (height - 72) / (ys[1] - ys[0] || 1e-9));
+    pan((width - look.scale * (xs[0] + xs[1])) / 2, (height - look.scale * (ys[0] + ys[1])) / 2 - 4);
   }
 
   function view(k) {

@@ -3,12 +3,12 @@
 import { element, popover, taken } from "./dom.js";
 
 // Each entry: the keys that do it, how they are written, what they do, the act (event), and whether Ctrl, Alt or Shift may be held.
-export function keyTable() {
+export function keyTable(title = "All keys", head = "Keys on the timeline") {
   const entries = [];
   const list = element("table");
   const fill = () => list.replaceChildren(...entries.filter(([, , words]) => words)
     .map(([, shown, words]) => element("tr", {}, element("th", {}, shown), element("td", {}, words))));
-  const help = popover("?", "All keys", element("div", { class: "pa-help" }, element("b", {}, "Keys on the timeline"), list), fill);
+  const help = popover("?", title, element("div", { class: "pa-help" }, element("b", {}, head), list), fill);
 
   function add(keys, shown, words, act) {
     for (const key of keys) entries.push([key, shown, key === keys[0] ? words : "", act]);

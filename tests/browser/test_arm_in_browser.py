@@ -246,14 +246,14 @@ def test_views_by_button_and_by_key_are_the_same(opened):
     page = opened(fake_audit(600))
     first = pixels(page)
     seen = {}
-    for key, name in (("1", "View from the front"), ("2", "View from the side"), ("3", "View from the top"), ("4", "View from the three-quarter")):
+    for key, name in (("1", "front view"), ("2", "side view"), ("3", "top view"), ("4", "three-quarter view")):
         page.get_by_role("button", name=name).click()
         seen[name] = pixels(page), pixels(page, 2)
         page.locator(".pa-arm").press("ArrowLeft")
         assert pixels(page) != seen[name][0]
         page.locator(".pa-arm").press(key)
         assert (pixels(page), pixels(page, 2)) == seen[name]
-    assert len(set(seen.values())) == 4 and seen["View from the three-quarter"][0] == first
+    assert len(set(seen.values())) == 4 and seen["three-quarter view"][0] == first
 
 
 def test_keys_turn_zoom_move_and_fit(opened):
@@ -341,15 +341,28 @@ def test_the_ellipsoid_is_switched_and_follows_the_cursor(opened):
 
 def test_the_focus_is_seen_and_keys_are_kept_from_the_lab(opened):
     page = opened(fake_audit(120))
-    places = page.locator(".pa-arm-pane [tabindex], .pa-arm-pane button, .pa-arm-pane select")
-    assert places.count() == 8
-    for place in places.all():
+    places = page.locator(".pa-arm-bar button, .pa-arm-bar select, .pa-arm")
+    assert places.count() == 9
+    for place in [*page.locator(".pa-arm-pane [tabindex]").all(), *places.all()]:
         assert place.get_attribute("data-lm-suppress-shortcuts") == "true" and (place.get_attribute("aria-label") or "").strip()
     page.locator(".pa-arm-bar button").first.focus()
     for k in range(places.count()):
         style = page.evaluate("() => { const s = getComputedStyle(document.activeElement); return [document.activeElement.closest('.pa-arm-pane') !== null, s.outlineStyle, s.outlineWidth]; }")
         assert style == [True, "solid", "2px"], k
         page.keyboard.press("Tab")
+
+
+def test_the_help_lists_the_keys_and_gives_the_focus_back(opened):
+    page = opened(fake_audit(120))
+    page.get_by_role("button", name="Keys of the view").click()
+    box = page.get_by_role("dialog", name="Keys of the view")
+    words = box.inner_text()
+    for part in ("turn, with Shift move", "top view", "Home", "all of path and arm", "nearer"):
+        assert part in words
+    place = box.bounding_box()
+    assert place["x"] >= 0 and place["x"] + place["width"] <= 1200
+    page.keyboard.press("Escape")
+    assert not box.is_visible() and page.evaluate("document.activeElement.getAttribute('aria-label')") == "Keys of the view"
 
 
 @pytest.mark.parametrize("dark", [False, True])

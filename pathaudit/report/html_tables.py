@@ -8,7 +8,7 @@ from pathlib import PurePath
 
 import numpy as np
 
-from . import noted
+from . import noted, origin
 from .scene import clock_offset, significant, worst_text
 
 _LEFT = "text-align:left;vertical-align:top;padding:3px 14px 3px 0"
@@ -54,7 +54,7 @@ def verdict_line(audit):
 def findings_table(audit):
     back = audit.time[0] - clock_offset(audit)
     rows = [(str(k), _SEVERITY.get(f.severity, f.severity), f"{f.kind}, {f.joint}" if f.joint else f.kind,
-             f"{f.t_start - back:.2f} - {f.t_end - back:.2f}", f"{f.from_mm:.0f} - {f.to_mm:.0f}", worst_text(f), f.why)
+             f"{f.t_start - back:.2f} - {f.t_end - back:.2f}", f"{f.from_mm:.0f} - {f.to_mm:.0f}", worst_text(f), f"{f.why} {origin.sentence(audit, f)}".strip())
             for k, f in enumerate(audit.finding_list, 1)]
     if not rows:
         return "<div>No findings.</div>"
@@ -91,6 +91,7 @@ def still_tables(audit, notes=()):
     retiming = f"{audit.path.duration:.2f} s becomes {again.duration:.2f} s. " if _needed(again) else ""
     lines = [f"<b>Suggested retiming</b> &nbsp; {escape(retiming + again.why)}"]
     lines += [f"<b>{what}</b> &nbsp; {escape(file)}, sha256 {sha256}" for what, file, sha256 in given]
+    lines += [f"<b>Path</b> &nbsp; {escape(words)}" for words in audit.path.made]
     lines += [f"<b>Not judged</b> &nbsp; {escape(rule)}: {escape(why)}" for rule, why in audit.not_judged]
     lines += ["<b>Cautions</b>", *map(escape, audit.cautions)]
     shown = f"<div><b>Notes</b> &nbsp; {noted.counted(notes)}</div>{notes_list(audit, notes)}" if notes else ""
@@ -105,6 +106,11 @@ def notes_list(audit, notes, most=noted.LONGEST):
         lines.append(f"<div><b>{escape(noted.head(number, placed, audit))}</b></div>")
         lines += [f'<div style="{_NOTE}">{escape(line) or "&nbsp;"}</div>' for line in noted.body(placed, most)]
     return "".join(lines)
+
+
+def made_list(audit):
+    """How the path came about, a paragraph a sentence."""
+    return "".join(f"<p>{escape(words)}</p>" for words in audit.path.made)
 
 
 def inputs_table(audit):

@@ -71,7 +71,7 @@ def _notes(audit, notes):
 
 def _rest(audit):
     return f"""<h2>Suggested retiming</h2><div class="pa-wide">{tables.retiming_table(audit)}</div>
-<h2>What was given</h2><div class="pa-wide">{tables.inputs_table(audit)}</div><p>{escape(audit.motion.start_reason)}</p>
+<h2>What was given</h2><div class="pa-wide">{tables.inputs_table(audit)}</div><p>{escape(audit.motion.start_reason)}</p>{tables.made_list(audit)}
 <div class="pa-two"><div><h2>Limits used</h2><div class="pa-wide">{tables.limits_table(audit)}</div></div>
 <div><h2>Thresholds</h2><div class="pa-wide">{tables.thresholds_table(audit)}</div></div></div>
 <h2>Not judged</h2><div class="pa-wide">{tables.not_judged_table(audit) or "<p>Everything that has a rule was judged.</p>"}</div>

@@ -7,7 +7,9 @@ import math
 
 import numpy as np
 
+from .. import given
 from ..taskpath import TIME
+from . import origin
 from .noted import json_text, note_values
 from .scene import plain
 
@@ -27,13 +29,15 @@ def check_values(audit, notes=()) -> dict:
         "path": {
             "file": path.file, "sha256": path.sha256, "samples": path.samples, "duration_s": path.duration,
             "length_mm": 1000.0 * path.length, "samples_unreached": int((~audit.motion.reached).sum()),
+            "made": list(path.made), "shape_mm": given.path_shape(path),
         },
         "cell": {
             "name": cell.name, "joints": list(cell.arm.joint_names), "characteristic_length_mm": 1000.0 * cell.characteristic_length,
             "sources": [{"file": file, "sha256": sha256} for file, sha256 in cell.sources], "start": audit.motion.start_reason,
+            "given": given.cell_values(cell),
         },
         "verdict": audit.verdict,
-        "findings": [_finding(finding) for finding in audit.finding_list],
+        "findings": [_finding(audit, finding) for finding in audit.finding_list],
         "not_judged": [{"rule": rule, "why": why} for rule, why in audit.not_judged],
         "retiming": {
             "style": again.style, "duration_s": again.duration, "slowest_fraction_of_programmed_speed": again.slowest,
@@ -44,12 +48,12 @@ def check_values(audit, notes=()) -> dict:
     }  # fmt: skip
 
 
-def _finding(finding):
+def _finding(audit, finding):
     return {
         "kind": finding.kind, "severity": finding.severity, "joint": finding.joint,
         "t_start_s": finding.t_start, "t_end_s": finding.t_end, "worst_t_s": finding.worst_t,
         "value": finding.value, "limit": finding.limit, "unit": finding.unit, "why": finding.why,
-        "from_mm": finding.from_mm, "to_mm": finding.to_mm,
+        "from_mm": finding.from_mm, "to_mm": finding.to_mm, **origin.keys(audit, finding),
     }  # fmt: skip
 
 

@@ -3,7 +3,7 @@
 import os
 import textwrap
 
-from . import noted
+from . import noted, origin
 from .scene import significant, worst_text
 
 WIDTH = 110
@@ -13,7 +13,7 @@ SHARES = ("joint speed", "joint acceleration", "joint torque", "tool speed")
 
 def summary(audit, notes=()) -> str:
     """Verdict, findings with where, how much and why, the suggested retiming, placed notes, what was not judged, cautions."""
-    parts = [_head(audit), *map(_finding, audit.finding_list), _retiming(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
+    parts = [_head(audit), *(_finding(audit, finding) for finding in audit.finding_list), _retiming(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
     return "\n\n".join(part for part in parts if part) + "\n"
 
 
@@ -26,10 +26,15 @@ def _head(audit):
     return f"{line}\n{_indented(given)}"
 
 
-def _finding(finding):
+def _finding(audit, finding):
     who = f"{finding.kind}, {finding.joint}" if finding.joint else finding.kind
     where = f"{finding.t_start:.3f} to {finding.t_end:.3f} s, {finding.from_mm:.1f} to {finding.to_mm:.1f} mm"
-    return f"{finding.severity.upper():4s}  {who}: {where}: {_measure(finding)}\n{_indented(finding.why)}"
+    return f"{finding.severity.upper():4s}  {who}: {where}: {_measure(finding)}\n{_indented(finding.why)}{_origin(audit, finding)}"
+
+
+def _origin(audit, finding):
+    words = origin.sentence(audit, finding)
+    return f"\n{_indented(words)}" if words else ""
 
 
 def _measure(finding):
@@ -70,6 +75,10 @@ def notes_text(notes, audit=None) -> str:
 def _note(number, placed, audit):
     yield textwrap.fill(noted.head(number, placed, audit), WIDTH, subsequent_indent="      ")
     yield from map(_indented, noted.body(placed))
+
+
+def _made(audit):
+    return "\n".join(["How the path was made", *map(_indented, audit.path.made)]) if audit.path.made else ""
 
 
 def _not_judged(audit):

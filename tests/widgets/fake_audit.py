@@ -122,7 +122,7 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0, tight=False):
     ends[0], ends[-1] = np.linalg.inv(part) @ placement @ links[0], links[-1] @ tool
     cell = SimpleNamespace(chain=Chain(ends, np.zeros(n, dtype=np.uint8)), name="Bracket cell <7>", arm=arm, placement=placement, tool=tool, part=part, start=None, thresholds=thresholds,
                            file="cell.toml", sha256="a" * 64, sources=(("cell.toml", "a" * 64),), characteristic_length=0.95)
-    path = SimpleNamespace(time=time, position=position, process=process, samples=samples, duration=float(time[-1] - time[0]),
+    path = SimpleNamespace(source_line=None, made=(), time=time, position=position, process=process, samples=samples, duration=float(time[-1] - time[0]),
                            distance=distance, length=float(distance[-1]), file="seam.csv", sha256="b" * 64, spin_free=False,
                            rotation=poses[:, :3, :3], label=("",) * samples, columns=(), cells=())
     retiming = SimpleNamespace(time=np.cumsum(np.r_[0, np.diff(time) / factor[1:]]), factor=factor, style="local", feasible=True,

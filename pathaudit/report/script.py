@@ -8,7 +8,7 @@ from functools import cache
 from importlib.resources import files
 
 # Each imports only from those before it.
-MODULES = ("data", "dom", "theme", "axis", "layout", "strip", "rows", "overlay", "gestures", "choice", "keys", "space", "eye", "pen", "shading", "arm", "armpanel",
+MODULES = ("data", "dom", "theme", "axis", "layout", "strip", "rows", "overlay", "gestures", "choice", "keys", "span", "stretch", "space", "eye", "pen", "shading", "arm", "armpanel",
            "readout", "findings", "trial", "notes", "view", "kernel", "widget")
 
 _IMPORT = re.compile(r"^import [^;]*;\n", re.MULTILINE)

@@ -79,7 +79,7 @@ export function factorLane(place) {
   return place.lanes.find(({ row }) => row.lines[0][0] === "factor_percent");
 }
 
-// What lies under a point: stretch is the marked one in px, or null; factor its percent, or null where it cannot be dragged.
+// What lies under a point: stretch: the marked one in px, where there is one; factor: its percent, where it can be dragged.
 export function spotAt(place, px, py, stretch, factor) {
   const pin = py < place.strip - 1 && place.pins.find(({ x }) => px >= x - 3 && px <= x + 14);
   if (pin) return { kind: "pin", id: pin.id };
@@ -95,7 +95,7 @@ export function spotAt(place, px, py, stretch, factor) {
   const title = px < place.left - 2 && place.titles.find(({ y, end }) => py >= y && py < end);
   if (title) return { kind: "fold", title: title.group.title };
   if (stretch && py >= place.top - 4) {
-    const lane = factor === null ? null : factorLane(place);
+    const lane = factor && factorLane(place);
     if (lane && px > stretch[0] && px < stretch[1] && Math.abs(py - heightOf(lane, factor)) < 7) return { kind: "factor", lane };
     const end = stretch.findIndex((edge) => Math.abs(px - edge) < 5);
     if (end >= 0) return { kind: "edge", end };

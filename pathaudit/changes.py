@@ -31,18 +31,23 @@ class Change:
 
 
 def changes(before, after) -> tuple:
-    """The Change of every finding of two audits of one path, in order of distance along it.
+    """The Change of every finding of two audits of one path, in order of distance along it."""
+    return matched(before.finding_list, after.finding_list)
+
+
+def matched(before, after) -> tuple:
+    """The Change of every Finding of two sequences, in order of distance along the path.
 
     Findings belong together where kind and joint are the same and their stretches, by distance along the path, come within APART of each other; the
     nearer pairs are matched first.
     """
-    pairs = [(_gap(b, a), i, j) for i, b in enumerate(before.finding_list) for j, a in enumerate(after.finding_list) if (b.kind, b.joint) == (a.kind, a.joint)]
-    left, right, found = set(range(len(before.finding_list))), set(range(len(after.finding_list))), []
+    pairs = [(_gap(b, a), i, j) for i, b in enumerate(before) for j, a in enumerate(after) if (b.kind, b.joint) == (a.kind, a.joint)]
+    left, right, found = set(range(len(before))), set(range(len(after))), []
     for gap, i, j in sorted(pairs):
         if gap <= APART and i in left and j in right:
             left.discard(i), right.discard(j)
-            found.append(_change(before.finding_list[i], after.finding_list[j]))
-    found += [Change("gone", before.finding_list[i], None) for i in left] + [Change("new", None, after.finding_list[j]) for j in right]
+            found.append(_change(before[i], after[j]))
+    found += [Change("gone", before[i], None) for i in left] + [Change("new", None, after[j]) for j in right]
     return tuple(sorted(found, key=lambda c: ((c.after or c.before).from_mm, (c.after or c.before).kind, (c.after or c.before).joint or "")))
 
 

@@ -8,7 +8,6 @@ export function theme(root) {
   return {
     ink: mix(1), soft: mix(0.66), quiet: mix(0.4), faint: mix(0.15), lane: mix(0.045), tube: mix(0.2), ground: mix(0),
     line: dark ? "#56B4E9" : "#0072B2", warn: "#E69F00", fail: dark ? "#E8701A" : "#D55E00",
-    frame: ["#D55E00", "#009E73", dark ? "#56B4E9" : "#0072B2"],
     font: style.fontFamily, mono: style.getPropertyValue("--pa-mono").trim(),
   };
 }

@@ -1,7 +1,9 @@
 """The view of the arm in a real browser: its numbers against NumPy, and what hand and keys do to it."""
 
 import json
+from functools import cache
 
+import hosts
 import numpy as np
 import pytest
 from fake_audit import fake_audit
@@ -30,14 +32,16 @@ window.recorded = (act) => {
 """
 
 
-@pytest.fixture
-def bench(watched):
+@pytest.fixture(scope="module")
+def bench(chromium):
     """A page with the modules' functions at hand."""
-    page = watched().page
-    page.set_content(f"<style>{style_sheet()}</style><div class='pa'></div>")
-    page.add_script_tag(type="module", content=joined_modules() + _BENCH)
-    page.wait_for_function("() => Boolean(window.recorded)")
-    return page
+    one = hosts.Watched(chromium)
+    one.page.set_content(f"<style>{style_sheet()}</style><div class='pa'></div>")
+    one.page.add_script_tag(type="module", content=joined_modules() + _BENCH)
+    one.page.wait_for_function("() => Boolean(window.recorded)")
+    yield one.page
+    one.close()
+    assert not one.faults
 
 
 def told(page, audit):
@@ -130,25 +134,35 @@ def test_the_drawn_outline_is_that_of_the_ellipsoid(bench, name):
     np.testing.assert_allclose(sizes, sizes[0], rtol=2e-3)      # equal lengths are equal speeds
 
 
-@pytest.mark.parametrize("width, height", [(400, 274), (398, 300), (700, 900)])
-def test_nothing_is_cut_and_words_stay_apart(bench, width, height):
-    for make in ARMS.values():
-        shown = told(bench, make())
-        bench.evaluate("""([w, h]) => { window.view = bench.armView(facts, data); view.frameAll(w, h); window.canvas = document.createElement("canvas");
-                                        window.colours = bench.theme(document.querySelector(".pa")); }""", [width, height])
-        points = skeleton(shown.facts, shown.arrays["joints"]).points.reshape(-1, 3)
-        everything = np.vstack([points[np.isfinite(points).all(axis=1)], shown.arrays["path_m"]])
-        for k in range(4):
-            flat = np.array(bench.evaluate("([k, points]) => { view.view(k); return points.map(view.project); }", [k, everything.tolist()]))
-            assert flat[:, :2].min() > 8 and flat[:, 0].max() < width - 8 and flat[:, 1].max() < height - 8
-            for measure in (0, 1):
-                for i in np.linspace(0, shown.facts["shown"] - 1, 4).astype(int).tolist():
-                    words = bench.evaluate("""([measure, i]) => { Object.assign(view.look, { measure, ellipsoid: true });
-                        return recorded(() => { view.drawStage(canvas, colours); view.drawArm(canvas, colours, i); }).words; }""", [measure, i])
-                    boxes = [(x, y - 6, x + wide, y + 6) for _, x, y, wide in words]
-                    assert all(left >= 0 and right <= width and top >= 0 and bottom <= height for left, top, right, bottom in boxes), words
-                    for n, (left, top, right, bottom) in enumerate(boxes):
-                        assert not any(left < r and l < right and top < b and t < bottom for l, t, r, b in boxes[:n]), words
+_EVERYWHERE = """([width, height, points, samples]) => {
+    const view = bench.armView(facts, data), canvas = document.createElement("canvas"), colours = bench.theme(document.querySelector(".pa"));
+    view.frameAll(width, height);
+    view.look.ellipsoid = true;
+    return [0, 1, 2, 3].map((k) => {
+        view.view(k);
+        return [points.map(view.project), [0, 1].flatMap((measure) => {
+            view.look.measure = measure;
+            return samples.map((i) => recorded(() => { view.drawStage(canvas, colours); view.drawArm(canvas, colours, i); }).words);
+        })];
+    });
+}"""
+
+
+@pytest.mark.parametrize("name", ARMS)
+def test_nothing_is_cut_and_words_stay_apart(bench, name):
+    shown = told(bench, ARMS[name]())
+    points = skeleton(shown.facts, shown.arrays["joints"]).points.reshape(-1, 3)
+    everything = np.vstack([points[np.isfinite(points).all(axis=1)], shown.arrays["path_m"]])[::5].tolist()
+    samples = np.linspace(0, shown.facts["shown"] - 1, 5).astype(int).tolist()
+    for width, height in ((400, 274), (398, 300), (700, 900)):
+        for flat, pictures in bench.evaluate(_EVERYWHERE, [width, height, everything, samples]):
+            x, y, _ = np.array(flat).T
+            assert x.min() > 8 and y.min() > 8 and x.max() < width - 8 and y.max() < height - 8
+            for words in pictures:
+                boxes = [(x, y - 6, x + wide, y + 6) for _, x, y, wide in words]
+                assert all(left >= 0 and right <= width and top >= 0 and bottom <= height for left, top, right, bottom in boxes), words
+                for n, (left, top, right, bottom) in enumerate(boxes):
+                    assert not any(left < r and l < right and top < b and t < bottom for l, t, r, b in boxes[:n]), words
 
 
 def test_the_scale_of_a_measure(bench):
@@ -221,14 +235,19 @@ def test_zoom_and_orbit_hold_what_is_looked_at(bench):
     assert bench.evaluate("() => view.look.scale / view.look.fitted") == pytest.approx(0.4)
 
 
+@cache
+def report(name):
+    return one_page(ARMS[name]())
+
+
 @pytest.fixture
 def opened(watched, tmp_path):
-    """Open an audit's page; gives the browser's page once the timeline is painted."""
+    """Open an arm's page; gives the browser's page once the timeline is painted."""
 
-    def make(audit, **options):
+    def make(name="six"):
         file = tmp_path / "audit.html"
-        file.write_text(one_page(audit), encoding="utf-8")
-        page = watched(**options).page
+        file.write_text(report(name), encoding="utf-8")
+        page = watched().page
         page.goto(file.as_uri())
         page.wait_for_selector(".pa[data-painted]", timeout=10000)
         return page
@@ -243,7 +262,7 @@ def pixels(page, layer=1):
 
 
 def test_views_by_button_and_by_key_are_the_same(opened):
-    page = opened(fake_audit(600))
+    page = opened()
     first = pixels(page)
     seen = {}
     for key, name in (("1", "front view"), ("2", "side view"), ("3", "top view"), ("4", "three-quarter view")):
@@ -257,7 +276,7 @@ def test_views_by_button_and_by_key_are_the_same(opened):
 
 
 def test_keys_turn_zoom_move_and_fit(opened):
-    page = opened(fake_audit(600))
+    page = opened()
     arm, first = page.locator(".pa-arm"), pixels(page)
     for there, back in (("ArrowRight", "ArrowLeft"), ("ArrowDown", "ArrowUp"), ("Shift+ArrowRight", "Shift+ArrowLeft"), ("Shift+ArrowUp", "Shift+ArrowDown"), ("+", "-")):
         arm.press(there)
@@ -272,7 +291,7 @@ def test_keys_turn_zoom_move_and_fit(opened):
 
 
 def test_the_wheel_zooms_with_the_focus_or_ctrl_and_a_drag_moves(opened):
-    page = opened(fake_audit(600))
+    page = opened()
     arm, first = page.locator(".pa-arm"), pixels(page)
     box = arm.bounding_box()
     middle = box["x"] + 0.5 * box["width"], box["y"] + 0.5 * box["height"]
@@ -317,7 +336,7 @@ def test_the_wheel_zooms_with_the_focus_or_ctrl_and_a_drag_moves(opened):
 
 
 def test_the_path_is_coloured_by_what_is_chosen(opened):
-    page = opened(fake_audit(600))
+    page = opened()
     choose = page.get_by_role("combobox", name="Colour of the path")
     names = choose.locator("option").all_inner_texts()
     assert names == ["severity", "busiest joint", "sigma_min", "tool speed", "factor"]
@@ -331,7 +350,7 @@ def test_the_path_is_coloured_by_what_is_chosen(opened):
 
 
 def test_the_ellipsoid_is_switched_and_follows_the_cursor(opened):
-    page = opened(fake_audit(600))
+    page = opened()
     switch, without = page.get_by_role("button", name="Velocity ellipsoid"), pixels(page, 2)
     switch.press("Enter")
     assert switch.get_attribute("aria-pressed") == "true" and pixels(page, 2) != without
@@ -340,7 +359,7 @@ def test_the_ellipsoid_is_switched_and_follows_the_cursor(opened):
 
 
 def test_the_focus_is_seen_and_keys_are_kept_from_the_lab(opened):
-    page = opened(fake_audit(120))
+    page = opened()
     places = page.locator(".pa-arm-bar button, .pa-arm-bar select, .pa-arm")
     assert places.count() == 9
     for place in [*page.locator(".pa-arm-pane [tabindex]").all(), *places.all()]:
@@ -353,7 +372,7 @@ def test_the_focus_is_seen_and_keys_are_kept_from_the_lab(opened):
 
 
 def test_the_help_lists_the_keys_and_gives_the_focus_back(opened):
-    page = opened(fake_audit(120))
+    page = opened()
     page.get_by_role("button", name="Keys of the view").click()
     box = page.get_by_role("dialog", name="Keys of the view")
     words = box.inner_text()
@@ -367,7 +386,7 @@ def test_the_help_lists_the_keys_and_gives_the_focus_back(opened):
 
 @pytest.mark.parametrize("dark", [False, True])
 def test_the_arm_is_drawn_in_the_colours_of_the_page(opened, dark):
-    page = opened(mounted(HANGING))
+    page = opened("hanging")
     if dark:
         page.add_style_tag(content=".pa { --jp-layout-color0: #111; --jp-ui-font-color0: #eee }")
         page.wait_for_timeout(100)

@@ -19,7 +19,8 @@ import numpy as np
 
 from ..errors import ReadError, first_repeated, one_line, quoted
 from ..taskpath import MEANING
-from .sources import LARGE, check_text, not_utf8
+from . import sources
+from .sources import check_text, not_utf8
 
 NUMBER = "a number with a decimal point"
 BLOCK = 1 << 21  # bytes
@@ -35,7 +36,7 @@ class Table:
     """
 
     def __init__(self, file, data, expected, known=MEANING):
-        self.file, self.expected, self.large = file, expected, len(data) >= LARGE
+        self.file, self.expected, self.large = file, expected, len(data) >= sources.LARGE
         check_text(file, data[:BLOCK], expected)
         if self.large and b"\n" not in data[:BLOCK]:
             data = data[:]  # line ends of another kind, or a line too long to be one
@@ -321,7 +322,7 @@ def _names(line, delimiter):
 
 
 def numbers_of(file, column, cells, lines):
-    """(N,) float64: what Python's float() makes of each cell; `lines` holds the line of each. Raises ReadError."""
+    """(N,) float64: what Python's float() makes of each cell; `lines` holds the line of each, None where there are only rows. Raises ReadError."""
     try:
         values = np.fromiter(map(float, cells), np.float64, len(cells))
     except ValueError:
@@ -329,7 +330,8 @@ def numbers_of(file, column, cells, lines):
     if values is None or not all(map(str.isascii, cells)) or any("_" in cell for cell in cells):  # float() takes 1_000 and other scripts' digits
         row = next((k for k, cell in enumerate(cells) if not is_number(cell)), None)
         if row is not None:
-            raise ReadError(file, f"line {lines[row]}, column {column}", *not_a_number(cells[row]))
+            place = f"row {row + 1}" if lines is None else f"line {lines[row]}"
+            raise ReadError(file, f"{place}, column {column}", *not_a_number(cells[row]))
     return values
 
 

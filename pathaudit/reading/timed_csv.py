@@ -1,6 +1,7 @@
 """A timed path from a CSV file: a header row, one sample a line, '#' comment lines."""
 
-from ..taskpath import Path, assemble
+from ..taskpath import Path
+from .columns import path_of
 from .csv_table import Table
 
 EXPECTED = "a timed path as CSV text"
@@ -8,7 +9,4 @@ EXPECTED = "a timed path as CSV text"
 
 def read_timed_csv(data: bytes, name, sha256: str, options=None) -> Path:
     """The path in the bytes of a file; `name` stands in messages. Raises ReadError."""
-    table = Table(name, data, EXPECTED)
-    return assemble(
-        table.header, table.cells, table.numbers, name=name, sha256=sha256, place=table.place, label=table.label, lines=table.lines,
-    )  # fmt: skip
+    return path_of(Table(name, data, EXPECTED), name, sha256)

@@ -28,8 +28,7 @@ def engine(request, monkeypatch):
     else:
         monkeypatch.setitem(sys.modules, "pyarrow", None)
         monkeypatch.setitem(sys.modules, "pyarrow.csv", None)
-    for module in (csv_table, sources):
-        monkeypatch.setattr(module, "LARGE", 1)
+    monkeypatch.setattr(sources, "LARGE", 1)
     monkeypatch.setattr(csv_table, "BLOCK", 2000)
     return request.param
 
@@ -46,8 +45,7 @@ def both(file, monkeypatch):
     """What the careful reader and the engine make of a file."""
     fast = outcome(file)
     with monkeypatch.context() as patch:
-        for module in (csv_table, sources):
-            patch.setattr(module, "LARGE", 1 << 40)
+        patch.setattr(sources, "LARGE", 1 << 40)
         return outcome(file), fast
 
 

@@ -79,23 +79,18 @@ def retimed_csv(retiming) -> str:
     path = retiming.rates.motion.path
     name = next(name for name in TIME if name in path.columns)
     per_second = 1000.0 if name == "t_ms" else 1.0
-    columns = [_texts(cells) for cells in path.cells]
-    columns[path.columns.index(name)] = map(repr, (retiming.time * per_second).tolist())
-    # a first cell that begins with '#' would make its line a comment
-    quoted = any(text.lstrip().startswith("#") for text in (path.columns[0], *_texts(path.cells[0])))
-    return _csv(path.columns, zip(*columns), csv.QUOTE_ALL if quoted else csv.QUOTE_MINIMAL)
+    columns = [_spelled(retiming.time * per_second) if column == name else texts(cells) for column, cells in zip(path.columns, path.cells)]
+    return csv_text(path.columns, columns)
 
 
-def _texts(cells):
-    """The values of a column as text: as it was read, or as numbers are written (1 and 0 for yes and no)."""
-    if isinstance(cells, np.ndarray):
-        cells = (cells.astype(int) if cells.dtype == bool else cells).tolist()
-    return list(map(str, cells))
+def _spelled(values):
+    """Numbers as texts that are read as the same doubles."""
+    return list(map(repr, values.tolist()))
 
 
-def _csv(header, rows, quoting=csv.QUOTE_MINIMAL):
+def _csv(header, rows):
     stream = io.StringIO()
-    writer = csv.writer(stream, lineterminator="\n", quoting=quoting)
+    writer = csv.writer(stream, lineterminator="\n")
     writer.writerow(header)
     writer.writerows(rows)
     return stream.getvalue()

@@ -157,7 +157,10 @@ export function armView(facts, data, old) {
     write(`half axes ${axes.map(([speed]) => mm(speed)).join(", ")} mm/s`, 10, 14, "ink");
   }
 
-  return { ...eye, look, place, frameAll, drawStage, drawArm, orbit: (dx, dy) => eye.orbit(dx, dy, look.scale > 1.4 * look.fitted ? tip : room.centre) };
+  // By hand the eye turns about the middle of the cell, or the tool point where the view has come nearer, and comes nearer to that unless told where.
+  const orbit = (dx, dy) => eye.orbit(dx, dy, look.scale > 1.4 * look.fitted ? tip : room.centre);
+  const zoom = (factor, ...at) => eye.zoom(factor, ...(at.length ? at : project(tip)));
+  return { ...eye, look, place, frameAll, drawStage, drawArm, orbit, zoom };
 }
 
 // The size of the scene and what the arm stands on, from places of the path and some postures.

@@ -52,7 +52,7 @@ export function armPanel(ui, repaint) {
     [["ArrowRight"], "", "", move(8, 0)],
     [["ArrowUp"], "↑ ↓", "tilt, with Shift move", move(0, -8)],
     [["ArrowDown"], "", "", move(0, 8)],
-    [["+", "="], "+", "nearer (also the wheel, after a click or with Ctrl)", act(() => view.zoom(1.25))],
+    [["+", "="], "+", "nearer to the tool (also the wheel, after a click or with Ctrl)", act(() => view.zoom(1.25))],
     [["-"], "−", "farther", act(() => view.zoom(0.8))],
     ...VIEWS.map((name, k) => [[`${k + 1}`], k + 1, `${name} view`, from[k]]),
     [["Home"], "Home", "all of path and arm", all],

@@ -41,7 +41,7 @@ export function eyeOn({ centre, radius, seen, views }, look) {
   }
 
   // What is seen at (x, y) stays there.
-  function zoom(factor, x = look.width / 2, y = look.height / 2) {
+  function zoom(factor, x, y) {
     const by = clamp(look.scale * factor, 0.4 * look.fitted, 25 * look.fitted) / look.scale;
     look.scale *= by;
     pan((by - 1) * (look.x - x), (by - 1) * (look.y - y));

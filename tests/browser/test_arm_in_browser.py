@@ -229,6 +229,8 @@ def test_zoom_and_orbit_hold_what_is_looked_at(bench):
     place = bench.evaluate("() => { view.drawArm(document.createElement('canvas'), bench.theme(document.querySelector('.pa')), 100); return data.path_m.map((c) => c[100]); }")
     ends = bench.evaluate("(p) => { const at = view.project(p); view.orbit(60, -30); return [at, view.project(p)]; }", place)
     np.testing.assert_allclose(ends[1][:2], ends[0][:2], atol=1e-9)
+    bench.evaluate("() => view.zoom(1.3)")
+    np.testing.assert_allclose(bench.evaluate("(p) => view.project(p)", place)[:2], ends[0][:2], atol=1e-9)
     bench.evaluate("() => view.zoom(1e9)")
     assert bench.evaluate("() => view.look.scale / view.look.fitted") == pytest.approx(25)
     bench.evaluate("() => view.zoom(1e-9)")

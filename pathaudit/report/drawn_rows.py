@@ -91,12 +91,9 @@ def draw_rows(surface, places, facts, arrays):
         surface.text(10, y, shortened(surface, words, places.left + places.plot, 12), INK, size=12, bold=True)
     for lane in places.lanes:
         draw_lane(surface, places, facts, arrays, lane)
-    top, bottom = places.lanes[0].y, places.axis - 4
     for start, end in facts["gaps"]:
-        x, width = float(places.x(start)), max(2.0, float(places.x(end) - places.x(start)))
-        surface.hatch(x, top, width, bottom - top, "gap", SOFT)
-        if width > 70:
-            _label(surface, x + width / 2, top + 12, "not reached")
+        if places.x(end) - places.x(start) > 70:
+            _label(surface, float(places.x(0.5 * (start + end))), places.lanes[0].y + places.lanes[0].row["height"] / 2, "not reached")
     draw_axis(surface, places)
 
 
@@ -169,9 +166,12 @@ def draw_lane(surface, places, facts, arrays, lane):
         at = float(height_of(row, y, value))
         if y < at < y + height:
             surface.line([(left, at), (left + plot, at)], QUIET, 1, (1, 3) if severity == "warn" else ())
+    _draw_lines(surface, places, arrays, row, y)
+    for start, end in facts["gaps"]:
+        x, far = float(places.x(start)), float(places.x(end))
+        surface.hatch(x, y, max(2.0, far - x), height, "gap", SOFT)
     if row["word"]:
         surface.text(left + 6, y + height / 2, row["word"])
-    _draw_lines(surface, places, arrays, row, y)
 
 
 def _draw_lines(surface, places, arrays, row, y):

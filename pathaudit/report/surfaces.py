@@ -7,7 +7,7 @@ from html import escape
 import numpy as np
 
 INK, SOFT, QUIET, FAINT, LANE, TUBE, GROUND = "#1b1f24", "#5b6168", "#9a9fa4", "#dcdee0", "#f4f4f5", "#d2d4d6", "#ffffff"
-LINE, GREEN, SEVERITY = "#0072b2", "#009e73", {"pass": "#009e73", "warn": "#e69f00", "fail": "#d55e00"}     # Okabe and Ito
+LINE, GREEN, SEVERITY = "#0072b2", "#009e73", {"pass": "#009e73", "warn": "#b97f00", "fail": "#d55e00"}     # Okabe and Ito, the orange darker
 STRIPES = {"warn": (8, (1,)), "fail": (5, (1, -1)), "gap": (8, (-1,))}       # spacing, directions of the stripes
 
 

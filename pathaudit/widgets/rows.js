@@ -13,7 +13,6 @@ export function drawRows(canvas, place, colours, facts, data, marks) {
   for (const { words, y } of place.heads) text(context, shortened(context, words, place.width - place.left, small), place.left, y, small);
   for (const title of place.titles) drawTitle(context, place, colours, title);
   for (const at of place.lanes) drawLane(context, place, at, colours, facts, data);
-  drawGaps(context, place, colours);
   drawMarks(context, place, colours, marks);
   drawAxis(context, place, colours);
 }
@@ -22,19 +21,6 @@ export function clipTo(context, place, top, bottom) {
   context.beginPath();
   context.rect(place.left - 1, top, place.plot + 2, bottom - top);
   context.clip();
-}
-
-function drawGaps(context, place, colours) {
-  const gap = hatch(context, "gap", colours.soft), { top } = place, bottom = place.bottom - 4;
-  context.save();
-  clipTo(context, place, top, bottom);
-  for (const [from, to] of place.gaps) {
-    const x = place.x(from), width = Math.max(2, place.x(to) - x);
-    context.fillStyle = gap;
-    context.fillRect(x, top, width, bottom - top);
-    if (width > 70) boxed(context, "not reached", clamp(x + width / 2, place.left + 40, place.left + place.plot - 40), top + 12, colours);
-  }
-  context.restore();
 }
 
 // A bracket at the top of the factor row, with its word where there is room.
@@ -78,7 +64,23 @@ function drawLane(context, place, at, colours, facts, data) {
   if (row.lines[0][2] === "ceiling") drawShortage(context, place, at, colours, data);
   context.restore();
   for (const line of row.lines) drawLine(context, place, at, colours, data, line);
-  if (row.word) text(context, row.word, left + 6, y + height / 2, { colour: colours.soft, family: colours.font });
+  drawGaps(context, place, at, colours);
+  if (row.word) boxed(context, row.word, left + 92, y + height / 2, { ...colours, ink: colours.soft, ground: colours.lane });
+}
+
+// Where nothing was reached; the uppermost lane says so.
+function drawGaps(context, place, at, colours) {
+  const { y, height } = at, gap = hatch(context, "gap", colours.soft);
+  context.save();
+  clipTo(context, place, y, y + height);
+  for (const [from, to] of place.gaps) {
+    const x = place.x(from), width = Math.max(2, place.x(to) - x);
+    context.fillStyle = gap;
+    context.fillRect(x, y, width, height);
+    const middle = clamp(x + width / 2, place.left + 40, place.left + place.plot - 40);
+    if (at === place.lanes[0] && width > 70) boxed(context, "not reached", middle, y + height / 2, colours);
+  }
+  context.restore();
 }
 
 // A finding fills its own lane; one of a lane that is folded away is shown at the foot of the lane that stands for it.

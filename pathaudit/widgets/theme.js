@@ -1,4 +1,5 @@
-// Colours and patterns. Ground, ink and fonts follow the page; lines and severities are Okabe and Ito's colours, which most eyes tell apart.
+// Colours and patterns. Ground, ink and fonts follow the page; lines and severities are Okabe and Ito's colours, which most eyes tell apart;
+// the orange is darker on a light ground, where it would not stand out.
 
 export function theme(root) {
   const style = getComputedStyle(root);
@@ -7,7 +8,7 @@ export function theme(root) {
   const dark = ground[0] + ground[1] + ground[2] < 380;
   return {
     ink: mix(1), soft: mix(0.66), quiet: mix(0.4), faint: mix(0.15), lane: mix(0.045), tube: mix(0.2), ground: mix(0),
-    line: dark ? "#56B4E9" : "#0072B2", warn: "#E69F00", fail: dark ? "#E8701A" : "#D55E00",
+    line: dark ? "#56B4E9" : "#0072B2", warn: dark ? "#E69F00" : "#B97F00", fail: dark ? "#E8701A" : "#D55E00",
     font: style.fontFamily, mono: style.getPropertyValue("--pa-mono").trim(),
   };
 }

@@ -562,6 +562,55 @@ def test_pictures_follow_the_width(opened, audit):
         assert page.evaluate("document.documentElement.scrollWidth <= innerWidth + 1") or width < 700
 
 
+def luminance(colour):
+    """Relative luminance of "rgb(r g b)" or "#rrggbb" (WCAG 2.2)."""
+    channels = [int(colour[k:k + 2], 16) for k in (1, 3, 5)] if colour.startswith("#") else [float(v) for v in colour[4:-1].split()]
+    linear = [v / 255 / 12.92 if v <= 10 else ((v / 255 + 0.055) / 1.055) ** 2.4 for v in channels]
+    return float(np.dot([0.2126, 0.7152, 0.0722], linear))
+
+
+def contrast(one, other):
+    low, high = sorted((luminance(one), luminance(other)))
+    return (high + 0.05) / (low + 0.05)
+
+
+@pytest.mark.parametrize("ground, ink", [("#fff", "#1b1f24"), ("#fff", "rgba(0, 0, 0, 0.87)"), ("#111", "#fff"), ("#111", "rgba(255, 255, 255, 0.87)")])
+def test_words_and_lines_stand_out_in_light_and_dark(watched, ground, ink):
+    page = watched().page
+    page.set_content(f"<style>{style_sheet()}</style><div class='pa' style='--pa-ground: {ground}; --pa-ink: {ink}'><button>one</button></div>")
+    page.add_script_tag(type="module", content=joined_modules() + "\nwindow.theme = theme;")
+    page.wait_for_function("() => Boolean(window.theme)")
+    colours = page.evaluate("window.theme(document.querySelector('.pa'))")
+    for place in ("ground", "lane"):
+        assert all(contrast(colours[name], colours[place]) >= 4.5 for name in ("ink", "soft")), place
+        assert all(contrast(colours[name], colours[place]) >= 3 for name in ("line", "warn", "fail")), place
+
+
+@pytest.mark.parametrize("width", [900, 1800])
+def test_nothing_overlaps_or_is_cut(opened, tight, width):
+    page = opened(tight, width=width)
+    press(page, "n", "s")
+    cursor(page)
+    cut = page.evaluate("() => [...document.querySelectorAll('.pa-head *, .pa-read *, .pa-tools button, .pa-findings td, .pa-findings th, .pa-filter > *')]"
+                        ".filter((e) => e.offsetParent && e.scrollWidth > e.clientWidth + 1 && getComputedStyle(e).display !== 'inline').map((e) => e.outerHTML.slice(0, 90))")
+    assert cut == []
+    boxes = page.evaluate("() => ['.pa-head', '.pa-read', '.pa-tools', '.pa-rows', '.pa-arm-pane', '.pa-filter', '.pa-list'].map((name) => {"
+                          " const b = document.querySelector(name).getBoundingClientRect(); return [name, b.left, b.top, b.right, b.bottom]; })")
+    over = lambda a, b: a[1] < b[3] - 0.5 and b[1] < a[3] - 0.5 and a[2] < b[4] - 0.5 and b[2] < a[4] - 0.5      # noqa: E731
+    assert [(a[0], b[0]) for k, a in enumerate(boxes) for b in boxes[:k] if over(a, b)] == []
+    buttons = page.evaluate("() => [...document.querySelectorAll('.pa-tools button')].filter((e) => e.offsetParent).map((e) => {"
+                            " const b = e.getBoundingClientRect(); return [e.textContent, b.left, b.top, b.right, b.bottom]; })")
+    assert [(a[0], b[0]) for k, a in enumerate(buttons) for b in buttons[:k] if over(a, b)] == [] and len(buttons) >= 9
+
+
+@pytest.mark.parametrize("n, most", [(2, 620), (7, 620), (12, 620)])
+def test_the_folded_rows_stay_low(opened, n, most):
+    audit = fake_audit(600, n)
+    audit.finding_list = ()
+    page = opened(audit)
+    assert page.locator(".pa-rows").bounding_box()["height"] <= most
+
+
 @pytest.mark.parametrize("samples, n", [(2, 1), (2, 12), (1500, 12), (30_000, 6)])
 def test_any_path_is_drawn(opened, samples, n):
     audit = fake_audit(samples, n)
@@ -691,6 +740,9 @@ def test_notes_are_flags_that_lead_to_them(heard, audit):
     pins = placed(heard)["pins"]
     assert len(pins) == 9 and placed(heard)["process"] > before
     assert all(b - a >= 17 for a, b in zip(pins, pins[1:])) and pins[-1] <= placed(heard)["left"] + placed(heard)["plot"] + 20
+    box = heard.locator(".pa-rows").bounding_box()
+    heard.mouse.click(box["x"] + pins[0] + 6, box["y"] + 14)      # the leftmost flag is the third note's
+    heard.wait_for_function("() => document.activeElement.closest('[data-id]')?.dataset.id === 'n2'")
     first = pixels(heard, ".pa-rows canvas:nth-child(1)")
     value["notes"][0]["settled"] = True
     heard.evaluate("(notes) => window.change({ notes })", value)

@@ -13,7 +13,7 @@ function product(a, b) {
 }
 
 // The posture at kept sample i: `points`, each joint's origin, flange and tool point; `roots`, where each joint's slide begins; `axes`, the
-// joints' directions; `tool`, the tool's pose. Null where the path was not reached. Follows joint_points (skeleton.py).
+// joints' directions; `tool`, the tool's pose. Null where the path was not reached. Follows skeleton (skeleton.py).
 export function postureAt(facts, data, i) {
   const points = [], roots = [], axes = [];
   let pose = facts.base;

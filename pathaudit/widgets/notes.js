@@ -54,11 +54,11 @@ export function notesPanel({ element, focusable, button, ask, finding, sample, p
     const { id, settled, stale, mark } = note;
     const acts = ask ? [button("edit", `Edit note ${k + 1}`, () => write(note)),
       button(settled ? "reopen" : "settle", `Note ${k + 1} is ${settled ? "open again" : "settled"}`, () => ask({ do: "note settle", id, settled: !settled })), remover(id)] : [];
-    const parts = [note.text, ...(note.others || []).map(({ by, text: other }) => `or, by ${by}: ${other}`), mark && `To decide: ${mark}`, stale && `Stale: ${stale}`];
+    const parts = [["", note.text], ...(note.others || []).map(({ by, text: other }) => [`or, by ${by}: `, other]), ["To decide: ", mark], ["Stale: ", stale]];
     return element("div", { role: "listitem", class: settled ? "pa-settled" : "", "data-id": id },
       element("div", { class: "pa-line" }, element("b", {}, `${k + 1}${stale ? "?" : ""}`), button(note.where, `Note ${k + 1}, ${note.where}`, () => go(note.sample)),
         [note.status, note.author, note.date, note.edited, note.finding].filter(Boolean).join(" · "), ...acts),
-      ...parts.filter(Boolean).map((words) => element("div", { dir: "auto" }, words)));
+      ...parts.filter(([, words]) => words).map(([head, words]) => element("div", { dir: "auto" }, element("b", {}, head), words)));
   }
 
   function fill() {

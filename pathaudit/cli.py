@@ -1,4 +1,4 @@
-"""The command line: `pathaudit check`, `pathaudit notes` and `pathaudit demo`.
+"""The command line: `pathaudit check`, `pathaudit convert`, `pathaudit notes` and `pathaudit demo`.
 
 Exit status: 0 nothing fails; 1 a finding fails; 2 something given cannot be used, said in one line on stderr.
 """
@@ -9,7 +9,7 @@ import shlex
 import sys
 
 from . import __version__
-from .errors import PathAuditError, UsageError, WriteError, quoted
+from .errors import ModelError, PathAuditError, UsageError, WriteError, quoted
 
 EXAMPLE = """example:
   pathaudit demo my-cell
@@ -45,20 +45,93 @@ def _parser():
     parser.add_argument("--version", action="version", version=f"pathaudit {__version__}")
     commands = parser.add_subparsers(dest="command", metavar="COMMAND", required=True)
     check = commands.add_parser(
-        "check", help="audit a timed path with a cell", description="Audit a timed path (CSV) with a cell (TOML).",
+        "check", help="audit a path with a cell", description="Audit a path with a cell (TOML). The path's content says what kind of file it is.",
         epilog=EXAMPLE, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
     )  # fmt: skip
-    check.add_argument("path", metavar="PATH", help="the timed path, a CSV file")
+    check.add_argument("path", metavar="PATH", help="the path: a timed CSV, or another of the formats below")
     check.add_argument("--cell", metavar="CELL.toml", required=True, help="the cell: arm, placement, tool, part, limits")
     check.add_argument("--json", metavar="FILE", help="write the verdict and findings as JSON; - writes them to stdout, the summary to stderr")
     check.add_argument("--joints", metavar="FILE.csv", help="write the joint motion and its measures, one row a sample")
     check.add_argument("--retimed", metavar="FILE.csv", help="write the path with the suggested times")
     check.add_argument("--html", metavar="FILE", help="write the whole audit as one self-contained page")
     check.add_argument("--notes", metavar="FILE.notes.toml", help="put these notes into the summary, the JSON and the page, with what is stale")
+    _add_reading(check)
+    _add_convert(commands)
     _add_notes(commands)
     demo = commands.add_parser("demo", help="write a ready cell, path and notebook", description="Write a ready cell, path and notebook into a folder.", allow_abbrev=False)
     demo.add_argument("folder", metavar="FOLDER", help="made where it is missing; nothing in it is overwritten")
     return parser
+
+
+READING = {
+    "format": ("format", "F", "what PATH is, where its content shall not decide: timed, waypoints, iso6983, cutter-location, parquet, feather, json-lines, recorded"),
+    "axis": ("axis", "I,J,K", "the tool's +Z in the part frame, for a file without orientation; --axis=-1,0,0 where it begins with a minus"),
+    "inch-codes": ("inch_codes", None, "G20 means inch and G21 millimetre"),
+    "units": ("units", "U", "mm or inch, for a file that does not say it"),
+    "speed": ("speed_mm_s", "MM/S", "the tool's largest speed, for a file without times"),
+    "acceleration": ("acceleration_mm_s2", "MM/S2", "the tool's largest acceleration, for a file without times"),
+    "turn-speed": ("turn_speed_deg_s", "DEG/S", "the tool's largest turning speed, for a file without times"),
+    "turn-acceleration": ("turn_acceleration_deg_s2", "DEG/S2", "the tool's largest turning acceleration, for a file without times"),
+    "corner": ("corner", "C", "corners: stop, or a radius such as 5mm, or a speed such as 50mm/s"),
+    "chord": ("chord_mm", "MM", "how far a sampled curve may be from the exact one"),
+    "angle": ("angle_deg", "DEG", "how far the tool may turn between two samples"),
+    "step": ("step_s", "S", "the longest time between two samples"),
+    "smooth": ("smooth_ms", "MS", "smooth a recorded path over so many milliseconds before and after each sample"),
+}
+"""Options that say how a path is read: the choice of the reader, what its value looks like, and what it does."""
+
+
+def _add_reading(parser):
+    group = parser.add_argument_group("how the path is read")
+    for option, (name, value, words) in READING.items():
+        if value is None:
+            group.add_argument(f"--{option}", dest=name, action="store_true", help=words)
+        else:
+            group.add_argument(f"--{option}", dest=name, metavar=value, help=words)
+
+
+def _read_path(file, options):
+    """The path, read by the options on the command line, whose words stand in errors."""
+    from .reading import read_path
+
+    try:
+        return read_path(file, **{name: getattr(options, name) for name, *_ in READING.values()})
+    except ModelError as error:
+        word = next((f"--{option}" for option, (name, *_) in READING.items() if name == error.field), error.field)
+        raise UsageError(f"{word}: found {error.value}, expected {error.reason}") from None
+
+
+CONVERT = """examples:
+  pathaudit convert seam.csv seam.parquet
+  pathaudit convert log.csv repaired.csv --format recorded
+"""
+
+
+def _add_convert(commands):
+    parser = commands.add_parser(
+        "convert", help="write a path as another kind of file", description="Write a path as timed CSV, JSON lines, Parquet or Feather.",
+        epilog=CONVERT, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
+    )  # fmt: skip
+    parser.add_argument("path", metavar="IN", help="the path, in any of the formats that are read")
+    parser.add_argument("out", metavar="OUT", help="the file to write; its ending says the format: .csv, .jsonl, .parquet, .feather")
+    parser.add_argument("--to", metavar="F", choices=("timed", "json-lines", "parquet", "feather"), help="the format of OUT: timed, json-lines, parquet, feather")
+    _add_reading(parser)
+
+
+def _convert(options):
+    from .converting import converted, kind_of
+    from .reading.options import FORMATS
+    from .writing import write_whole
+
+    kind = kind_of(options.out, options.to)
+    _check_outputs({"OUT": options.out}, [options.path])
+    path = _read_path(options.path, options)
+    content, lost = converted(path, kind)
+    write_whole(options.out, content)
+    said = [f"{options.out}: {path.samples:,} samples as {FORMATS[kind]}", *path.made]
+    said.append("not kept: " + "; ".join(lost) if lost else "nothing was lost: the same columns, the same doubles")
+    _say("\n".join(said) + "\n", sys.stdout)
+    return 0
 
 
 NOTES = """examples:
@@ -80,8 +153,9 @@ def _add_notes(commands):
     merging.add_argument("--out", metavar="FILE", required=True, help="the merged notes: OURS, THEIRS or a new file")
     listing = acts.add_parser("list", help="show notes; with path and cell, what is stale", description="Show notes; with path and cell, where they are now and what is stale.", **shape)
     listing.add_argument("file", metavar="FILE", help="a file of notes")
-    listing.add_argument("path", metavar="PATH", nargs="?", help="the timed path, a CSV file")
+    listing.add_argument("path", metavar="PATH", nargs="?", help="the path that they are pinned to")
     listing.add_argument("--cell", metavar="CELL.toml", help="the cell; goes with PATH")
+    _add_reading(listing)
 
 
 def _run(arguments):
@@ -92,13 +166,15 @@ def _run(arguments):
         return 0
     if options.command == "notes":
         return _merge_notes(options) if options.act == "merge" else _list_notes(options)
+    if options.command == "convert":
+        return _convert(options)
     return _check(options) if options.command == "check" else _demo(options.folder)
 
 
 def _check(options):
-    from .reading import read_cell, read_path
+    from .reading import read_cell
 
-    path, cell, noted = read_path(options.path), read_cell(options.cell), _read_notes(options.notes)
+    path, cell, noted = _read_path(options.path, options), read_cell(options.cell), _read_notes(options.notes)
     outputs = {name: getattr(options, name) for name in ("json", "joints", "retimed", "html") if getattr(options, name) is not None}
     _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources), *([options.notes] if noted else [])])
 
@@ -190,9 +266,9 @@ def _list_notes(options):
         shown = notes_text([Placed(note, 0, 0.0, note.at_mm, "") for note in notes.kept])
     else:
         from .pipeline import audit
-        from .reading import read_cell, read_path
+        from .reading import read_cell
 
-        judged = audit(read_path(options.path), read_cell(options.cell))
+        judged = audit(_read_path(options.path, options), read_cell(options.cell))
         shown = notes_text(_placed(notes, judged), judged)
     _say((shown or "No notes.") + "\n", sys.stdout)
     return 0
@@ -205,16 +281,21 @@ def _check_outputs(outputs, inputs):
         if file == "-" and name == "json":
             continue
         if file in ("", "-"):
-            raise UsageError(f"--{name}: found {quoted(file)}, expected a file name")
+            raise UsageError(f"{_word(name)}: found {quoted(file)}, expected a file name")
         place = os.path.realpath(file)
         if place in taken:
-            raise UsageError(f"--{name} {file}: found the same file as {taken[place]}, expected a file of its own")
+            raise UsageError(f"{_word(name)} {file}: found the same file as {taken[place]}, expected a file of its own")
         if os.path.isdir(place):
             raise WriteError(file, "it is a folder")
         if not os.path.isdir(os.path.dirname(place)):
             raise WriteError(file, f"there is no folder {os.path.dirname(file)}")
         if os.path.isfile(place) or not os.path.exists(place):  # devices and pipes may take several outputs
-            taken[place] = f"--{name}"
+            taken[place] = _word(name)
+
+
+def _word(name):
+    """How an output is called on the command line."""
+    return name if name.isupper() else f"--{name}"
 
 
 def _say(text, stream):

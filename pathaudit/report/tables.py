@@ -8,6 +8,7 @@ import math
 import numpy as np
 
 from .. import given
+from ..converting import csv_text, texts
 from ..taskpath import TIME
 from . import origin
 from .noted import json_text, note_values

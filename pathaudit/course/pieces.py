@@ -10,7 +10,7 @@ from .moves import Course, at
 from .shapes import ARC, CURVE, STILL, Curves, curvature
 from .turning import BLENDED, EVEN, SPLINED, between
 
-BLEND_PIECES = 16  # of a rounding
+BLEND_PIECES = 8, 16  # of a rounding, at least and at most
 TURN_OF_PIECE = 0.1  # rad of direction in one piece of a curve
 MOST_PIECES = 32  # of a curve's interval
 LOOKS = np.linspace(0.0, 1.0, 5)
@@ -83,7 +83,7 @@ class Pieces:
         arcs = self.course.arcs
         bound[arc] = (arcs.radius * arcs.sweep**2 / np.maximum(arcs.length, 1e-300) ** 2)[self.row[arc]]
         looked = [self._bend(bent, look) for look in LOOKS] if len(bent) else []
-        bound[bent] = _bound(looked) if looked else 0.0
+        bound[bent] = _bound(np.stack(looked)) if looked else 0.0
         return bound
 
     def _bend(self, piece, look):
@@ -101,12 +101,26 @@ class Pieces:
         turning[even] = (angle / np.where(whole > 0.0, whole, 1.0))[even]
         uneven = np.flatnonzero(~even)
         if len(uneven):
-            places = np.linspace(0.0, 1.0, 9)[:, None] * self.length[uneven]
-            q = np.stack([self.pose(uneven, s)[1] for s in places])
-            step = between(q[:-1], q[1:]) / np.maximum(self.length[uneven] / 8.0, 1e-300)[None, :, None]
-            turning[uneven] = _bound(list(np.linalg.norm(step, axis=2)))
-            change[uneven] = _bound(list(np.linalg.norm(np.diff(step, axis=0), axis=2) / np.maximum(self.length[uneven] / 8.0, 1e-300)))
+            q, gaps = self._looked_at(uneven)
+            step = between(q[:-1], q[1:]) / gaps[:, :, None]
+            turning[uneven] = _bound(np.linalg.norm(step, axis=2))
+            change[uneven] = _bound(np.linalg.norm(np.diff(step, axis=0), axis=2) / (0.5 * (gaps[1:] + gaps[:-1])))
         return turning, change
+
+    def _looked_at(self, piece):
+        """Quaternions (9, N, 4) at nine places along pieces (N,), and the distances (8, N) m between them."""
+        shares, gaps = np.linspace(0.0, 1.0, 9), np.broadcast_to(self.length[piece] / 8.0, (8, len(piece))).copy()
+        q = np.empty((9, len(piece), 4))
+        for k, share in enumerate(shares):
+            for kind, table in ((SPLINED, self.course.splined), (BLENDED, self.rounded.turning)):
+                mine = np.flatnonzero(self.turn_kind[piece] == kind)
+                low, high = self.turn_low[piece[mine]], self.turn_high[piece[mine]]
+                q[k, mine] = table.at(self.turn_row[piece[mine]], low + share * (high - low))
+        bent = np.flatnonzero((self.turn_kind[piece] == SPLINED) & (self.kind[piece] == CURVE))  # whose turning goes by the parameter
+        low, span = self.low[piece[bent]], (self.high - self.low)[piece[bent]]
+        for k in range(8):
+            gaps[k, bent] = self.tables[2].length(self.row[piece[bent]], low + shares[k] * span, low + shares[k + 1] * span)
+        return q, np.maximum(gaps, 1e-300)
 
     @property
     def turning(self) -> np.ndarray:
@@ -117,9 +131,8 @@ class Pieces:
         return self._turned[1]
 
 
-def _bound(looked):
-    """An upper bound of smooth values from a few: the largest and half the largest step beside it."""
-    values = np.stack(looked)
+def _bound(values):
+    """An upper bound of smooth values (looks, N) from a few: the largest and half the largest step between neighbours."""
     return values.max(axis=0) + 0.5 * np.abs(np.diff(values, axis=0)).max(axis=0)
 
 
@@ -179,16 +192,19 @@ def _curve_pieces(course, low, high):
 
 
 def _of_roundings(course, rounded, speed):
-    n = BLEND_PIECES
-    at, edges = np.repeat(rounded.at, n), np.linspace(0.0, 1.0, n + 1)
-    number, within = np.repeat(np.arange(len(rounded.at)), n), np.tile(np.arange(n), len(rounded.at))
-    a, b = edges[within], edges[within + 1]
+    count = 2 * np.ceil(0.5 * np.clip(rounded.bend[rounded.at] / TURN_OF_PIECE, *BLEND_PIECES)).astype(int)
+    number = np.repeat(np.arange(len(count)), count)
+    within, at = np.arange(len(number)) - np.repeat(np.cumsum(count) - count, count), rounded.at[number]
+    a, b = within / count[number], (within + 1) / count[number]
     length = rounded.curves.length(number, a, b)
-    done = np.cumsum(length.reshape(-1, n), axis=1)
-    share = np.concatenate([np.zeros((len(rounded.at), 1)), done / done[:, -1:]], axis=1) if len(rounded.at) else np.zeros((0, n + 1))
+    done = np.cumsum(length)
+    before = done - length - np.repeat((done - length)[np.cumsum(count) - count], count) if len(number) else done
+    whole = rounded.length[number]
+    turns = (course.turn_kind[at] != EVEN) | (rounded.turning.turn_in[number] != 0.0).any(axis=1) | (rounded.turning.turn_out[number] != 0.0).any(axis=1)
     slower = np.minimum(np.minimum(speed[at], speed[np.minimum(at + 1, course.moves - 1)]), rounded.speed[number])
     return {
-        "place": 2 * at + 1, "within": within, "owner": 2 * at + 1, "move": at + (within >= n // 2), "kind": np.full(len(at), CURVE, dtype=np.uint8),
-        "row": len(course.curves.coefficients) + number, "low": a, "high": b, "turn_kind": np.full(len(at), BLENDED, dtype=np.uint8), "turn_row": number,
-        "turn_low": share[number, within], "turn_high": share[number, within + 1], "length": length, "dwell": np.zeros(len(at)), "speed": slower,
+        "place": 2 * at + 1, "within": within, "owner": 2 * at + 1, "move": at + (within >= count[number] // 2), "kind": np.full(len(at), CURVE, dtype=np.uint8),
+        "row": len(course.curves.coefficients) + number, "low": a, "high": b, "turn_kind": np.where(turns, BLENDED, course.turn_kind[at]).astype(np.uint8),
+        "turn_row": np.where(turns, number, course.turn_row[at]), "turn_low": np.where(turns, before / whole, 1.0), "turn_high": np.where(turns, (before + length) / whole, 1.0),
+        "length": length, "dwell": np.zeros(len(at)), "speed": slower,
     }  # fmt: skip

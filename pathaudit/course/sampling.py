@@ -15,6 +15,7 @@ from .timing import Ceilings, phases
 RAMP = 4  # samples at least in a rise or fall of the speed on a line or an arc
 SHORTEST = 1e-7  # s: a phase below this gets no sample of its own
 MOST = 20_000_000  # samples
+BLOCK = 1 << 14  # samples
 
 
 def timed(
@@ -34,7 +35,7 @@ def timed(
     pieces = cut(course, rounded, programmed)
     passed = phases(pieces, ceilings)
     time, piece, s = _samples(course, pieces, passed, chord, angle, step)
-    position, quaternion = pieces.pose(piece, s)
+    position, quaternion = _poses(pieces, piece, s)
     move = pieces.move[piece]
     process = ~course.air[move]
     process[:-1] |= process[1:]  # the sample at a join belongs to the process that begins there
@@ -87,6 +88,15 @@ def _samples(course, pieces, passed, chord, angle, step):
     s = np.clip(passed.start[owner] + local * (passed.speed[owner] + 0.5 * passed.rate[owner] * local), 0.0, pieces.length[piece[owner]])
     first = piece[owner[0]]
     return np.concatenate([[0.0], before[owner] + local]), np.concatenate([[first], piece[owner]]), np.concatenate([[0.0], s])
+
+
+def _poses(pieces, piece, s):
+    """Positions (N, 3) and quaternions (N, 4), in blocks that stay in the cache."""
+    position, quaternion = np.empty((len(s), 3)), np.empty((len(s), 4))
+    for first in range(0, len(s), BLOCK):
+        some = slice(first, first + BLOCK)
+        position[some], quaternion[some] = pieces.pose(piece[some], s[some])
+    return position, quaternion
 
 
 def _path(course, time, position, quaternion, process, move, line, made):

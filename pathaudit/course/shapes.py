@@ -77,31 +77,41 @@ class Curves:
 
     def length(self, row, low, high):
         """(N,) m, arc length between two parameters (N,), which are not far apart, by 8 Gauss-Legendre nodes."""
-        span = np.asarray(high - low)
-        total = np.zeros(len(row))
-        for node, weight in zip(NODES, WEIGHTS, strict=True):
-            total += weight * np.linalg.norm(self._slope(row, low + node * span), axis=1)
-        return total * span
-
-    def _slope(self, row, t):
-        c, t = self.coefficients, t[:, None]
-        slope = 5.0 * c[row, 5]
-        for power in range(4, 0, -1):
-            slope = slope * t + power * c[row, power]
-        return slope
+        return _travelled(self._slopes(row), low, high)
 
     def parameter(self, row, low, high, length, s):
         """(N,) the parameter at the arc length s (N,) after `low` on a part whose whole length (N,) is known: Newton from Hermite's cubic."""
-        share = np.clip(s / length, 0.0, 1.0)
+        slopes, share = self._slopes(row), np.clip(s / length, 0.0, 1.0)
         rise = length / np.maximum(high - low, 1e-300)
-        first, last = (rise / np.maximum(np.linalg.norm(self._slope(row, end), axis=1), 1e-300) for end in (low, high))
+        first, last = (rise / np.maximum(_speed(slopes, end), 1e-300) for end in (low, high))
         smooth = share**2 * (3.0 - 2.0 * share)
         t = smooth + share * (1.0 - share) * ((1.0 - share) * first - share * last)
         t = low + (high - low) * np.clip(np.where(np.isfinite(t), t, share), 0.0, 1.0)
-        for _ in range(2):
-            speed = np.maximum(np.linalg.norm(self._slope(row, t), axis=1), 1e-300)
-            t = np.clip(t - (self.length(row, low, t) - s) / speed, low, high)
+        left = np.arange(len(t))
+        for _ in range(4):
+            some, at = slopes[:, left], t[left]
+            off = _travelled(some, low[left], at) - s[left]
+            t[left] = np.clip(at - off / np.maximum(_speed(some, at), 1e-300), low[left], high[left])
+            left = left[np.abs(off) > 1e-7 * length[left]]  # the next step squares what is off by so little
+            if not len(left):
+                break
         return t
+
+    def _slopes(self, row):
+        """(5, N, 3) coefficients of the derivative."""
+        return np.moveaxis(self.coefficients[row, 1:], 1, 0) * np.arange(1.0, 6.0)[:, None, None]
+
+
+def _speed(slopes, t):
+    """(N,) m per unit of the parameter."""
+    t = t[:, None]
+    v = (((slopes[4] * t + slopes[3]) * t + slopes[2]) * t + slopes[1]) * t + slopes[0]
+    return np.sqrt(np.einsum("ni,ni->n", v, v))
+
+
+def _travelled(slopes, low, high):
+    span = np.asarray(high - low)
+    return span * sum(weight * _speed(slopes, low + node * span) for node, weight in zip(NODES, WEIGHTS, strict=True))
 
 
 def curvature(slope, bend):

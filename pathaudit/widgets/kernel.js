@@ -6,8 +6,8 @@ const SILENT = "The kernel has not answered yet: it is busy, or its connection i
 const SILENCE = 4000;      // ms without a sign of life until that is told
 const LIFE = ["change:block", "change:status", "change:trial", "change:notes"];
 
-// ask(message, buffers) is null where nobody listens; it gives false where the kernel has ended.
-export function kernelLink(model, el, say) {
+// ask(message, buffers) is null where nobody listens; it gives false where the kernel has ended. ended() is called when it does.
+export function kernelLink(model, el, say, ended) {
   const saved = el.classList.contains("jupyter-widgets-disconnected");      // the mark of a widget that came with the notebook's file
   let gone = false, silent = false, timer = 0;
 
@@ -25,6 +25,7 @@ export function kernelLink(model, el, say) {
     heard();
     gone = true;
     say(GONE);
+    ended();
   }
 
   // A kernel that was shut down gives no notice: the first attempt to reach it fails.
@@ -32,9 +33,12 @@ export function kernelLink(model, el, say) {
     try {
       if (!gone) act();
     } catch {
-      gone = true;
+      end();
     }
-    if (gone) end();
+    if (gone) {
+      clearTimeout(timer);
+      say(GONE);
+    }
     return !gone;
   }
 

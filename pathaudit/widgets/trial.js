@@ -31,8 +31,8 @@ export function trialPanel(ui) {
 
   // Asks Python; where no answer comes soon, it is said that there is work going on.
   function ask(message) {
-    ui.ask(message);
     clearTimeout(waiting);
+    if (ui.ask(message) === false) return done();
     waiting = setTimeout(() => { busy.hidden = false; }, PATIENCE);
   }
 

@@ -8,7 +8,7 @@ async function render({ model, el }) {
   let timer = 0, shown = 0;
   const root = document.createElement("div");
   el.append(root);
-  const link = kernelLink(model, el, (words) => view.say(words));
+  const link = kernelLink(model, el, (words) => view.say(words), () => trial(false));
   const view = mount(root, link.ask, (sample) => {
     clearTimeout(timer);
     timer = setTimeout(() => link.set("cursor", sample), 150);
@@ -27,11 +27,15 @@ async function render({ model, el }) {
     }
   };
   const cursor = () => view.toSample(model.get("cursor"));
-  const trial = () => model.get("trial") && view.showTrial(model.get("trial"));
+  const trial = (busy) => {
+    const value = model.get("trial");
+    if (value) view.showTrial(busy === false ? { ...value, busy } : value);
+  };
   const notes = () => model.get("notes") && view.showNotes(model.get("notes"));
   const heard = { "change:block": refresh, "change:status": status, "change:cursor": cursor, "change:trial": trial, "change:notes": notes, "msg:custom": save };
   for (const [name, act] of Object.entries(heard)) model.on(name, act);
   await refresh();
+  if (model.get("cursor") > 0) cursor();      // another view stands there, or stood there before the tab was closed
   trial();
   notes();
   return () => {

@@ -1,8 +1,5 @@
 // Mouse, pen, fingers and wheel on the rows. What they do is told to `desk` (view.js).
 
-import { clamp } from "./data.js";
-import { valueAt } from "./layout.js";
-
 const POINTERS = { pin: "pointer", finding: "pointer", fold: "pointer", edge: "col-resize", factor: "ns-resize", window: "grab" };
 
 export function listen(rows, desk) {
@@ -33,7 +30,7 @@ export function listen(rows, desk) {
     if (kind === "whole" || kind === "rows") desk.scrub(x, kind === "whole");
     else if (kind === "mark") desk.mark(start, x);
     else if (kind === "edge") desk.moveEnd(spot.end, x);
-    else if (kind === "factor") desk.factor(clamp(valueAt(spot.lane, y), 1, 100), gesture);
+    else if (kind === "factor") desk.factor(y, gesture);
     else desk.slide(x - last);
     last = x;
   }

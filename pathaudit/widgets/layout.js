@@ -6,8 +6,9 @@ import { clamp, nearest } from "./data.js";
 export const HEAD = 17, BLOCK = 17, RIGHT = 62, PIN = 16, LOW = 18;
 const GAP = 7, TITLE = 15, AXIS = 42;
 
-// groups: as choice.js gives them. pins: {id, sample, words, kind}. Blocks are the findings on the strip, stacked where they would overlap.
-export function layOut(facts, groups, axis, width, [from, to], pins) {
+// groups: as choice.js gives them. pins: {id, sample, words, filled}. Blocks are the findings on the strip, stacked where they would overlap;
+// room is kept for `levels` of them, so that the rows do not move while a trial makes findings go.
+export function layOut(facts, groups, axis, width, [from, to], pins, levels) {
   const longest = Math.max(...groups.map((group) => group.title.length), 0);
   const left = clamp(6.3 * longest + 30, width < 520 ? 66 : 84, 120);
   const plot = Math.max(40, width - left - RIGHT);
@@ -22,7 +23,8 @@ export function layOut(facts, groups, axis, width, [from, to], pins) {
   place.pins = pinned(place, pins);
   place.strip = HEAD + (pins.length ? PIN : 0);
   place.blocks = stacked(place, facts.findings);
-  let y = place.strip + (BLOCK + 2) * Math.max(1, ...place.blocks.map(({ level }) => level + 1)) + 19, said = "";
+  place.levels = Math.max(levels, ...place.blocks.map(({ level }) => level + 1));
+  let y = place.strip + (BLOCK + 2) * place.levels + 19, said = "";
   place.process = y - 10;
   for (const group of groups) {
     const several = group.lanes.length > 1, open = several && !group.folded, low = group.folded && !several;
@@ -96,7 +98,7 @@ export function spotAt(place, px, py, stretch, factor) {
   if (title) return { kind: "fold", title: title.group.title };
   if (stretch && py >= place.top - 4) {
     const lane = factor && factorLane(place);
-    if (lane && px > stretch[0] && px < stretch[1] && Math.abs(py - heightOf(lane, factor)) < 7) return { kind: "factor", lane };
+    if (lane && px > stretch[0] && px < stretch[1] && Math.abs(py - heightOf(lane, factor)) < 7) return { kind: "factor" };
     const end = stretch.findIndex((edge) => Math.abs(px - edge) < 5);
     if (end >= 0) return { kind: "edge", end };
   }

@@ -7,7 +7,20 @@ const READOUT = [["time", "s"], ["distance", "mm"], ["tool speed", "mm/s"], ["as
   ["busiest joint, of limit", ""], ["reserve", "×"], ["sigma_min", ""]];
 
 export function headPanel(ui) {
-  const node = element("div", { class: "pa-head" });
+  const node = element("div", { class: "pa-head" }), retimed = element("p");
+  let tallest = 0;
+
+  // The rows below do not move while a trial changes the sentence: it keeps the height that it once had at this width.
+  function keep() {
+    tallest = Math.max(tallest, retimed.offsetHeight);
+    retimed.style.minHeight = `${tallest}px`;
+  }
+
+  function fit() {
+    tallest = 0;
+    retimed.style.minHeight = "";
+    keep();
+  }
 
   function show() {
     const facts = ui.facts(), again = facts.retiming;
@@ -17,16 +30,21 @@ export function headPanel(ui) {
     const retiming = again.applied ? `Shown at other speeds than programmed. ${again.why}`
       : needed ? `Suggested retiming: ${again.why}` : again.why;
     node.replaceChildren(element("span", { class: "pa-verdict" }, element("i", { class: `pa-swatch pa-${facts.verdict}` }), facts.verdict),
-      element("b", {}, facts.name), element("span", {}, said.join(" · ")), element("p", {}, retiming));
-    if (!ui.ask || !(needed || again.applied)) return;
-    const words = again.applied ? "Show as programmed" : "Show as retimed";
-    node.lastChild.append(" ", button(words, words, () => {
+      element("b", {}, facts.name), element("span", {}, said.join(" · ")), retimed);
+    retimed.replaceChildren(retiming);
+    if (ui.ask && (needed || again.applied)) offer(again.applied);
+    keep();
+  }
+
+  function offer(applied) {
+    const words = applied ? "Show as programmed" : "Show as retimed";
+    retimed.append(" ", button(words, words, () => {
       ui.say("Waiting for the kernel ...");
-      ui.ask(again.applied ? { do: "show", name: "as programmed" } : { do: "accept" });
+      ui.ask(applied ? { do: "show", name: "as programmed" } : { do: "accept" });
     }));
   }
 
-  return { node, show };
+  return { node, show, fit };
 }
 
 export function readoutPanel() {

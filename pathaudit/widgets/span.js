@@ -34,5 +34,5 @@ export function rowSpan(state, laid) {
     show(0.5 * (from + to - long), long);
   }
 
-  return { show, zoom, follow, pan, fit, size };
+  return { show, zoom, follow, pan, fit, size, zoomed: () => size() < 0.999 * state.axis.size };
 }

@@ -8,7 +8,7 @@ import { button, element, focusable } from "./dom.js";
 import { findingsPanel } from "./findings.js";
 import { listen } from "./gestures.js";
 import { keyTable } from "./keys.js";
-import { layOut, spotAt } from "./layout.js";
+import { factorLane, layOut, spotAt, valueAt } from "./layout.js";
 import { notesPanel } from "./notes.js";
 import { drawOverlay } from "./overlay.js";
 import { headPanel, readoutPanel } from "./readout.js";
@@ -21,7 +21,7 @@ import { trialPanel } from "./trial.js";
 // ask(message, buffers) sends a message to Python, or is null where nobody listens; onCursor(sample) is told where the cursor stands.
 export function mount(root, ask, onCursor) {
   const state = { facts: null, data: null, axis: null, far: false, place: null, colours: null, i: 0, selected: -1, chosen: null, marking: false,
-                  pins: [], marks: [], width: 0, arm: "", span: null, frame: 0, stale: false };
+                  pins: [], marks: [], levels: 1, width: 0, arm: "", span: null, frame: 0, stale: false };
   const listeners = { cursor: [], chosen: [], shown: [], factor: [] };
   const tell = (event, ...values) => listeners[event].forEach((listener) => listener(...values));
   const at = (sample) => nearest(state.data.sample[0], sample);
@@ -55,21 +55,51 @@ export function mount(root, ask, onCursor) {
   const choice = rowChoice(laid);
   const tools = element("div", { class: "pa-tools" }, distance, choice.node, marker, unmark, element("span"), button("−", "Show more of the path", () => span.zoom(2)),
     button("+", "Show less of the path, larger", () => span.zoom(0.5)), button("fit", "Fit the marked stretch or the finding", fit), whole, keys.node);
+  // By so many samples, by so many of equal pieces of the path.
+  const by = (amount) => moveTo(state.i + amount), piece = (parts) => Math.max(1, Math.round((state.data.time_s[0].length - 1) / parts));
+  const arrow = (sign) => (event) => by(sign * (event.shiftKey ? piece(50) : 1));
+  for (const entry of [
+    [["ArrowRight", "ArrowUp"], "→", "one sample on; with Shift far", arrow(1)],
+    [["ArrowLeft", "ArrowDown"], "←", "one sample back; with Shift far", arrow(-1)],
+    [["PageUp"], "Page Up", "a tenth of the path on", () => by(piece(10))],
+    [["PageDown"], "Page Down", "a tenth of the path back", () => by(-piece(10))],
+    [["Home"], "Home", "start of the path", () => by(-Infinity)],
+    [["End"], "End", "end of the path", () => by(Infinity)],
+    [["n"], "N", "next finding", () => step(1)],
+    [["p"], "P", "finding before", () => step(-1)],
+    [["+", "="], "+", "show less, larger (also the wheel)", () => span.zoom(0.5)],
+    [["-"], "−", "show more", () => span.zoom(2)],
+    [["0"], "0", "whole path", () => span.zoom(Infinity)],
+    [["f"], "F", "fit the marked stretch or the finding", fit],
+    [[","], ",", "slide back", () => span.pan(-span.size() / 4)],
+    [["."], ".", "slide on (also the wheel with Shift)", () => span.pan(span.size() / 4)],
+    [["["], "[", "the marked stretch begins here", () => stretch.setEnd(0)],
+    [["]"], "]", "the marked stretch ends here", () => stretch.setEnd(1)],
+    [["s"], "S", "mark the stretch of the finding", markFinding],
+    [["m"], "M", "dragging marks (also with Shift)", switchMarking],
+    [["Escape"], "Esc", "unmark the stretch", escape],
+    [["d"], "D", "time or distance", switchAxis],
+    [["u"], "U", "fold or unfold the joints", choice.foldAll],
+    [["r"], "R", "choose and order the rows", choice.open],
+    [["?"], "?", "this list", keys.open],
+  ]) keys.add(...entry);
+
   const head = headPanel(ui), readout = readoutPanel(), arm = armPanel(ui, () => repaint(true));
   const trial = trialPanel(ui), findings = findingsPanel(ui, (k) => goTo(k, true)), notes = notesPanel(ui);
   root.classList.add("pa");
   root.replaceChildren(head.node, readout.node, tools, element("div", { class: "pa-main" }, rows, arm.node), trial.node, findings.node, notes.node, status);
 
   function show(facts, data) {
-    const sample = state.data && ui.sample(), ends = state.place?.zoomed && state.span.map(sampleAt);
-    Object.assign(state, { facts, data, axis: rowAxis(facts, data, state.far), selected: -1, width: 0, arm: "" });
+    const sample = state.data && ui.sample(), ends = state.data && span.zoomed() && state.span.map(sampleAt);
+    Object.assign(state, { facts, data, axis: rowAxis(facts, data, state.far), selected: -1, place: null, arm: "" });
     stretch.answered();
     state.i = sample === null ? firstPlace(facts) : at(sample);
     state.span = ends ? ends.map(state.axis.ofSample) : [0, state.axis.size];
     distance.disabled = !(facts.length_mm > 1e-3);
     [head, arm, findings].forEach((part) => part.show());
     choice.show(facts);
-    resize();
+    if (Math.floor(root.clientWidth) === state.width) laid();
+    else resize();
     tell("shown");
   }
 
@@ -79,9 +109,10 @@ export function mount(root, ask, onCursor) {
 
   function resize() {
     const width = Math.floor(root.clientWidth);
-    if (!state.facts || !width || width === state.width) return;
+    if (!state.facts || !width || (width === state.width && state.place)) return;
     state.width = width;
     root.classList.toggle("pa-narrow", width < 760);
+    head.fit();
     laid();
   }
 
@@ -90,7 +121,8 @@ export function mount(root, ask, onCursor) {
     const { width, facts, axis, pins } = state;
     if (!width) return;
     const wide = width >= 760, rowsWidth = wide ? Math.round(width * 0.63) : width;
-    const { height } = state.place = layOut(facts, choice.groups(), axis, rowsWidth, state.span, pins);
+    const { height } = state.place = layOut(facts, choice.groups(), axis, rowsWidth, state.span, pins, state.levels);
+    state.levels = state.place.levels;
     Object.assign(rows.style, { width: `${rowsWidth}px`, height: `${height}px` });
     const size = wide ? [width - rowsWidth - 10, clamp(height, 320, 620)] : [width, 300];
     if (state.arm !== String(size)) arm.fit(...size);
@@ -101,10 +133,10 @@ export function mount(root, ask, onCursor) {
 
   function switchAxis() {
     if (distance.disabled) return false;
-    const ends = state.span.map(sampleAt);
+    const ends = span.zoomed() && state.span.map(sampleAt);
     state.far = !state.far;
     state.axis = rowAxis(state.facts, state.data, state.far);
-    const [from, to] = state.place.zoomed ? ends.map(state.axis.ofSample) : [0, state.axis.size];
+    const [from, to] = ends ? ends.map(state.axis.ofSample) : [0, state.axis.size];
     span.show(from, to - from);
   }
 
@@ -200,34 +232,6 @@ export function mount(root, ask, onCursor) {
     stretch.mark(null);
   }
 
-  // By so many samples, by so many of equal pieces of the path.
-  const by = (amount) => moveTo(state.i + amount), piece = (parts) => Math.max(1, Math.round((state.data.time_s[0].length - 1) / parts));
-  const arrow = (sign) => (event) => by(sign * (event.shiftKey ? piece(50) : 1));
-  for (const entry of [
-    [["ArrowRight", "ArrowUp"], "→", "one sample on; with Shift far", arrow(1)],
-    [["ArrowLeft", "ArrowDown"], "←", "one sample back; with Shift far", arrow(-1)],
-    [["PageUp"], "Page Up", "a tenth of the path on", () => by(piece(10))],
-    [["PageDown"], "Page Down", "a tenth of the path back", () => by(-piece(10))],
-    [["Home"], "Home", "start of the path", () => by(-Infinity)],
-    [["End"], "End", "end of the path", () => by(Infinity)],
-    [["n"], "N", "next finding", () => step(1)],
-    [["p"], "P", "finding before", () => step(-1)],
-    [["+", "="], "+", "show less, larger (also the wheel)", () => span.zoom(0.5)],
-    [["-"], "−", "show more", () => span.zoom(2)],
-    [["0"], "0", "whole path", () => span.zoom(Infinity)],
-    [["f"], "F", "fit the marked stretch or the finding", fit],
-    [[","], ",", "slide back", () => span.pan(-span.size() / 4)],
-    [["."], ".", "slide on (also the wheel with Shift)", () => span.pan(span.size() / 4)],
-    [["["], "[", "the marked stretch begins here", () => stretch.setEnd(0)],
-    [["]"], "]", "the marked stretch ends here", () => stretch.setEnd(1)],
-    [["s"], "S", "mark the stretch of the finding", markFinding],
-    [["m"], "M", "dragging marks (also with Shift)", switchMarking],
-    [["Escape"], "Esc", "unmark the stretch", escape],
-    [["d"], "D", "time or distance", switchAxis],
-    [["u"], "U", "fold or unfold the joints", choice.foldAll],
-    [["r"], "R", "choose and order the rows", choice.open],
-    [["?"], "?", "this list", keys.open],
-  ]) keys.add(...entry);
   rows.addEventListener("keydown", (event) => state.place && keys.onKey(event));
 
   const sampleOf = (x) => sampleAt(state.place.at(x)), share = (dx, whole) => dx / state.place.plot * whole;
@@ -243,7 +247,7 @@ export function mount(root, ask, onCursor) {
     scrub: (x, onStrip) => moveTo(nearest(state.axis.places, onStrip ? state.place.wholeAt(x) : state.place.at(x)), { still: !onStrip }),
     mark: (a, b) => stretch.mark(sampleOf(a), sampleOf(b)),
     moveEnd: (end, x) => stretch.moveEnd(end, sampleOf(x)),
-    factor: stretch.drag,
+    factor: (y, gesture) => stretch.drag(clamp(valueAt(factorLane(state.place), y), 1, 100), gesture),
     release: stretch.release,
     slide: (dx) => span.pan(share(dx, state.axis.size)),
     pan: (dx) => state.place.zoomed && (span.pan(share(dx, span.size())), true),

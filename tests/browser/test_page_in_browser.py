@@ -711,9 +711,12 @@ def test_new_data_keep_place_span_and_rows(heard, audit):
     heard.keyboard.press("Escape")
     rows, (low, high) = lanes(heard), span(heard)
     assert 1 not in rows and 9 in rows
-    after = audit.suggestion.audit()
+    after, top = audit.suggestion.audit(), heard.locator(".pa-rows").bounding_box()
+    first = placed(heard)["lanes"]
+    assert len(after.finding_list) < len(audit.finding_list)
     heard.evaluate("(next) => window.data(next)", packed(scene(after, applied=audit.suggestion, before=audit)))
     assert lanes(heard) == rows and cursor(heard) == 600
+    assert heard.locator(".pa-rows").bounding_box() == top and placed(heard)["lanes"] == first      # nothing moves under the hand
     assert np.interp([low, high], audit.time, after.time) == pytest.approx(span(heard), abs=0.05)
     assert heard.locator(".pa-read span").nth(6).inner_text() == "as programmed"
     assert readout(heard)[3] == f"{1e3 * audit.rates.tool_speed[600]:.1f}"

@@ -104,7 +104,7 @@ def notes_list(audit, notes, most=noted.LONGEST):
     lines = []
     for number, placed in enumerate(notes, 1):
         lines.append(f"<div><b>{escape(noted.head(number, placed, audit))}</b></div>")
-        lines += [f'<div style="{_NOTE}">{escape(line) or "&nbsp;"}</div>' for line in noted.body(placed, most)]
+        lines += [f'<div style="{_NOTE}">{escape(line).replace("  ", "&nbsp; ") or "&nbsp;"}</div>' for line in noted.body(placed, most)]
     return "".join(lines)
 
 

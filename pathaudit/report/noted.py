@@ -25,8 +25,8 @@ def shortened(text, most=LONGEST) -> str:
 
 
 def where(placed, audit) -> str:
-    """ "12.34 s, 296.2 mm": the note's place now, on the clock that the timeline shows"""
-    return f"{placed.time_s - audit.time[0] + clock_offset(audit):.2f} s, {placed.at_mm:.1f} mm"
+    """ "12.34 s, 296.2 mm": the note's place now, on the clock of the audit on show, which may be a retimed one"""
+    return f"{audit.time[placed.sample] - audit.time[0] + clock_offset(audit):.2f} s, {placed.at_mm:.1f} mm"
 
 
 def day(date) -> str:

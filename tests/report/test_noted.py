@@ -9,6 +9,7 @@ import pytest
 from fake_audit import fake_audit
 from test_page import text_of
 
+from pathaudit.cell import Thresholds
 from pathaudit.notes import Notes, merge, new_note, placed
 from pathaudit.report.html_tables import still_tables
 from pathaudit.report.noted import LONGEST, counted, for_view, pinned, shortened, state, to_decide, visible
@@ -22,7 +23,9 @@ HOSTILE = '<script>alert(1)</script> "]]> &amp; \x1b[31mred\x1b[0m \x9b2J \0 \u2
 
 @pytest.fixture(scope="module")
 def audit():
-    return fake_audit(1000)
+    made = fake_audit(1000)
+    made.cell.thresholds = Thresholds()
+    return made
 
 
 def noted(audit, *texts, **options):
@@ -82,7 +85,7 @@ def test_hostile_text_is_text_everywhere(audit):
 
 def test_line_breaks_are_kept(audit):
     notes = placed(noted(audit, "one\r\ntwo\n\n  three"), audit)
-    assert re.search(r">one</div><div [^>]*>two</div><div [^>]*>&nbsp;</div><div [^>]*>  three</div>", still_tables(audit, notes))
+    assert re.search(r">one</div><div [^>]*>two</div><div [^>]*>&nbsp;</div><div [^>]*>&nbsp; three</div>", still_tables(audit, notes))
     assert "\n      one\n      two\n\n        three\n" in summary(audit, notes)
     assert visible("a\rb\tc") == "a\nb\tc"
 

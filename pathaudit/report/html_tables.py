@@ -82,14 +82,12 @@ _STILL_STYLE = ("<style><!-- .jp-OutputArea-child:has(+ .jp-OutputArea-child + .
                 ".jp-OutputArea-child:has(+ .jp-OutputArea-child .pathaudit-tables) .jp-RenderedSVG > img { max-width: 100%; } --></style>")
 
 
-def still_tables(audit, notes=()):
+def still_tables(audit, notes=(), applied=None):
     """The findings, placed notes and what belongs to them for the notebook's still form; the class marks it for the live timeline, which hides it.
 
-    One table only: a sanitising export writes the tag of a table's body before each.
+    applied: the Retiming that made the audit, where one did. One table only: a sanitising export writes the tag of a table's body before each.
     """
-    again, given = audit.suggestion, _given(audit)
-    retiming = f"{audit.path.duration:.2f} s becomes {again.duration:.2f} s. " if _needed(again) else ""
-    lines = [f"<b>Suggested retiming</b> &nbsp; {escape(retiming + again.why)}"]
+    lines, given = [_retimed_line(audit, applied)], _given(audit)
     lines += [f"<b>{what}</b> &nbsp; {escape(file)}, sha256 {sha256}" for what, file, sha256 in given]
     lines += [f"<b>Path</b> &nbsp; {escape(words)}" for words in audit.path.made]
     lines += [f"<b>Not judged</b> &nbsp; {escape(rule)}: {escape(why)}" for rule, why in audit.not_judged]
@@ -97,6 +95,14 @@ def still_tables(audit, notes=()):
     shown = f"<div><b>Notes</b> &nbsp; {noted.counted(notes)}</div>{notes_list(audit, notes)}" if notes else ""
     return (f'<div class="pathaudit-tables">{verdict_line(audit)}{findings_table(audit)}{shown}{"".join(f"<div>{line}</div>" for line in lines)}'
             f"{_STILL_STYLE}</div>")
+
+
+def _retimed_line(audit, applied):
+    """The times that the audit has, where they are not the programmed ones; else the suggested ones."""
+    again = applied or audit.suggestion
+    before = applied.rates.motion.path.duration if applied else audit.path.duration
+    times = f"{before:.2f} s becomes {again.duration:.2f} s. " if applied or _needed(again) else ""
+    return f"<b>{'Shown at other speeds than programmed' if applied else 'Suggested retiming'}</b> &nbsp; {escape(times + again.why)}"
 
 
 def notes_list(audit, notes, most=noted.LONGEST):

@@ -3,6 +3,7 @@
 import numpy as np
 
 from ..edits import Lock, Slow
+from .noting import Noting
 from .session import PROGRAMMED, Session
 
 
@@ -13,8 +14,10 @@ class Desk:
     >>> desk.audit.verdict, desk.retiming.why  # doctest: +SKIP
     """
 
-    def __init__(self, session: Session):
-        self._session = session
+    def __init__(self, session: Session, noting=None, take_note=None):
+        """noting: the Noting that keeps the notes; take_note(message) lets the instrument do what a message about notes asks for."""
+        self._session, self._noting = session, noting or Noting(session.given)
+        self._take_note = take_note or self._noting.handle
 
     @property
     def audit(self):
@@ -69,6 +72,25 @@ class Desk:
     def drop(self, name):
         """Forget a variant; what is on show stays."""
         self._session.drop(name)
+
+    def note(self, text, at_s, author=None):
+        """Write a note at a time of the path's own clock; it is saved with the others. Raises ValueError with the reason where that cannot be."""
+        time = self._session.given.time
+        if not time[0] <= at_s <= time[-1]:
+            raise ValueError(f"the place is {at_s!r} s, expected a time of the path from {time[0]:g} to {time[-1]:g} s")
+        self._take_note({"do": "note add", "sample": int(np.abs(time - at_s).argmin()), "finding": None, "author": author or "", "text": text})
+        fault = self._noting.told()["fault"]
+        if fault:
+            raise ValueError(fault)
+
+    @property
+    def notes(self):
+        """pandas.DataFrame, one row a note in the order of the path: where, by, date, status, text, and what has changed at its place since"""
+        import pandas as pd
+
+        shown = self._noting.told()["notes"]
+        rows = [{"where": n["where"], "by": n["author"], "date": n["date"], "settled": n["settled"], "text": n["text"], "changed since": n["stale"]} for n in shown]
+        return pd.DataFrame(rows, columns=["where", "by", "date", "settled", "text", "changed since"])
 
     def compared(self):
         """pandas.DataFrame, one row a variant, the path as programmed first."""

@@ -11,15 +11,15 @@ from ..report.text import summary
 QUIET = 1.0  # s without a change before the picture is drawn anew: drawing it would slow the work down
 
 
-def still_form(audit, shown=None, applied=None):
-    """Two mime bundles that need no kernel: the picture and the tables. applied: the Retiming that made the audit, where one did.
+def still_form(audit, shown=None, applied=None, notes=()):
+    """Two mime bundles that need no kernel: the picture and the tables. applied: the Retiming that made the audit, where one did; notes: placed.
 
     They stay two outputs beside the widget's: in one bundle with it, readers that cannot show the widget would show nothing.
     """
     shown = shown or scene(audit, applied=applied)
-    picture = {"image/svg+xml": svg_picture(shown), "image/png": base64.b64encode(png_picture(shown)).decode(),
+    picture = {"image/svg+xml": svg_picture(shown, notes=notes), "image/png": base64.b64encode(png_picture(shown, notes=notes)).decode(),
                "text/plain": "(picture of the timeline)"}
-    return picture, {"text/html": still_tables(audit), "text/plain": summary(audit)}
+    return picture, {"text/html": still_tables(audit, notes, applied), "text/plain": summary(audit, notes)}
 
 
 class StillForm:
@@ -35,10 +35,10 @@ class StillForm:
         self._handles = [display(bundle, raw=True, display_id=True) for bundle in bundles]
         self._shell.events.register("post_run_cell", self._cell_has_run)
 
-    def refresh(self, session):
+    def refresh(self, session, noting):
         with self._lock:
             self._drop_timer()
-            self._pending, self._timer = session, Timer(QUIET, self._draw)
+            self._pending, self._timer = (session, noting), Timer(QUIET, self._draw)
             self._timer.daemon = True
             self._timer.start()
 
@@ -59,9 +59,10 @@ class StillForm:
 
     def _draw(self):
         with self._lock:
-            session, self._pending, handles = self._pending, None, list(self._handles)
-        if session is None:
+            pending, self._pending, handles = self._pending, None, list(self._handles)
+        if pending is None:
             return
-        bundles = still_form(session.shown.audit, applied=session.shown.retiming)
+        session, noting = pending
+        bundles = still_form(session.shown.audit, applied=session.shown.retiming, notes=noting.placed)
         for handle, bundle in zip(handles, bundles):
             handle.update(bundle, raw=True)

@@ -13,6 +13,7 @@ from ..report.script import shared_module, style_sheet
 from ..report.tables import retimed_csv
 from ..report.text import summary
 from .desk import Desk
+from .noting import Noting
 from .session import Session
 from .still_form import StillForm, still_form
 from .trial_facts import trial_facts
@@ -24,7 +25,7 @@ class Timeline(anywidget.AnyWidget):
     """The live timeline of an audit. Moving the cursor asks nothing of the kernel; `cursor` is the sample number it stands at.
 
     facts and block are one Scene (report/scene.py): what is said once, and the columns packed. trial: what is tried by hand
-    (trial_facts.py). status: one sentence, shown when not empty.
+    (trial_facts.py). notes: the notes and how it stands with their file (noting.py). status: one sentence, shown when not empty.
     """
 
     _esm = shared_module()
@@ -32,13 +33,14 @@ class Timeline(anywidget.AnyWidget):
     facts = traitlets.Dict().tag(sync=True)
     block = traitlets.Bytes().tag(sync=True)
     trial = traitlets.Dict().tag(sync=True)
+    notes = traitlets.Dict().tag(sync=True)
     status = traitlets.Unicode().tag(sync=True)
     cursor = traitlets.Int().tag(sync=True, echo_update=False)
 
-    def __init__(self, audit, shown=None, still=None):
+    def __init__(self, audit, shown=None, still=None, noting=None):
         """shown: the audit's Scene, where it has been made already; still: the StillForm beside this one, told of every change."""
-        self.session, self.still = Session(audit, self), still
-        super().__init__(**_state(shown or scene(audit)), trial=trial_facts(self.session))
+        self.session, self.still, self.noting = Session(audit, self), still, noting or Noting(audit)
+        super().__init__(**_state(shown or scene(audit)), trial=trial_facts(self.session), notes=self.noting.told())
         self.on_msg(self._on_message)
 
     def close(self):
@@ -80,7 +82,8 @@ class Timeline(anywidget.AnyWidget):
 
     def _on_message(self, _, content, __):
         try:
-            self._acts()[content.get("do")](content)
+            do = content.get("do")
+            self.take_note(content) if str(do).startswith("note ") else self._acts()[do](content)
         except Exception as error:      # a callback's exception would end in a log that nobody reads
             self.status = f"That did not work. {error if isinstance(error, ValueError) else f'{type(error).__name__}: {error}'}"
 
@@ -112,9 +115,15 @@ class Timeline(anywidget.AnyWidget):
         ending = re.sub(r"[^\w-]+", "-", variant.name or "retimed").strip("-")
         self.send({"save": f"{stem}-{ending}.csv"}, [retimed_csv(variant.retiming).encode()])
 
+    def take_note(self, message):
+        """Do what a message about notes asks for (noting.py), and show what came of it."""
+        self.noting.handle(message, self.session.shown.audit)
+        self.notes = self.noting.told()
+        self._refresh_still()
+
     def _refresh_still(self):
         if self.still:
-            self.still.refresh(self.session)
+            self.still.refresh(self.session, self.noting)
 
 
 def _factor(content):
@@ -126,15 +135,15 @@ def _state(shown):
     return {"facts": {**shown.facts, "layout": layout}, "block": block}
 
 
-def show(audit):
+def show(audit, notes=None):
     """Display an audit in the running notebook cell: live timeline, picture and tables; plain text where there is no notebook.
 
-    Gives the Desk, on which the same can be tried from Python as with the mouse.
+    notes: the file that holds the notes; by default beside the notebook, named like the path's file, and made by the first note. Gives the Desk, on which the same can be tried from Python as with the mouse.
     """
     from IPython import get_ipython
     from IPython.display import display
 
-    shell = get_ipython()
+    shell, noting = get_ipython(), Noting(audit, notes)
     if shell is None:
         sys.stdout.write(summary(audit))      # display() would write the bundle as it stands
     elif not hasattr(shell, "kernel"):
@@ -143,12 +152,12 @@ def show(audit):
         return Desk(Session(audit))
     shown = scene(audit)
     still = StillForm(shell)
-    timeline = Timeline(audit, shown, still)
+    timeline = Timeline(audit, shown, still, noting)
     _replace(shell, timeline)
     display({"application/vnd.jupyter.widget-view+json": {"version_major": 2, "version_minor": 0, "model_id": timeline.model_id},
              "text/plain": _line(audit)}, raw=True)
-    still.display(still_form(audit, shown))
-    return Desk(timeline.session)
+    still.display(still_form(audit, shown, notes=noting.placed))
+    return Desk(timeline.session, noting, timeline.take_note)
 
 
 def _line(audit):

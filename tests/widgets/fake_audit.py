@@ -5,6 +5,7 @@ from types import SimpleNamespace
 import numpy as np
 
 from pathaudit.arm import Chain
+from pathaudit.cell import Thresholds
 
 SPEED_DEG_S = (200.0, 180.0, 200.0, 400.0, 400.0, 600.0)
 
@@ -112,9 +113,7 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0, tight=False):
     factor = np.array([factor[max(0, k - wide):k + wide].min() for k in range(samples)]) if samples <= 20000 else factor
     process = np.ones(samples, dtype=bool)
     process[:int(0.08 * samples)] = process[int(0.95 * samples):] = False
-    thresholds = SimpleNamespace(sigma_min_warn=0.06, sigma_min_fail=0.02, speed_share_warn=0.9, speed_share_fail=1.0,
-                                 acceleration_share_warn=0.9, acceleration_share_fail=1.0, travel_warn_deg=5.0, travel_warn_mm=5.0,
-                                 deviation_mm=0.01, deviation_deg=0.01, tool_speed_mm_s=None, characteristic_length_mm=None)
+    thresholds = Thresholds()
     arm = SimpleNamespace(name="invented arm", joint_names=names, chain=SimpleNamespace(links=links, prismatic=np.zeros(n, dtype=bool)),
                           lower=lower, upper=upper, speed=limit, acceleration=acceleration,
                           effort=np.full(n, np.nan), n=n, prismatic=np.zeros(n, dtype=bool), reach=1.9)

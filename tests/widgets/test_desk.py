@@ -5,7 +5,9 @@ import pytest
 from example_arms import SWAY_TIME, path_of_motion, swaying
 
 import pathaudit as pa
+from pathaudit.notes import read_notes
 from pathaudit.widgets.desk import Desk
+from pathaudit.widgets.noting import Noting
 from pathaudit.widgets.session import Session
 
 
@@ -16,9 +18,10 @@ def audit():
 
 
 @pytest.fixture
-def desk(audit):
+def desk(audit, tmp_path, monkeypatch):
+    monkeypatch.setattr("pathaudit.widgets.noting._author_file", lambda: tmp_path / "author.txt")
     session = Session(audit)
-    yield Desk(session)
+    yield Desk(session, Noting(audit, tmp_path / "job.notes.toml", "A. Weber"))
     session.close()
 
 
@@ -83,3 +86,26 @@ def test_what_fails_is_raised(desk, audit, monkeypatch):
     with pytest.raises(RuntimeError, match="ZeroDivisionError: division by zero"):
         desk.slow(*span(audit, 1, 5), 0.5)
     assert desk.audit is audit
+
+
+def test_notes_are_written_and_listed(desk, audit, tmp_path):
+    assert list(desk.notes.columns) == ["where", "by", "date", "settled", "text", "changed since"] and desk.notes.empty
+    desk.note("Macro section here.\nKeep the speed.", float(audit.time[40]))
+    desk.note("Clamp in the way?", float(audit.time[10]), author="B. Okafor")
+    assert list(desk.notes["by"]) == ["B. Okafor", "A. Weber"] and desk.notes["text"][1] == "Macro section here.\nKeep the speed."
+    assert not desk.notes["settled"].any() and (desk.notes["changed since"] == "").all()
+    stored = read_notes(tmp_path / "job.notes.toml")
+    assert [note.text for note in stored.kept] == list(desk.notes["text"])
+    desk.slow(*span(audit, 0, 50), 0.5)
+    assert len(desk.notes) == 2
+
+
+def test_a_note_that_cannot_be_kept_is_refused(desk, audit, tmp_path):
+    with pytest.raises(ValueError, match="expected a time of the path"):
+        desk.note("words", -5.0)
+    with pytest.raises(ValueError, match="without words"):
+        desk.note("  ", float(audit.time[3]))
+    (tmp_path / "job.notes.toml").write_text("this is no TOML")
+    with pytest.raises(ValueError, match="kept here"):
+        desk.note("words", float(audit.time[3]))
+    assert list(desk.notes["text"]) == ["words"] and (tmp_path / "job.notes.toml").read_text() == "this is no TOML"

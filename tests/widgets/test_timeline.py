@@ -147,6 +147,15 @@ def test_a_stretch_beyond_the_path_is_cut_to_it(bench, real):
     assert [(e["first"], e["last"]) for e in bench.trial["edits"]] == [(0, real.path.samples - 1)]
 
 
+def test_a_note_from_the_browser_is_kept_and_shown(bench, tmp_path):
+    bench.noting._file = str(tmp_path / "job.notes.toml")
+    ask(bench, do="note add", sample=40, finding=None, author="A. Weber", text="first line\nsecond")
+    assert [(n["text"], n["sample"], n["author"]) for n in bench.notes["notes"]] == [("first line\nsecond", 40, "A. Weber")]
+    assert (tmp_path / "job.notes.toml").exists() and bench.notes["fault"] == ""
+    ask(bench, do="note add", sample=40, finding=None, author="A. Weber", text="  ")
+    assert "without words" in bench.notes["fault"] and bench.status == ""
+
+
 def test_what_is_told_is_plain_json(bench):
     ask(bench, do="slow", first=10, last=50, factor=0.5)
     json.dumps(bench.trial, allow_nan=False)
@@ -234,7 +243,11 @@ def test_the_still_form_follows_what_is_tried(notebook, real, monkeypatch):
     desk.accept()
     shell.events[0](None)      # the cell has run
     assert [next(iter(bundle)) for bundle in out[3:]] == ["image/svg+xml", "text/html"]
-    assert "Slows" in out[4]["text/html"] or "One even speed" in out[4]["text/html"]
+    assert "Shown at other speeds than programmed" in out[4]["text/html"]
+    desk.note("look here <b>", float(real.time[20]))
+    shell.events[0](None)
+    assert "look here &lt;b&gt;" in out[6]["text/html"] and "look here" in out[6]["text/plain"]
+    del out[5:]
     shell.events[0](None)
     assert len(out) == 5      # nothing has changed since
     monkeypatch.setattr("pathaudit.widgets.still_form.QUIET", 0.05)
@@ -243,7 +256,7 @@ def test_the_still_form_follows_what_is_tried(notebook, real, monkeypatch):
         if len(out) == 7:
             break
         time.sleep(0.05)
-    assert len(out) == 7 and out[6]["text/html"] == out[2]["text/html"]
+    assert len(out) == 7 and "Shown at other speeds" not in out[6]["text/html"] and "look here" in out[6]["text/html"]
     (_, (timeline,)), = module._ON_SHOW.values()
     timeline.close()
     assert shell.events == []

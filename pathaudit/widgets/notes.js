@@ -8,14 +8,13 @@ export function notesPanel({ element, focusable, button, ask, finding, sample, p
   const typed = {}, about = element("b"), text = focusable("textarea", { rows: 3, "aria-label": "Text of the note" });
   const form = element("div", { hidden: "" }, about, text, button("save", "Save the note (Ctrl and Enter)", save), button("cancel", "Leave it (Esc)", leave));
   const filter = focusable("select", { "aria-label": "Notes listed" }, element("option", {}, "all"), element("option", {}, "open"));
-  const author = field("Your name", (name) => ask({ do: "note author", author: name }));
-  const file = field("File; another name saves them there", (name) => ask({ do: "note file", file: name }));
+  const author = field("Your name", "author"), file = field("File; another name saves them there", "file");
   const add = button("write a note", "At the cursor or on the selected finding", () => write({ where: "" }));
   let notes = [], draft = null, sent = false;
 
-  function field(name, act) {
-    const made = focusable("input", { "aria-label": name, title: name });
-    made.addEventListener("change", () => act(made.value));
+  function field(title, what) {
+    const made = focusable("input", { "aria-label": title, title });
+    made.addEventListener("change", () => ask({ do: `note ${what}`, [what]: made.value }));
     return made;
   }
 
@@ -52,8 +51,8 @@ export function notesPanel({ element, focusable, button, ask, finding, sample, p
 
   function row(note, k) {
     const { id, settled, stale, mark } = note;
-    const acts = ask ? [button("edit", `Edit note ${k + 1}`, () => write(note)),
-      button(settled ? "reopen" : "settle", `Note ${k + 1} is ${settled ? "open again" : "settled"}`, () => ask({ do: "note settle", id, settled: !settled })), remover(id)] : [];
+    const done = settled ? "reopen" : "settle";
+    const acts = ask ? [button("edit", `edit note ${k + 1}`, () => write(note)), button(done, `${done} note ${k + 1}`, () => ask({ do: "note settle", id, settled: !settled })), remover(id)] : [];
     const parts = [["", note.text], ...(note.others || []).map(({ by, text: other }) => [`or, by ${by}: `, other]), ["To decide: ", mark], ["Stale: ", stale]];
     return element("div", { role: "listitem", class: settled ? "pa-settled" : "", "data-id": id },
       element("div", { class: "pa-line" }, element("b", {}, `${k + 1}${stale ? "?" : ""}`), button(note.where, `Note ${k + 1}, ${note.where}`, () => go(note.sample)),

@@ -20,7 +20,7 @@ _LATEST_START = 1e5      # s; a start beyond is a clock's date, and times are wr
 _EXACT = ("sample", "time_s", "programmed_s")
 _PEAKS = ("share_percent", "acceleration_percent", "sigma_min", "speed_mm_s", "speed_limit_mm_s", "factor_percent",
           "before_share_percent", "before_acceleration_percent", "before_speed_mm_s")
-_PLACES = 40             # at most so many places of a near-singular stretch are asked what is lost there
+_PLACES = 100            # at most so many near-singular places are asked what is lost there
 _ROUNDING = 10           # trailing mantissa bits dropped from everything else: 6e-5 of the value, far below a pixel
 
 
@@ -141,19 +141,21 @@ def _finding(number, finding, audit, arrays, names):
 
 
 def _lost(audit, arrays):
-    """[first sample, last sample, words] of near-singular pieces: what the tool can hardly do there."""
-    sigma, sample = arrays["sigma_min"], arrays["sample"].astype(int)
+    """[first sample, last sample, words] of near-singular pieces: what the tool can hardly do there. Pieces very near to each other are one."""
+    sample = arrays["sample"].astype(int)
+    near = np.flatnonzero(arrays["sigma_min"] < audit.cell.thresholds.sigma_min_warn)
+    if not len(near):
+        return []
+    asked = np.arange(0, len(near), -(-len(near) // _PLACES))
+    words, gap = lost_words_along(audit.rates, sample[near[asked]]), len(sample) // 500 + 1
     found = []
-    for first, last in runs(sigma < audit.cell.thresholds.sigma_min_warn):
-        inside = sample[first:last + 1]
-        places = inside[:: -(-len(inside) // _PLACES)]
-        ends = np.r_[places[1:] - 1, inside[-1]]
-        for start, end, words in zip(places.tolist(), ends.tolist(), lost_words_along(audit.rates, places)):
-            if found and found[-1][2] == words and found[-1][1] + 1 == start:
-                found[-1][1] = end
-            else:
-                found.append([start, end, words])
-    return found
+    for k, place in enumerate(near.tolist()):
+        said = words[int(np.searchsorted(asked, k, side="right")) - 1]
+        if found and found[-1][2] == said and place - found[-1][1] <= gap:
+            found[-1][1] = place
+        else:
+            found.append([place, place, said])
+    return [[int(sample[first]), int(sample[last]), said] for first, last, said in found]
 
 
 def clock_offset(audit):

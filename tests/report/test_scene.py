@@ -155,6 +155,14 @@ def test_the_lost_direction_is_said_wherever_the_tool_is_near_a_singular_place()
     assert near.split("(")[0] == next(words for first, last, words in shown.facts["lost"] if first <= worst <= last).split("(")[0]
 
 
+def test_a_path_that_is_near_singular_now_and_then_stays_small():
+    audit = fake_audit(30_000, gap=False)
+    audit.rates.sigma_min[:] = np.where(np.arange(30_000) % 7 == 0, 0.05, 0.07)
+    lost = scene(audit).facts["lost"]
+    assert 0 < len(lost) <= 600
+    assert all(b[0] > a[1] for a, b in zip(lost, lost[1:]))
+
+
 def test_packing_gives_the_columns_back():
     audit = fake_audit(1500)
     shown = scene(audit.suggestion.audit(), applied=audit.suggestion, before=audit)

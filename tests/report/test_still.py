@@ -198,3 +198,11 @@ def test_words_too_long_for_their_place_are_shortened():
     words = words_of(svg_picture(scene(audit)))
     assert any(word.startswith("A cell with") and word.endswith("..") and len(word) < 120 for word in words)
     assert any(word.startswith("shoulder_") and word.endswith("..") and len(word) < 16 for word in words)
+
+
+def test_the_still_outputs_stay_small_with_everything_drawn():
+    audit = fake_audit(2000, n=12, tight=True)
+    shown = scene(audit.suggestion.audit(), applied=audit.suggestion, before=audit)
+    for group in shown.facts["groups"]:
+        group["folded"] = False
+    assert len(svg_picture(shown)) + len(png_picture(shown)) * 4 / 3 <= 170_000

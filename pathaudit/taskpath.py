@@ -244,7 +244,7 @@ def _check_time(source, time):
     late = ~(np.diff(time) >= SHORTEST_STEP)
     if late.any():
         row = int(np.argmax(late)) + 1
-        raise source.error(row, f"time {time[row]:.9g} s after {time[row - 1]:.9g} s in {source.place(row - 1)}", "times that strictly increase")
+        raise source.error(row, f"time {time[row]:.9g} s after {time[row - 1]:.9g} s in {source.place(row - 1)}", "times that strictly increase (a recorded log is repaired when it is read as format recorded)")
 
 
 def _check_position(source, position):

@@ -32,11 +32,12 @@ class Table:
     """Cells by column, numbers by column, and the place of each row in the file.
 
     data: bytes of UTF-8 text.  expected: what the file should be, for messages.  known: names of columns by which the header is recognised.
+    whole: split a large file at once as well.
     header: names.  cells: for each column its texts.  lines (N,): the line of each row in the file.
     """
 
-    def __init__(self, file, data, expected, known=MEANING):
-        self.file, self.expected, self.large = file, expected, len(data) >= sources.LARGE
+    def __init__(self, file, data, expected, known=MEANING, whole=False):
+        self.file, self.expected, self.large = file, expected, len(data) >= sources.LARGE and not whole
         check_text(file, data[:BLOCK], expected)
         if self.large and b"\n" not in data[:BLOCK]:
             data = data[:]  # line ends of another kind, or a line too long to be one

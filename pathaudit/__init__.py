@@ -22,6 +22,7 @@ _HOMES = {
     "audit": "pipeline",
     "Audit": "pipeline",
     "show": "widgets.timeline",
+    "read_notes": "notes",
     "velocity_ellipsoid": "capacity",
     "velocity_polytope": "capacity",
     "force_ellipsoid": "capacity",

@@ -1,6 +1,6 @@
 """Makes the demo's two paths from their geometry.
 
-`python tests/make_demo.py` writes them, runs the notebook, copies the demo to notebooks/ and draws the README's picture.
+`python tests/make_demo.py` writes them, runs the notebooks, copies the demo to notebooks/ and draws the README's picture.
 
 Closed forms in plain Python floats, so that the files come out the same everywhere. Lengths in mm, angles in rad, times in s. Both
 parts are invented. The seam: the foot of a bent wall on a floor sheet, welded from inside the bend. The bead: a gasket on a housing.
@@ -220,17 +220,17 @@ def bead_csv():
 
 
 MADE = {"seam.csv": seam_csv, "bead.csv": bead_csv}
-NOTEBOOK = "01-check-a-seam.ipynb"
+NOTEBOOK_NAMES = ("01-check-a-seam.ipynb", "02-try-other-speeds.ipynb", "03-hand-over-with-notes.ipynb")
 
 
-def run_notebook(folder):
-    """The demo's notebook in `folder` with the outputs of a run there, and without the traces of when and how it ran."""
+def run_notebook(folder, name):
+    """A notebook of the demo in `folder` with the outputs of a run there, and without the traces of when and how it ran."""
     import nbformat
     from nbclient import NotebookClient
 
     from pathaudit.kernels import clocks, linkage, rates, steps  # noqa: F401  compiled here, so that the notebook need not tell of it
 
-    notebook = nbformat.read(folder / NOTEBOOK, 4)
+    notebook = nbformat.read(folder / name, 4)
     NotebookClient(notebook, timeout=120, resources={"metadata": {"path": str(folder)}}, store_widget_state=False).execute()
     for cell in notebook.cells:
         cell.metadata.pop("execution", None)
@@ -254,7 +254,8 @@ def main():
 
     for name, make in MADE.items():
         (DEMO / name).write_bytes(make().encode())
-    nbformat.write(run_notebook(DEMO), DEMO / NOTEBOOK)
+    for name in NOTEBOOK_NAMES:
+        nbformat.write(run_notebook(DEMO, name), DEMO / name)
     NOTEBOOKS.mkdir(exist_ok=True)
     for file in sorted(DEMO.iterdir()):
         if file.is_file() and not file.name.startswith((".", "__")):

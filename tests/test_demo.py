@@ -47,7 +47,7 @@ def test_the_paths_are_what_their_geometry_gives(name):
 def test_the_demo_writes_what_lies_in_notebooks(tmp_path, capsys):
     assert main(["demo", str(tmp_path / "cell")]) == 0
     written = {file.name: file.read_bytes() for file in (tmp_path / "cell").iterdir()}
-    assert set(written) >= {"cell.toml", "cell-moved.toml", "cell-bead.toml", "arm.urdf", "seam.csv", "bead.csv", make_demo.NOTEBOOK}
+    assert set(written) >= {"cell.toml", "cell-moved.toml", "cell-bead.toml", "arm.urdf", "seam.csv", "bead.csv", *make_demo.NOTEBOOK_NAMES}
     assert written == {file.name: file.read_bytes() for file in NOTEBOOKS.iterdir() if file.is_file() and not file.name.startswith(".")}
     said = capsys.readouterr().out
     assert all(str(tmp_path / "cell" / name) in said for name in written)

@@ -145,9 +145,9 @@ def show(audit, notes=None):
 
     shell, noting = get_ipython(), Noting(audit, notes)
     if shell is None:
-        sys.stdout.write(summary(audit))      # display() would write the bundle as it stands
+        sys.stdout.write(summary(audit, noting.placed))      # display() would write the bundle as it stands
     elif not hasattr(shell, "kernel"):
-        display({"text/plain": summary(audit)}, raw=True)
+        display({"text/plain": summary(audit, noting.placed)}, raw=True)
     if not hasattr(shell, "kernel"):
         return Desk(Session(audit))
     shown = scene(audit)

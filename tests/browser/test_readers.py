@@ -1,4 +1,4 @@
-"""Everybody who is handed an audit can read it: picture, verdict, findings and retiming in each reader, with and without a kernel.
+"""Everybody who is handed an audit can read it: picture, verdict, findings, retiming and notes in each reader, with and without a kernel.
 
 No reader shows a message about a widget that it cannot draw, asks for anything off the machine, or has an error of ours in its console.
 """
@@ -16,6 +16,7 @@ import nbformat
 import pytest
 
 import pathaudit as pa
+from pathaudit.notes import Notes, new_note, placed, write_notes
 from pathaudit.report.page import one_page
 
 PICTURES = """() => [...document.querySelectorAll(".pa-rows canvas, .jp-OutputArea-output img, .jp-OutputArea-output svg, .pa-picture svg, .pa-picture img")]
@@ -32,9 +33,22 @@ def audit():
     return pa.audit(pa.read_path(hosts.DEMO / "seam.csv"), pa.read_cell(hosts.DEMO / "cell.toml"))
 
 
+NOTES = ("The neck touches the clamp <b>here</b>.\nAsk for the shorter one.", "Slower would spoil the bead & the root.")
+AUTHOR = "Ada of the night shift"
+
+
+@pytest.fixture(scope="module")
+def notes(lab, audit):
+    """Two notes of somebody's, one at a place and one on a finding, in the file beside the notebooks."""
+    made = new_note(audit, 300, NOTES[0], AUTHOR), new_note(audit, None, NOTES[1], AUTHOR, finding=1)
+    write_notes(lab.root / "seam.notes.toml", Notes(made))
+    return placed(Notes(made), audit)
+
+
 def wanted(audit):
-    """What every reader must find in words. A place for notes: what they say belongs here."""
-    return [audit.verdict, audit.cell.name, *(finding.why for finding in audit.finding_list), audit.suggestion.why.split(",")[0]]
+    """What every reader must find in words."""
+    return [audit.verdict, audit.cell.name, *(finding.why for finding in audit.finding_list), audit.suggestion.why.split(",")[0],
+            AUTHOR, *(line for text in NOTES for line in text.splitlines())]
 
 
 def plain(text):
@@ -56,7 +70,7 @@ def assert_read(audit, page):
 
 
 @pytest.fixture(scope="module")
-def handed_on(lab, desk):
+def handed_on(lab, desk, notes):
     """The notebooks that are handed on: run and saved in the Lab without and with the widgets' state, and changed by somebody whom nobody trusts."""
     page = desk.page
     lab.write("made.ipynb", hosts.SHOW)
@@ -93,7 +107,7 @@ def opened(lab, reader, name):
     return reader.page
 
 
-def test_jupyterlab_live(lab, page, audit):
+def test_jupyterlab_live(lab, page, audit, notes):
     lab.write("lab-live.ipynb", hosts.SHOW)
     lab.open(page, "lab-live.ipynb")
     lab.run(page)
@@ -174,9 +188,9 @@ def test_an_export_to_html(watched, tmp_path, audit, handed_on, template_asks, n
 
 
 @pytest.mark.parametrize("scripts", [True, False], ids=["scripts on", "scripts off"])
-def test_the_one_page(watched, tmp_path, audit, scripts):
+def test_the_one_page(watched, tmp_path, audit, notes, scripts):
     file = tmp_path / "audit.html"
-    file.write_text(one_page(audit), encoding="utf-8")
+    file.write_text(one_page(audit, notes), encoding="utf-8")
     page = watched(java_script_enabled=scripts).page
     page.goto(file.as_uri())
     if scripts:
@@ -194,9 +208,9 @@ audit = pa.audit(pa.read_path({str(hosts.DEMO / "seam.csv")!r}), pa.read_cell({s
 
 @pytest.mark.parametrize("program, last", [(["-c"], "pa.show(audit)"), (["-m", "IPython", "--no-banner", "--colors=nocolor", "-c"], "audit")],
                          ids=["python", "ipython"])
-def test_a_terminal(tmp_path, audit, program, last):
-    done = subprocess.run([sys.executable, *program, SCRIPT + last], capture_output=True, text=True, timeout=60, cwd=hosts.HERE.parents[1],
-                          env={**os.environ, "IPYTHONDIR": str(tmp_path)})
+def test_a_terminal(tmp_path, lab, audit, notes, program, last):
+    done = subprocess.run([sys.executable, *program, SCRIPT + last], capture_output=True, text=True, timeout=60, cwd=lab.root,
+                          env={**os.environ, "IPYTHONDIR": str(tmp_path), "PYTHONPATH": str(hosts.HERE.parents[1])})
     assert done.returncode == 0 and done.stderr == ""
     assert missing(audit, done.stdout) == []
     assert "{" not in done.stdout and max(map(len, done.stdout.splitlines())) <= 120

@@ -88,7 +88,7 @@ class Table:
     def numbers(self, column):
         """What Python's float() makes of each cell: (N,) float64; a large file's in pieces, which are handed over once."""
         if self.large:
-            return self.read.pop(column)
+            return self.read.pop(column) or [np.zeros(0)]
         return numbers_of(self.file, column, self.cells[self.header.index(column)], self.lines)
 
 

@@ -35,6 +35,8 @@ def json_columns(data: bytes, name) -> Columns:
             for key, column in zip(header, values):
                 column.append(sample[key])
             lines.append(number)
+    if header is None:
+        raise ReadError(name, "", "no lines with anything in them", EXPECTED)
     columns = dict(zip(header, values))
     label = tuple("" if value is None else str(value) for value in columns["label"]) if "label" in columns else None
     return Columns(

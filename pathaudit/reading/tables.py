@@ -116,9 +116,10 @@ def _check_types(name, schema):
     from pyarrow import types
 
     for field in schema:
+        field_name = field.name  # bytes that are no text raise here
         kind = field.type.value_type if types.is_dictionary(field.type) else field.type
         if types.is_nested(kind) or isinstance(kind, _extension()) or types.is_binary(kind) or types.is_large_binary(kind):
-            raise ReadError(name, f"column {quoted(field.name)}", f"values of type {one_line(kind)}", "numbers or texts")
+            raise ReadError(name, f"column {quoted(field_name)}", f"values of type {one_line(kind)}", "numbers or texts")
 
 
 def _extension():

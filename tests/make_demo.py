@@ -6,6 +6,7 @@ Closed forms in plain Python floats, so that the files come out the same everywh
 parts are invented. The seam: the foot of a bent wall on a floor sheet, welded from inside the bend. The bead: a gasket on a housing.
 """
 
+import json
 import math
 import shutil
 from pathlib import Path
@@ -219,7 +220,53 @@ def bead_csv():
     return text(comments, columns, ("z.3f", "z.4f", "z.4f", "z.4f", "z.8f", "z.8f", "z.8f", "d"), bead_rows())
 
 
-MADE = {"seam.csv": seam_csv, "bead.csv": bead_csv}
+def bead_jsonl():
+    """The bead at every fourth sample."""
+    names = ("t_s", "x_mm", "y_mm", "z_mm", "i", "j", "k", "process")
+    rows = ((*(round(value, 6) for value in row[:-1]), row[-1]) for row in bead_rows()[::4])
+    return "".join(json.dumps(dict(zip(names, row, strict=True))) + "\n" for row in rows)
+
+
+def bead_recorded_csv():
+    """The bead as a recorder on the line might have seen it: a clock of whole milliseconds that starts anywhere, noise, and all that goes wrong."""
+    noise, rows = noise_of(7), []
+    for number, row in enumerate(bead_rows()[::2]):
+        time = 81_204_000 + 1000.0 * row[0] + 2.0 * next(noise)
+        rows.append((round(time), *(value + 0.03 * next(noise) for value in row[1:4]), *row[4:7], row[7]))
+        if number in (100, 260, 261, 500):
+            rows[-1] = (rows[-1][0], *rows[-2][1:])  # a pose that was not read anew
+    lines = [",".join(format(value, spec) for value, spec in zip(row, ("d", "z.3f", "z.3f", "z.3f", "z.5f", "z.5f", "z.5f", "d"), strict=True)) for row in rows]
+    lines[150] = lines[150].split(",")[0] + ",,,,,,," + lines[150][-1]
+    lines[320], lines[321] = lines[321], lines[320]
+    lines[400:400] = [lines[399]]
+    del lines[430:436]
+    head = ["# Recorded on the line, every 20 ms. Read it as: pathaudit check bead-recorded.csv --format recorded --cell cell-bead.toml", "t_ms,x_mm,y_mm,z_mm,i,j,k,process"]
+    return "\n".join([*head, *lines]) + "\n"
+
+
+def noise_of(seed):
+    """Numbers of mean 0 and variance 1/2, the same everywhere: sums of six from a linear congruential generator (Knuth's MMIX constants)."""
+    while True:
+        total = 0.0
+        for _ in range(6):
+            seed = (6364136223846793005 * seed + 1442695040888963407) % 2**64
+            total += seed / 2**64
+        yield total - 3.0
+
+
+MADE = {"seam.csv": seam_csv, "bead.csv": bead_csv, "bead.jsonl": bead_jsonl, "bead-recorded.csv": bead_recorded_csv}
+TABLES = {"bead.parquet": "parquet", "bead.feather": "feather"}
+"""The same samples as bead.jsonl; their bytes depend on the library that writes them."""
+
+
+def write_tables(folder):
+    from pathaudit.converting import converted
+    from pathaudit.reading import read_path
+
+    for name, kind in TABLES.items():
+        (folder / name).write_bytes(converted(read_path(folder / "bead.jsonl"), kind).content)
+
+
 NOTEBOOK_NAMES = ("01-check-a-seam.ipynb", "02-try-other-speeds.ipynb", "03-hand-over-with-notes.ipynb")
 
 
@@ -254,6 +301,7 @@ def main():
 
     for name, make in MADE.items():
         (DEMO / name).write_bytes(make().encode())
+    write_tables(DEMO)
     for name in NOTEBOOK_NAMES:
         nbformat.write(run_notebook(DEMO, name), DEMO / name)
     NOTEBOOKS.mkdir(exist_ok=True)

@@ -139,3 +139,9 @@ def test_pyarrow_is_loaded_for_tables_only(tmp_path):
     (tmp_path / "a.csv").write_text("t_s,x_m,y_m,z_m,i,j,k\n0,0,0,0,0,0,1\n1,0,0,0,0,0,1\n")
     code = f"import sys, pathaudit as pa; pa.read_path({str(tmp_path / 'a.csv')!r}); sys.exit('pyarrow' in sys.modules or 'pandas' in sys.modules)"
     assert subprocess.run([sys.executable, "-c", code]).returncode == 0
+
+
+def test_days_outside_of_the_calendar_are_handed_through_as_texts(read):
+    days = arrow.array([2**60] * N, arrow.timestamp("us"))
+    p = read(arrow.table({**FRAME, "day": days}))
+    assert list(p.cells[-1]) == [arrow.scalar(2**60, arrow.timestamp("us")).cast(arrow.string()).as_py()] * N

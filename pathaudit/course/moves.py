@@ -13,6 +13,8 @@ from .turning import EVEN, SPLINED, Even, Splined, between
 
 HALF_TURN = np.pi - 1e-6  # rad: beyond, the way round is open
 CURVE_TURN = 0.5 * np.pi  # rad between two points of a curve: beyond, a spline of quaternions says little
+LENGTHS = 0.7, 1.4
+"""What the length of a splined quaternion may be; half way between orientations 90 deg apart an even one has cos 22.5 deg = 0.92."""
 SAME_POINT = 1e-9  # m
 SLOWEST, FASTEST = 1e-9, 1e4  # m/s; what lies outside is a mistake in the unit
 
@@ -211,6 +213,7 @@ class Draft:
             how[move], row[move] = SPLINED, sum(map(len, splined))
             splined.append(_parabola(through, share)[None])
         table = np.concatenate(splined) if splined else np.zeros((0, 4, 4))
+        self._check_splined(table, line[how == SPLINED], row[how == SPLINED])
         return frozen(how, np.uint8), frozen(row, np.int64), Even(at_points[:-1], turn), Splined(table)
 
     def _check_turns(self, kind, angle, line):
@@ -219,6 +222,16 @@ class Draft:
             k = int(np.argmax(wide))
             most = "at most 90 deg between points of a curve" if kind[k] == CURVE else "less than half a turn, so that the way round is clear"
             raise ReadError(self.file, f"line {line[k]}", f"a tool that turns by {np.degrees(angle[k]):.4g} deg in one move", f"{most}: give a point between")
+
+
+    def _check_splined(self, table, line, row):
+        """Refuse turning that swings out between its points: the length of the quaternion, before it is scaled to 1, shows it."""
+        if len(row):
+            lengths = np.array([np.linalg.norm(table[row].transpose(0, 2, 1) @ t ** np.arange(4.0), axis=1) for t in np.linspace(0.0, 1.0, 33)])
+            wild = (lengths.min(axis=0) < LENGTHS[0]) | (lengths.max(axis=0) > LENGTHS[1])
+            if wild.any():
+                where = f"line {line[np.argmax(wild)]}"
+                raise ReadError(self.file, where, "a tool whose turning swings out between the points of a curve", "points at distances that differ less, or less turning between close ones")
 
 
 def _apart(a, b):

@@ -11,7 +11,7 @@ from .shapes import ARC, CURVE, STILL, Curves, curvature
 from .turning import BLENDED, EVEN, SPLINED, between
 
 BLEND_PIECES = 8, 16  # of a rounding, at least and at most
-TURN_OF_PIECE = 0.1  # rad of direction in one piece of a curve
+TURN_OF_PIECE = 0.1  # rad of direction, or of the tool, in one piece of a curve
 MOST_PIECES = 32  # of a curve's interval
 LOOKS = np.linspace(0.0, 1.0, 5)
 """Where a piece is looked at for its bounds; half the largest step between neighbouring looks is added to the largest value."""
@@ -185,9 +185,12 @@ def _curve_pieces(course, low, high):
     count = np.ones(course.moves, dtype=int)
     if len(move):
         looks = np.linspace(0.0, 1.0, 9)[:, None]
-        tangents = np.stack([curvature(*course.at(move, low[move] + look * (high - low)[move])[1:])[0] for look in looks])
-        turned = 2.0 * np.arcsin(np.minimum(0.5 * np.linalg.norm(np.diff(tangents, axis=0), axis=2), 1.0)).sum(axis=0)
-        count[move] = np.clip(np.ceil(turned / TURN_OF_PIECE), 2, MOST_PIECES)
+        places = low[move] + looks * (high - low)[move]
+        tangents = np.stack([curvature(*course.at(move, t)[1:])[0] for t in places])
+        bent = 2.0 * np.arcsin(np.minimum(0.5 * np.linalg.norm(np.diff(tangents, axis=0), axis=2), 1.0)).sum(axis=0)
+        q = np.stack([course.quaternion(move, t) for t in places])
+        turned = np.linalg.norm(between(q[:-1], q[1:]), axis=2).sum(axis=0)
+        count[move] = np.clip(np.ceil(np.maximum(bent, turned) / TURN_OF_PIECE), 2, MOST_PIECES)
     return count
 
 

@@ -14,7 +14,8 @@ from .timing import Ceilings, phases
 
 RAMP = 4  # samples at least in a rise or fall of the speed on a line or an arc
 SHORTEST = 1e-7  # s: a phase below this gets no sample of its own
-MOST = 20_000_000  # samples
+MOST, MOST_A_MOVE = 250_000, 40
+"""Samples, and samples more for each move: more than an hour and a half at the default step. A short file with a slip in a number must not fill the memory."""
 BLOCK = 1 << 14  # samples
 
 
@@ -76,8 +77,9 @@ def _samples(course, pieces, passed, chord, angle, step):
     ramp = (passed.rate != 0.0) & (pieces.kind[piece] != CURVE)
     count = np.maximum(np.ceil(wanted - 1e-9), np.where(ramp, RAMP, 1.0))
     count[duration < SHORTEST] = 0.0
-    if not count.sum() + 1 <= MOST:
-        raise ReadError(course.file, "", f"a path of {count.sum():.3g} samples", f"at most {MOST:,}: larger chord_mm (--chord), angle_deg (--angle) or step_s (--step)")
+    most = MOST + MOST_A_MOVE * course.moves
+    if not count.sum() + 1 <= most:
+        raise ReadError(course.file, "", f"a path of {count.sum():.3g} samples", f"at most {most:,} from {_many(course.moves, 'move')}: a faster path, or larger chord_mm (--chord), angle_deg (--angle) or step_s (--step)")
     count = count.astype(np.int64)
     if not count.any():
         raise ReadError(course.file, "", "a path that takes no time", "at least one move from a point to another")

@@ -106,6 +106,8 @@ class _Moves:
         if len(values) == 6:
             if not self.multax:
                 raise self.refuse(f"{what} with 6 numbers", "3 numbers, or MULTAX/ON before it")
+            if self.asked is not None:
+                raise self.refuse(f"{what} with a vector, and the choice axis (--axis) as well", "one of them")
             self.holder, self.vectors = self._unit(values[3:], what), True
         elif not self.multax and self.vectors and self.holder != HOLDER:
             raise self.refuse(f"{what} after MULTAX/OFF with the tool tilted", "MULTAX/ON and a vector: what the tool does here differs between processors")

@@ -26,7 +26,7 @@ READERS = {
 
 _SAMPLING = {"speed_mm_s", "acceleration_mm_s2", "turn_speed_deg_s", "turn_acceleration_deg_s2", "corner", "chord_mm", "angle_deg", "step_s"}
 USES = {
-    "waypoints": {"axis", "units", *_SAMPLING},
+    "waypoints": {"axis", *_SAMPLING},
     "iso6983": {"axis", "inch_codes", "units", *_SAMPLING},
     "cutter-location": {"axis", "units", *_SAMPLING},
     "recorded": {"smooth_ms"},

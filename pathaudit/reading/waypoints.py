@@ -159,6 +159,8 @@ class _Course:
         if set(TIME) & set(rows.header):
             raise ReadError(self.name, "header", "a column of times", "points without times, or format timed (--format timed)")
         self.poses = rows.poses()
+        if self.poses is not None and axis is not None:
+            raise ReadError(self.name, "header", "an orientation, and the choice axis (--axis) as well", "one of them")
         self.list = list(self._list())
 
     def _list(self):

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from courses import DOWN, accelerations, draft, polyline, speeds, turn_rates
+from courses import DOWN, accelerations, draft, polyline, random_course, speeds, turn_rates
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
@@ -106,6 +106,25 @@ def test_no_ceiling_is_passed_on_any_way_through_points(points, acceleration, zo
     assert speeds(path).max() <= 0.5 * (1 + 1e-9) and accelerations(path).max() <= acceleration * (1 + 1e-3)
 
 
+@pytest.mark.parametrize("seed", range(40))
+def test_no_ceiling_is_passed_on_any_course(seed):
+    rng = np.random.default_rng(seed)
+    try:
+        course = random_course(rng)
+    except pa.ReadError as error:
+        assert "of a curve" in str(error) or "no move" in str(error)  # a tool that turns too far or too unevenly between its points
+        return
+    acceleration, (turn_speed, turn_acceleration) = rng.choice([0.3, 2.0, 10.0]), [(1.0, 4.0), (30.0, 1e4)][seed % 2]
+    corner = [Corner(), Corner(radius=0.005), Corner(speed=0.05)][seed % 3]
+    path = timed(course, speed=0.25, acceleration=acceleration, turn_speed=turn_speed, turn_acceleration=turn_acceleration, corner=corner, step=1e-3, chord=1e-6, angle=0.005)
+    apart = 0.5 * (path.time[2:] - path.time[:-2])
+    told = np.minimum(np.diff(path.time)[1:], np.diff(path.time)[:-1]) > 2e-5  # below, differences of rounded positions say nothing
+    turning = turn_rates(path)
+    assert speeds(path).max() <= 0.25 * (1 + 1e-9) and accelerations(path)[told].max(initial=0.0) <= acceleration * (1 + 1e-3)
+    assert np.linalg.norm(turning, axis=1).max() <= turn_speed * (1 + 1e-3)
+    assert (np.linalg.norm(np.diff(turning, axis=0), axis=1) / apart)[told].max(initial=0.0) <= turn_acceleration * (1 + 1e-2)
+
+
 def test_air_moves_without_a_speed_go_at_the_ceiling_and_the_process_keeps_its_first_and_last_sample():
     course = draft((0, 0, 0.1))
     course.line_to((0, 0, 0), 2, air=True)
@@ -148,7 +167,7 @@ def test_a_turn_in_place_takes_the_closed_form():
         ({"acceleration": 1.0, "speed": 1.0, "turn_speed": 1.0}, "expected the ceiling turn_acceleration_deg_s2 (--turn-acceleration)"),
         ({"acceleration": 0.0}, "course: found a ceiling acceleration_mm_s2 (--acceleration) of 0 in SI units, expected a number above 0"),
         ({"acceleration": float("nan")}, "course: found a ceiling acceleration_mm_s2 (--acceleration) of nan in SI units, expected a number above 0"),
-        ({"acceleration": 1.0, "speed": 1.0, "turn_speed": 1.0, "turn_acceleration": 1.0, "step": 1e-9}, "samples, expected at most 20,000,000: larger chord_mm (--chord)"),
+        ({"acceleration": 1.0, "speed": 1.0, "turn_speed": 1.0, "turn_acceleration": 1.0, "step": 1e-9}, "samples, expected at most 250,480 from 12 moves: a faster path, or larger chord_mm (--chord)"),
     ],
 )  # fmt: skip
 def test_what_is_missing_is_asked_for_by_name(given, words):

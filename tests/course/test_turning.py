@@ -87,3 +87,12 @@ def test_half_a_turn_leaves_the_way_open_and_is_refused():
     wide = Rotation.concatenate([TURNS[0], TURNS[0] * Rotation.from_euler("x", 100, degrees=True)])
     with pytest.raises(pa.ReadError, match="turns by 100 deg in one move, expected at most 90 deg between points of a curve"):
         course_of(lambda course, point, line, pose: course.curve_to(point, line, pose=pose), wide)
+
+
+def test_turning_that_swings_out_between_uneven_points_is_refused():
+    course = Draft("turns", "", True, (0, 0, 0), 1)
+    course.pose((0.0, 0.0, -1.0))
+    for line, (x, axis) in enumerate([(0.003, (0.6, 0.0, -0.8)), (0.3, (0.0, 0.6, -0.8)), (0.6, (0.0, 0.0, -1.0))], 2):
+        course.curve_to((x, 0.01 * line, 0.0), line, pose=course.pose(axis))
+    with pytest.raises(pa.ReadError, match="line [34]: found a tool whose turning swings out between the points of a curve, expected points at distances"):
+        course.finish()

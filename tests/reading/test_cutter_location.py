@@ -95,6 +95,8 @@ def test_a_file_without_vectors_takes_the_axis_that_is_asked_for():
     tilted = read(plain, axis=(0.6, 0.0, -0.8))
     np.testing.assert_allclose(rows(tilted)[-1, :6], [1 - 1.2, 0, 1.6, -0.6, 0, 0.8], atol=1e-14)
     assert "as asked" in tilted.notes[0]
+    with pytest.raises(pa.ReadError, match="line 3: found FROM with a vector, and the choice axis .* as well, expected one of them"):
+        read(HEAD, axis=(0.0, 0.0, -1.0))
 
 
 def test_the_first_goto_begins_a_file_without_from():

@@ -105,6 +105,8 @@ def test_a_file_without_orientation_asks_for_the_axis():
     course = read(bare, axis=(0.0, 0.6, -0.8))
     np.testing.assert_allclose(axes(course, 0, 0.5), [0, 0.6, -0.8], atol=1e-15)
     assert "as asked" in course.notes[0]
+    with pytest.raises(pa.ReadError, match="header: found an orientation, and the choice axis .* as well, expected one of them"):
+        read(SEAM, axis=(0.0, 0.6, -0.8))
 
 
 # arcs

@@ -37,7 +37,7 @@ class Scene:
         words = [_rounded(block, 0 if name in _EXACT else _ROUNDING) for name, block in columns]
         steps = np.diff(np.concatenate([w.ravel() for w in words]), prepend=np.uint32(0))
         planes = np.ascontiguousarray(steps.astype("<u4").view(np.uint8).reshape(-1, 4).T)
-        return zlib.compress(planes.tobytes(), 6), [[name, len(block)] for name, block in columns]
+        return zlib.compress(planes.tobytes(), 4), [[name, len(block)] for name, block in columns]
 
 
 def _rounded(block, bits):

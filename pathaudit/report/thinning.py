@@ -12,28 +12,30 @@ def kept_samples(series, most, always=()):
     samples = len(series)
     if samples <= most:
         return np.arange(samples)
+    columns = np.ascontiguousarray(series.T)
+    empty = np.isnan(columns)
+    low, high = np.where(empty, np.inf, columns), np.where(empty, -np.inf, columns)
     anchors = np.unique(np.clip(np.r_[0, samples - 1, np.asarray(always, dtype=int)[: most // 2]], 0, samples - 1))
     pieces = most // 2
     while True:
-        kept = np.union1d(_extremes(series, pieces), anchors)
+        kept = np.union1d(_extremes(low, high, pieces), anchors)
         if len(kept) <= most or pieces == 1:
             break
         pieces = max(1, min(pieces - 1, int(0.97 * pieces * most / len(kept))))
     return kept if len(kept) <= most else anchors
 
 
-def _extremes(series, pieces):
-    samples, width = series.shape
+def _extremes(low, high, pieces):
+    """Where each of `pieces` pieces has its least of low (S, N) and its greatest of high; the last piece may be shorter."""
+    series, samples = low.shape
     size = -(-samples // pieces)
-    padded = np.full((pieces * size, width), np.nan)
-    padded[:samples] = series
-    blocks = padded.reshape(pieces, size, width)
-    empty = np.isnan(blocks)
-    least = np.where(empty, np.inf, blocks).argmin(axis=1)
-    greatest = np.where(empty, -np.inf, blocks).argmax(axis=1)
-    starts = size * np.arange(pieces)[:, None]
-    found = np.unique(np.concatenate([starts + least, starts + greatest]))
-    return found[found < samples]
+    whole = samples // size * size
+    starts, found = np.arange(0, whole, size), []
+    for values, place in ((low, np.argmin), (high, np.argmax)):
+        found.append(starts + place(values[:, :whole].reshape(series, -1, size), axis=2))
+        if whole < samples:
+            found.append(whole + place(values[:, whole:], axis=1, keepdims=True))
+    return np.unique(np.concatenate([places.ravel() for places in found]))
 
 
 def runs(mask):

@@ -1,4 +1,4 @@
-"""The command line: `pathaudit check`, `pathaudit convert`, `pathaudit notes` and `pathaudit demo`.
+"""The command line: `pathaudit check`, `pathaudit sign`, `pathaudit convert`, `pathaudit notes` and `pathaudit demo`.
 
 Exit status: 0 nothing fails; 1 a finding fails; 2 something given cannot be used, said in one line on stderr.
 """
@@ -55,7 +55,9 @@ def _parser():
     check.add_argument("--retimed", metavar="FILE.csv", help="write the path with the suggested times")
     check.add_argument("--html", metavar="FILE", help="write the whole audit as one self-contained page")
     check.add_argument("--notes", metavar="FILE.notes.toml", help="put these notes into the summary, the JSON and the page, with what is stale")
+    check.add_argument("--against", metavar="EARLIER.json", help="tell what changed since this report of check --json, and whether its signature holds")
     _add_reading(check)
+    _add_sign(commands)
     _add_convert(commands)
     _add_notes(commands)
     demo = commands.add_parser("demo", help="write a ready cell, path and notebook", description="Write a ready cell, path and notebook into a folder.", allow_abbrev=False)
@@ -99,6 +101,41 @@ def _read_path(file, options):
     except ModelError as error:
         word = next((f"--{option}" for option, (name, *_) in READING.items() if name == error.field), error.field)
         raise UsageError(f"{word}: found {error.value}, expected {error.reason}") from None
+
+
+SIGN = """examples:
+  pathaudit check seam.csv --cell cell.toml --json seam.json
+  pathaudit sign seam.json --by "A. Weber" --remark "run in slow manual mode on 3 March"
+  pathaudit check seam.csv --cell cell.toml --against seam.json
+"""
+
+
+def _add_sign(commands):
+    parser = commands.add_parser(
+        "sign", help="put a name to a report", description="Put a name and a date to a report of check --json. The signature becomes void when what it covers changes.",
+        epilog=SIGN, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
+    )  # fmt: skip
+    parser.add_argument("report", metavar="REPORT.json", help="the report; it is written anew with the signature, in place of any it had")
+    parser.add_argument("--by", metavar="NAME", required=True, help="the person who stands for it")
+    parser.add_argument("--remark", metavar="TEXT", default="", help="what the person adds")
+
+
+def _sign(options):
+    from .earlier import read_earlier, signed
+    from .report.noted import day
+    from .report.tables import report_text
+    from .writing import write_whole
+
+    earlier = read_earlier(options.report)
+    try:
+        paper = signed(earlier, options.by, options.remark)
+    except ValueError as error:
+        raise UsageError(f"--by: {error}") from None
+    write_whole(options.report, report_text(paper.values))
+    notes = sum(not note.get("settled") for note in paper.values.get("notes", []) if isinstance(note, dict))
+    said = f"{options.report}: signed by {paper.signature.by}, {day(paper.signature.on)}; verdict {paper.values['verdict']}, {len(paper.findings)} findings, {notes} open notes"
+    _say(said + "\n", sys.stdout)
+    return 0
 
 
 CONVERT = """examples:
@@ -166,6 +203,8 @@ def _run(arguments):
         return 0
     if options.command == "notes":
         return _merge_notes(options) if options.act == "merge" else _list_notes(options)
+    if options.command == "sign":
+        return _sign(options)
     if options.command == "convert":
         return _convert(options)
     return _check(options) if options.command == "check" else _demo(options.folder)
@@ -176,7 +215,9 @@ def _check(options):
 
     path, cell, noted = _read_path(options.path, options), read_cell(options.cell), _read_notes(options.notes)
     outputs = {name: getattr(options, name) for name in ("json", "joints", "retimed", "html") if getattr(options, name) is not None}
-    _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources), *([options.notes] if noted else [])])
+    earlier = _read_earlier(options.against)
+    asked = [file for file, there in ((options.notes, noted), (options.against, earlier)) if there]
+    _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources), *asked])
 
     from .pipeline import audit
     from .writing import write_whole
@@ -185,27 +226,27 @@ def _check(options):
     if path.samples > LONG:
         _say(f"pathaudit: auditing {path.samples:,} samples ...\n", sys.stderr)
     judged = audit(path, cell)
-    notes = _placed(noted, judged)
+    more = {"notes": _placed(noted, judged), "compared": _compared(earlier, judged)}
     for name, file in outputs.items():
         if file != "-":
-            write_whole(file, _content(name, judged, notes))
+            write_whole(file, _content(name, judged, more))
     piped = outputs.get("json") == "-"
     if piped:
-        _say(_content("json", judged, notes), sys.stdout)
-    _say(summary(judged, notes), sys.stderr if piped else sys.stdout)
+        _say(_content("json", judged, more), sys.stdout)
+    _say(summary(judged, **more), sys.stderr if piped else sys.stdout)
     return 1 if judged.verdict == "fail" else 0
 
 
-def _content(name, judged, notes):
+def _content(name, judged, more):
     from .report import tables
 
     if name == "html":
         from .report.page import one_page
 
-        return one_page(judged, notes)
+        return one_page(judged, **more)
     if name == "retimed":
         return tables.retimed_csv(judged.suggestion)
-    return tables.check_json(judged, notes) if name == "json" else tables.joints_csv(judged)
+    return tables.check_json(judged, **more) if name == "json" else tables.joints_csv(judged)
 
 
 def _read_notes(file):
@@ -214,6 +255,22 @@ def _read_notes(file):
     from .notes import read_notes
 
     return read_notes(file)
+
+
+def _read_earlier(file):
+    if file is None:
+        return None
+    from .earlier import read_earlier
+
+    return read_earlier(file)
+
+
+def _compared(earlier, judged):
+    if earlier is None:
+        return None
+    from .against import against
+
+    return against(earlier, judged)
 
 
 def _placed(notes, judged):

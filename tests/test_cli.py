@@ -306,6 +306,40 @@ def test_the_demo_is_written_runs_as_it_says_and_is_never_overwritten(tmp_path, 
     assert {name: (folder / name).read_bytes() for name in os.listdir(folder)} == {name: before[name] for name in names[:-1]}
 
 
+def test_against_an_earlier_report_and_its_signature(bench, capfd):
+    cell = (bench / "cell.toml").read_text()
+    assert cli.main(["check", "seam.csv", "--cell", "cell.toml", "--json", "first.json"]) in (0, 1)
+    assert cli.main(["sign", "first.json", "--by", "A. Weber", "--remark", "checked"]) == 0
+    assert "signed by A. Weber" in capfd.readouterr().out
+    status = cli.main(["check", "seam.csv", "--cell", "cell.toml", "--against", "first.json", "--json", "second.json", "--html", "page.html"])
+    out = capfd.readouterr().out
+    assert "It holds" in out and "Unchanged" in out
+    assert json.loads((bench / "second.json").read_text())["against"]["same"] is True
+    assert "It holds" in (bench / "page.html").read_text()
+    (bench / "cell.toml").write_text(cell.replace("xyz_mm = [15, 0, 340]", "xyz_mm = [15, 0, 342]"))
+    assert "342" in (bench / "cell.toml").read_text()
+    assert cli.main(["check", "seam.csv", "--cell", "cell.toml", "--against", "first.json"]) in (0, 1)
+    out = capfd.readouterr().out
+    assert "VOID" in out and "tool.xyz_mm was (15, 0, 340) and is (15, 0, 342)" in out
+    assert status in (0, 1)
+
+
+@pytest.mark.parametrize("arguments, words", [
+    (["check", "seam.csv", "--cell", "cell.toml", "--against", "missing.json"], "missing.json: found no such file"),
+    (["check", "seam.csv", "--cell", "cell.toml", "--against", "cell.toml"], "no JSON"),
+    (["check", "seam.csv", "--cell", "cell.toml", "--against", "r.json", "--json", "r.json"], "the same file"),
+    (["sign", "r.json", "--by", "  "], "--by: the name is empty"), (["sign", "seam.csv", "--by", "A"], "no JSON"), (["sign", "r.json"], "--by"),
+])
+def test_what_cannot_be_compared_or_signed_is_said_in_one_line(bench, capfd, arguments, words):
+    assert cli.main(["check", "seam.csv", "--cell", "cell.toml", "--json", "r.json"]) in (0, 1)
+    before = (bench / "r.json").read_bytes()
+    capfd.readouterr()
+    assert cli.main(arguments) == 2
+    out, err = capfd.readouterr()
+    assert out == "" and words in err and err.count("\n") == 1
+    assert (bench / "r.json").read_bytes() == before
+
+
 @pytest.fixture
 def noted(bench):
     """Notes on the bench's path: one at a place, one at another; beside it what two people made of them."""

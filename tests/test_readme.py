@@ -24,7 +24,7 @@ def blocks(language, text=README):
 def rows(heading):
     """The cells of the table rows below a heading or sentence, header and rule left out."""
     found = []
-    for line in README[README.index(heading):].splitlines()[1:]:
+    for line in README[README.index(heading):].splitlines()[0 if heading.startswith("|") else 1:]:
         if line.startswith("|"):
             found.append([cell.strip() for cell in line.strip("|").split(" | ")])
         elif found:
@@ -160,8 +160,9 @@ def test_the_python_example_runs(in_demo, capsys):
 
 def test_every_option_and_exit_status_is_told(capsys):
     assert main(["check", "--help"]) == 0
-    options = set(re.findall(r"--[a-z]+", capsys.readouterr().out)) - {"--help", "--cell"}
-    assert {re.match(r"`(--\w+)", row[0])[1] for row in rows("## What you get")} == options
+    options = set(re.findall(r"--[a-z-]+\b", capsys.readouterr().out)) - {"--help", "--cell"}
+    told = [*rows("## What you get"), *rows("| option | takes in |"), *rows("| option | how the path is read |")]
+    assert {re.match(r"`(--[a-z-]+)", row[0])[1] for row in told} == options
     assert [row[0] for row in rows("Output files appear whole or not at all.")] == ["0", "1", "2"]
 
 

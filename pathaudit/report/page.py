@@ -5,6 +5,7 @@ import json
 from html import escape
 
 from . import html_tables as tables
+from .compared import compared_html
 from .noted import for_view
 from .scene import scene
 from .script import joined_modules, style_sheet
@@ -34,8 +35,8 @@ render({ model, el: document.getElementById("live") }).catch(() => document.body
 """
 
 
-def one_page(audit, notes=()):
-    """The whole page as a string. notes: placed notes, all of their texts."""
+def one_page(audit, notes=(), compared=None):
+    """The whole page as a string. notes: placed notes, all of their texts; compared: the audit Against an earlier report."""
     shown = scene(audit)
     block, layout = shown.packed()
     facts, told = _json({**shown.facts, "layout": layout}), _json([for_view(placed, audit) for placed in notes])
@@ -48,6 +49,7 @@ def one_page(audit, notes=()):
 <style>{_STYLE}{style_sheet()}</style></head>
 <body>
 <h1>Path audit</h1>
+{compared_html(compared) if compared else ""}
 <div class="pa-still">{tables.verdict_line(audit)}</div>
 <div id="live"></div>
 <div class="pa-still pa-picture">{svg_picture(shown, title=False, notes=notes)}</div>

@@ -11,18 +11,24 @@ from .. import given
 from ..converting import csv_text, texts
 from ..taskpath import TIME
 from . import origin
+from .compared import compared_values
 from .noted import json_text, note_values
 from .scene import plain
 
 FORMAT = "pathaudit.check/1"
 
 
-def check_json(audit, notes=()) -> str:
-    """The verdict, the findings, the suggested retiming and placed notes as JSON; null where a number is not known or not finite."""
-    return json_text(json.dumps(plain(check_values(audit, notes)), indent=1, allow_nan=False, ensure_ascii=False)) + "\n"
+def check_json(audit, notes=(), compared=None) -> str:
+    """The verdict, the findings, the suggested retiming, placed notes and what changed since an earlier report, as JSON."""
+    return report_text(check_values(audit, notes, compared))
 
 
-def check_values(audit, notes=()) -> dict:
+def report_text(values) -> str:
+    """A report's values as JSON text; null where a number is not known or not finite."""
+    return json_text(json.dumps(plain(values), indent=1, allow_nan=False, ensure_ascii=False)) + "\n"
+
+
+def check_values(audit, notes=(), compared=None) -> dict:
     """What `check_json` writes."""
     path, cell, again = audit.path, audit.cell, audit.suggestion
     return {
@@ -45,6 +51,7 @@ def check_values(audit, notes=()) -> dict:
             "feasible": bool(again.feasible), "why": again.why,
         },
         "notes": [note_values(k, placed, audit) for k, placed in enumerate(notes, 1)],
+        **({} if compared is None else {"against": compared_values(compared)}),
         "cautions": list(audit.cautions),
     }  # fmt: skip
 

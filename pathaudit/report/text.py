@@ -4,6 +4,7 @@ import os
 import textwrap
 
 from . import noted, origin
+from .compared import compared_text
 from .scene import significant, worst_text
 
 WIDTH = 110
@@ -11,9 +12,11 @@ SHARES = ("joint speed", "joint acceleration", "joint torque", "tool speed")
 """Kinds whose value is a share of their limit."""
 
 
-def summary(audit, notes=()) -> str:
-    """Verdict, findings with where, how much and why, the suggested retiming, placed notes, what was not judged, cautions."""
-    parts = [_head(audit), *(_finding(audit, finding) for finding in audit.finding_list), _retiming(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
+def summary(audit, notes=(), compared=None) -> str:
+    """Verdict, what changed since an earlier report, findings with where, how much and why, the suggested retiming, placed notes, what was not
+    judged, cautions."""
+    parts = [_head(audit), compared_text(compared) if compared else "", *(_finding(audit, finding) for finding in audit.finding_list)]
+    parts += [_retiming(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
     return "\n\n".join(part for part in parts if part) + "\n"
 
 

@@ -171,7 +171,7 @@ def test_inches_and_feed_in_inches_a_minute():
     assert any("inches a minute" in note for note in course.notes)
 
 
-def test_a_dialects_unit_codes_need_the_option():
+def test_fmt_005_a_dialects_unit_codes_need_the_option():
     with pytest.raises(pa.ReadError, match="line 1: found 'G21', expected G71 for millimetres, or the option inch_codes"):
         read("G21 G90 G94\nG00 X0 Y0 Z0\nG01 X1 F60")
     for code, unit in (("G20", 0.0254), ("G21", 0.001)):

@@ -99,7 +99,12 @@ def find(rates: Rates) -> tuple:
             skipped.append((rule.title, missing))
         for joint in range(rates.motion.cell.arm.n) if rule.joints else (None,):
             found += _apply(rule, rates, joint)
-    return tuple(sorted(found, key=lambda f: (f.t_start, f.t_end, f.kind, f.joint or ""))), tuple(skipped)
+    return in_order(found), tuple(skipped)
+
+
+def in_order(found) -> tuple:
+    """Findings in order of time."""
+    return tuple(sorted(found, key=lambda f: (f.t_start, f.t_end, f.kind, f.joint or "")))
 
 
 def _apply(rule, rates, joint):
@@ -115,10 +120,11 @@ def _finding(rule, rates, joint, stretch, severity, bound):
     value, limit, unit = rule.shown(rates, joint, stretch.level, bound)
     name = None if joint is None else rates.motion.cell.arm.joint_names[joint]
     why = rule.why(rates, joint, stretch)
-    return _flag(rates, rule.kind, severity, name, stretch, value, limit, unit, why)
+    return flag(rates, rule.kind, severity, name, stretch, value, limit, unit, why)
 
 
-def _flag(rates, kind, severity, joint, stretch, value, limit, unit, why):
+def flag(rates, kind, severity, joint, stretch, value, limit, unit, why) -> Finding:
+    """The Finding of a stretch."""
     path = rates.motion.path
     along = np.interp([stretch.t_start, stretch.t_end], path.time, path.distance) * 1000.0
     return Finding(
@@ -137,7 +143,7 @@ def _unreachable(rates):
         s = Stretch(s.first, s.last, float(motion.path.time[s.first]), float(motion.path.time[s.last]), s.worst, s.level)
         by_angle = turned[s.worst] / max(limits.deviation_deg, 1e-6) > far[s.worst] / max(limits.deviation_mm, 1e-6)
         shown = (turned[s.worst], limits.deviation_deg, "deg") if by_angle and far[s.worst] < 0.1 else (far[s.worst], limits.deviation_mm, "mm")
-        found.append(_flag(rates, "unreachable", "fail", None, s, *shown, motion.reason(s.worst)))
+        found.append(flag(rates, "unreachable", "fail", None, s, *shown, motion.reason(s.worst)))
     return found
 
 
@@ -149,7 +155,7 @@ def _jumps(rates):
             continue
         moved = np.abs(motion.joints[k] - motion.joints[k - 1])
         joint = int(np.argmax(moved / arm.speed))
-        scale, unit = _unit(arm, joint)
+        scale, unit = unit_of(arm, joint)
         was, now = (_posture_words(arm, q) for q in (motion.joints[k - 1], motion.joints[k]))
         why = (
             f"The posture the arm comes in cannot go on here: {causes.lineup(rates, k - 1).words}, "
@@ -157,15 +163,15 @@ def _jumps(rates):
         )
         s = Stretch(k - 1, k, float(time[k - 1]), float(time[k]), k, 0.0)
         most = arm.speed[joint] * (time[k] - time[k - 1])
-        found.append(_flag(rates, "posture jump", "fail", arm.joint_names[joint], s, moved[joint] * scale, most * scale, unit, why))
+        found.append(flag(rates, "posture jump", "fail", arm.joint_names[joint], s, moved[joint] * scale, most * scale, unit, why))
     return found
 
 
 def _posture_words(arm, q):
-    return ", ".join(f"{name} {value * _unit(arm, i)[0]:.0f}" for i, (name, value) in enumerate(zip(arm.joint_names, q, strict=True)))
+    return ", ".join(f"{name} {value * unit_of(arm, i)[0]:.0f}" for i, (name, value) in enumerate(zip(arm.joint_names, q, strict=True)))
 
 
-def _unit(arm, joint):
+def unit_of(arm, joint):
     """Factor and unit in which a joint's position is shown."""
     return (1000.0, "mm") if arm.prismatic[joint] else (180.0 / np.pi, "deg")
 
@@ -202,7 +208,7 @@ def _singular_why(rates, joint, stretch):
 
 def _speed_why(rates, joint, stretch):
     arm, k = rates.motion.cell.arm, stretch.worst
-    scale, unit = _unit(arm, joint)
+    scale, unit = unit_of(arm, joint)
     name, limit = arm.joint_names[joint], arm.speed[joint] * scale
     value = stretch.level * limit
     verb = "slide" if arm.prismatic[joint] else "turn"
@@ -216,7 +222,7 @@ def _speed_why(rates, joint, stretch):
 
 def _acceleration_why(rates, joint, stretch):
     arm, k = rates.motion.cell.arm, stretch.worst
-    scale, unit = _unit(arm, joint)
+    scale, unit = unit_of(arm, joint)
     value = stretch.level * arm.acceleration[joint] * scale
     head = f"Joint {arm.joint_names[joint]} must speed up or slow down at {value:.0f} {unit}/s2, {100 * stretch.level:.0f} % of its limit"
     corner = causes.corner_words(rates, k)
@@ -247,7 +253,7 @@ def _travel_bounds(rates, joint):
 
 def _travel_shown(rates, joint, level, bound):
     arm = rates.motion.cell.arm
-    scale, unit = _unit(arm, joint)
+    scale, unit = unit_of(arm, joint)
     k = int(np.nanargmin(np.abs(rates.travel_left[:, joint] - level)))
     q = rates.motion.joints[k, joint]
     upper = arm.upper[joint] - q <= q - arm.lower[joint]
@@ -256,7 +262,7 @@ def _travel_shown(rates, joint, level, bound):
 
 def _travel_why(rates, joint, stretch):
     arm = rates.motion.cell.arm
-    scale, unit = _unit(arm, joint)
+    scale, unit = unit_of(arm, joint)
     value, limit, _ = _travel_shown(rates, joint, stretch.level, 0.0)
     if stretch.level < 0.0:
         return f"Joint {arm.joint_names[joint]} would have to go to {value:.1f} {unit}, {-stretch.level * scale:.1f} {unit} past the end of its travel at {limit:.1f} {unit}."
@@ -266,7 +272,7 @@ def _travel_why(rates, joint, stretch):
 def _share_shown(field, per):
     def shown(rates, joint, level, bound):
         limit = getattr(rates.motion.cell.arm, field)[joint]
-        scale, unit = _unit(rates.motion.cell.arm, joint)
+        scale, unit = unit_of(rates.motion.cell.arm, joint)
         return level * limit * scale, limit * scale, unit + per
 
     return shown

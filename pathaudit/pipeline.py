@@ -5,16 +5,17 @@ from functools import cached_property
 
 import numpy as np
 
-from . import conventions, findings, retiming
+from . import conventions, findings, hidden, retiming
 from .cell import Cell
 from .measures import Rates, measure
 from .motion import Motion, follow
+from .proof import Proof, prove
 from .taskpath import Path
 
 
 @dataclass(frozen=True, eq=False)
 class Audit:
-    """A path judged with a cell: the motion, its measures, what is flagged. `retime` gives other times, in another value."""
+    """A path judged with a cell: the motion, its measures, what is flagged, what is proven between the samples. `retime` gives other times, in another value."""
 
     path: Path
     cell: Cell
@@ -22,6 +23,7 @@ class Audit:
     rates: Rates
     finding_list: tuple
     not_judged: tuple
+    proof: Proof
 
     @property
     def time(self) -> np.ndarray:
@@ -88,4 +90,6 @@ def audit(path: Path, cell: Cell, *, start=None, start_reason="", told=lambda wo
     rates = measure(motion)
     told("judging")
     found, not_judged = findings.find(rates)
-    return Audit(path, cell, motion, rates, found, not_judged)
+    proof = prove(rates)
+    found = findings.in_order([*found, *hidden.find(proof, found)])
+    return Audit(path, cell, motion, rates, found, not_judged, proof)

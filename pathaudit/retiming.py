@@ -12,10 +12,13 @@ import numpy as np
 from .conventions import frozen
 from .findings import TRAVEL_SLACK, peak_shares
 from .measures import Rates, measure
+from .proof import shares_of_halves
 
 AIM = 1.0 - 1e-6  # share of the limits that a retiming aims at, so that rounding never shows as an overrun
 SPARE = 5e-7  # of what AIM leaves, the part that a measured excess may use up
 ROUNDS = 12  # of tightening before the rest is given as one even factor
+STUCK = 0.8  # an excess that keeps more than this of itself in a round comes from the samples beside
+HIDDEN = 1e-7  # of a share: what a peak between samples must exceed it by to be more than rounding
 STANDSTILL = 1e-3  # a factor below this is no speed to weld or dispense at, but a stop
 EVEN_ENOUGH = 0.7  # an even factor below this costs so much that the local retiming is offered first
 
@@ -25,7 +28,7 @@ class Retiming:
     """Times for the same poses. time (N,) s from the path's own start; factor (N,) fraction of the programmed speed, in (0, 1].
 
     style "even", "local" or "by hand"; feasible: the joint speed and acceleration limits hold everywhere; why: a sentence.
-    speed_share, acceleration_share (N, n) at the new times.
+    speed_share, acceleration_share (N, n) at the new times, with the peaks between samples told at the nearer one.
     """
 
     rates: Rates
@@ -46,6 +49,35 @@ class Retiming:
     def slowest(self) -> float:
         """Smallest fraction of the programmed speed"""
         return float(self.factor.min())
+
+    @cached_property
+    def least_duration(self) -> float:
+        """s, a lower bound: no times for these poses that are nowhere faster than programmed and keep the joint limits take less.
+
+        Proven for clocks whose squared factor is linear between samples, with the speed limits at the samples and the acceleration limits at both ends
+        of every interval: at no sample can such a clock be faster than `clocks.largest_anywhere`, and the time falls with every factor. What this
+        retiming takes more is the price of its style, of peaks between the samples and of the audit's own measures of the new times.
+        """
+        from .kernels import clocks
+
+        arm, limits = self.rates.motion.cell.arm, self.rates.motion.cell.thresholds
+        share = np.nan_to_num(self.rates.speed_share).max(axis=1) / min(limits.speed_share_fail, 1.0)
+        limit = np.where(np.isnan(arm.acceleration), np.inf, arm.acceleration * min(limits.acceleration_share_fail, 1.0))
+        u, rate, bend = self.rates.motion.path.time, np.nan_to_num(self.rates.joint_speed), np.nan_to_num(self.rates.joint_acceleration)
+        return float(clocks.durations(u, clocks.largest_anywhere(u, rate, bend, limit, 1.0 / np.maximum(share, 1.0) ** 2)).sum())
+
+    @property
+    def gap(self) -> float:
+        """The share by which this retiming takes longer than `least_duration`; negative where it does not keep the limits."""
+        return self.duration / self.least_duration - 1.0
+
+    @property
+    def certificate(self) -> str:
+        """How much time could still be gained, in a sentence; '' where the limits are not kept."""
+        if not self.feasible:
+            return ""
+        more = f"{100.0 * self.gap:.2g} % more" if self.gap > 5e-7 else "no more"
+        return f"No times that keep these joint limits take less than {self.least_duration:.3f} s; these take {more}."
 
     @cached_property
     def binding(self) -> tuple:
@@ -105,9 +137,31 @@ def slowed_stretches(factor) -> list:
     return list(zip(slow[np.r_[0, cuts + 1]].tolist(), slow[np.r_[cuts, -1]].tolist(), strict=True))
 
 
+def whole_shares(rates: Rates, spread=False):
+    """Speed and acceleration shares (N, n) at the samples, raised to the peak on the nearer half of an interval that neither of its samples shows.
+
+    spread: also to one that the farther sample shows, so that both samples of an interval have a part in what is too much on it.
+    """
+    speed, acceleration = shares_of_halves(rates)
+    return _raised(peak_shares(rates), speed, spread), _raised(rates.acceleration_share, acceleration, spread)
+
+
+def _raised(shares, between, spread):
+    out = shares.copy()
+    with np.errstate(invalid="ignore"):
+        seen = np.maximum(shares[1:], shares[:-1])
+        for peak, rows in ((between[0], slice(None, -1)), (between[1], slice(1, None))):
+            higher = peak * (1.0 - HIDDEN) > (shares[rows] if spread else seen)
+            out[rows][higher] = np.maximum(out[rows], peak)[higher]
+    return out
+
+
 @dataclass(frozen=True, eq=False)
 class Plan:
-    """What a retiming works with: programmed times u (N,), joint rates and their rates (N, n), limits, ceilings of b = f^2."""
+    """What a retiming works with: programmed times u (N,), joint rates and their rates (N, n), limits, ceilings of b = f^2.
+
+    hardest (N, n): the accelerations with the peaks between samples, which a factor that stays the same scales as it does the rates.
+    """
 
     rates: Rates
     u: np.ndarray
@@ -115,18 +169,23 @@ class Plan:
     bend: np.ndarray
     limit: np.ndarray
     ceiling: np.ndarray
+    hardest: np.ndarray
 
     @classmethod
     def of(cls, rates):
         arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
-        worst = np.nan_to_num(peak_shares(rates)).max(axis=1) / min(limits.speed_share_fail, 1.0)
+        speed, acceleration = whole_shares(rates)
+        worst = np.nan_to_num(speed).max(axis=1) / min(limits.speed_share_fail, 1.0)
         ceiling = np.where(worst > 1.0, (AIM / np.maximum(worst, 1.0)) ** 2, 1.0)
         limit = np.where(np.isnan(arm.acceleration), np.inf, arm.acceleration * min(limits.acceleration_share_fail, 1.0) * AIM)
-        return cls(rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit, ceiling)
+        return cls(
+            rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit, ceiling,
+            np.nan_to_num(acceleration * arm.acceleration),
+        )  # fmt: skip
 
     @property
     def needed(self):
-        return bool((self.ceiling < 1.0).any() or (np.abs(self.bend) > self.limit / AIM).any())
+        return bool((self.ceiling < 1.0).any() or (self.hardest > self.limit / AIM).any())
 
     def local(self):
         """Least time with the programmed speed as ceiling."""
@@ -141,7 +200,7 @@ class Plan:
         """One factor for each process stretch; air moves are slowed only where they need it."""
         process = self.rates.motion.path.process
         with np.errstate(divide="ignore"):
-            own = np.minimum(self.ceiling, (self.limit / np.abs(self.bend)).min(axis=1))
+            own = np.minimum(self.ceiling, (self.limit / self.hardest).min(axis=1))
         cuts = np.flatnonzero(np.diff(process.astype(int))) + 1
         runs = [r for r in np.split(np.arange(len(process)), cuts) if process[r[0]]]
         ceiling = self.ceiling.copy()
@@ -165,7 +224,7 @@ class Plan:
         """The fastest b below `ceiling`, tightened until the audit's own measures of the new times keep the limits."""
         from .kernels import clocks
 
-        ceiling, margin = ceiling.copy(), np.ones_like(self.speed)
+        ceiling, margin, before = ceiling.copy(), np.ones_like(self.speed), np.full_like(self.speed, np.inf)
         for turn in range(ROUNDS):
             b = np.maximum(clocks.sweep(self.u, self.speed, self.bend, self.limit * margin, ceiling), 1e-12)
             speed, acceleration = self.shares(self.times(b))
@@ -174,11 +233,12 @@ class Plan:
                 break
             over = np.maximum(speed.max(axis=1), 1.0)
             ceiling = np.where(over > 1.0, np.minimum(ceiling, b) / over ** (2 if turn < 2 else 4), ceiling)
-            wide = acceleration.copy()
-            if turn >= 3:  # where the excess does not give in at its own sample, it comes from the ones beside it
-                wide[1:] = np.maximum(wide[1:], acceleration[:-1])
-                wide[:-1] = np.maximum(wide[:-1], acceleration[1:])
-            margin /= np.where(wide > 1.0, np.minimum(1.005 * wide**1.5, 2.0), 1.0)
+            excess = np.maximum(acceleration - 1.0, 0.0)
+            stuck = np.where((excess > STUCK * before) & (before > 0.0), excess, 0.0)
+            wide, before = 1.0 + excess, excess
+            wide[1:] = np.maximum(wide[1:], 1.0 + stuck[:-1])
+            wide[:-1] = np.maximum(wide[:-1], 1.0 + stuck[1:])
+            margin /= np.minimum(wide, 2.0)
         if flat > 1.0 + SPARE:
             # a factor on all times scales every share exactly: speeds by it, accelerations by its square
             b = b / flat**2
@@ -191,10 +251,9 @@ class Plan:
 
     def shares(self, time):
         """Speed and acceleration shares (N, n) at new times, of what the retiming aims at, measured as an audit would."""
-        again = self.measured(time)
         limits = self.rates.motion.cell.thresholds
-        speed = peak_shares(again) / (AIM * min(limits.speed_share_fail, 1.0))
-        acceleration = again.acceleration_share / (AIM * min(limits.acceleration_share_fail, 1.0))
+        speed, acceleration = whole_shares(self.measured(time), spread=True)
+        speed, acceleration = speed / (AIM * min(limits.speed_share_fail, 1.0)), acceleration / (AIM * min(limits.acceleration_share_fail, 1.0))
         return np.nan_to_num(speed), np.nan_to_num(acceleration)
 
     def measured(self, time):
@@ -224,7 +283,7 @@ class Plan:
         if hindered:
             why = f"No retiming can help: {'; '.join(hindered)}. {why}"
         return Retiming(
-            self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, again.speed_share, again.acceleration_share
+            self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, *map(frozen, whole_shares(again))
         )
 
     def untouched_by_times(self):

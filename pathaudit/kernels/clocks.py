@@ -65,8 +65,8 @@ def interval_rows(rate, bend, limit, half, near, rows):
             rows[i, 0], rows[i, 1], rows[i, 2] = 0.0, 0.0, 1.0
 
 
-@kernel("void(f8[::1], f8[:,::1], f8[:,::1], f8[:,::1], f8[::1], f8[::1])")
-def _sweep(u, rate, bend, limit, ceiling, b):
+@kernel("void(f8[::1], f8[:,::1], f8[:,::1], f8[:,::1], f8[::1], f8[::1], f8[::1])")
+def _sweep(u, rate, bend, limit, ceiling, b, top):
     count, n = rate.shape
     left, right = np.empty((n, 3)), np.empty((n, 3))
     b[count - 1] = ceiling[count - 1]
@@ -75,6 +75,8 @@ def _sweep(u, rate, bend, limit, ceiling, b):
         interval_rows(rate[k], bend[k], limit[k], half, 1.0, left)
         interval_rows(rate[k + 1], bend[k + 1], limit[k + 1], half, 0.0, right)
         b[k] = largest_before(left, right, ceiling[k], b[k + 1])
+    for k in range(count):
+        top[k] = b[k]
     for k in range(count - 1):
         half = 0.5 / (u[k + 1] - u[k])
         interval_rows(rate[k], bend[k], limit[k], half, 1.0, left)
@@ -98,14 +100,31 @@ def sweep(u, rate, bend, limit, ceiling):
     u (N,) increasing, rate and bend (N, n) the first and second derivative of the joints by u, limit (N, n) or (n,) joint accelerations
     (inf where there is none), ceiling (N,), which holds the speed limits: b <= (limit / |q'|)^2, inf where nothing moves.
     """
+    return _both(u, rate, bend, limit, ceiling)[0]
+
+
+def _both(u, rate, bend, limit, ceiling):
+    """What `sweep` gives, and from its backward sweep the largest b (N,) at each node from which the rest can be run at all."""
     rate = dense(rate)
     limit = dense(np.broadcast_to(limit, rate.shape))
-    b = np.empty(rate.shape[0])
+    b, top = np.empty(rate.shape[0]), np.empty(rate.shape[0])
     _sweep(
         dense(u), rate, dense(bend), limit,
-        dense(np.minimum(ceiling, LARGEST)), b,
+        dense(np.minimum(ceiling, LARGEST)), b, top,
     )  # fmt: skip
-    return b
+    return b, top
+
+
+def largest_anywhere(u, rate, bend, limit, ceiling):
+    """(N,) for each node a bound that b exceeds in no clock that keeps the limits; arguments as `sweep` takes them.
+
+    The reachable-set argument: by induction from the last node no such clock has a larger b than the largest from which some b of the next
+    node, itself within its bound, can be reached; and likewise from the first node onwards, which is the same sweep on the path run
+    backwards. Moved outwards by 1e-9 for rounding.
+    """
+    given = [np.asarray(a)[::-1] for a in (rate, bend, np.broadcast_to(limit, np.shape(rate)), ceiling)]
+    onwards = _both(-np.asarray(u)[::-1], -given[0], *given[1:])[1][::-1]
+    return np.minimum(onwards, _both(u, rate, bend, limit, ceiling)[1]) * (1.0 + 1e-9)
 
 
 def durations(u, b):

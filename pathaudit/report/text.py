@@ -43,7 +43,7 @@ def _origin(audit, finding):
 def _measure(finding):
     """The worst value, its limit, how much over, and when."""
     text = worst_text(finding)
-    if finding.kind == "near-singular":
+    if finding.kind == "near-singular" or (finding.kind == "unproven" and finding.joint is None):
         text = f"sigma_min {text}"
     elif finding.kind == "unreachable":
         text = f"off the path by {significant(finding.value)} {finding.unit}"
@@ -65,7 +65,7 @@ def _retiming(audit):
     if again.slowest == 1.0 and again.duration == programmed:
         return ""
     line = f"Suggested retiming ({again.style}): {again.duration:.3f} s in place of {programmed:.3f} s, at the slowest {100 * again.slowest:.3g} % of the programmed speed"
-    return f"{line}\n{_indented(again.why)}"
+    return "\n".join([line, _indented(again.why), *([_indented(again.certificate)] if again.certificate else [])])
 
 
 def notes_text(notes, audit=None) -> str:

@@ -1,0 +1,127 @@
+"""What holds between the samples: certified bounds on every interval of an audited path, for the motion that between.py states."""
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from . import between
+from .conventions import frozen
+from .measures import Rates
+
+MOTION = (
+    "Between two samples each joint is taken to run along the smooth curve in time that has, at both, the position, speed and acceleration that were "
+    "measured there. A controller may move otherwise."
+)
+
+
+@dataclass(frozen=True, eq=False)
+class Proof:
+    """Bounds on the K = N - 1 intervals between N samples, for n joints; NaN where no motion leads from sample to sample (not reached, a jump).
+
+    position_low, position_high (K, n) rad or m; speed_share, acceleration_share (K, n) of the limits, the latter NaN where there is none: exact
+    extremes of the motion, moved outwards by rounding. sigma_bound (K,): sigma_min is nowhere below it on the interval. sigma_least (K,): the least
+    that was met, at sigma_time (K,) s, so that the true least lies between the two. against (K,): the threshold that both samples keep and that was to be
+    proven, NaN where a sample is below sigma_min_fail already. stray_m, stray_rad (K,): the tool is nowhere farther than this from the straight line
+    between the two poses, and from the least turn between them (of its axis, where the spin is free). points (K,): postures looked at inside.
+    """
+
+    rates: Rates
+    position_low: np.ndarray
+    position_high: np.ndarray
+    speed_share: np.ndarray
+    acceleration_share: np.ndarray
+    sigma_bound: np.ndarray
+    sigma_least: np.ndarray
+    sigma_time: np.ndarray
+    against: np.ndarray
+    stray_m: np.ndarray
+    stray_rad: np.ndarray
+    points: np.ndarray
+
+    @property
+    def motion(self) -> str:
+        """The motion that is meant, in words"""
+        return MOTION
+
+    @cached_property
+    def known(self) -> np.ndarray:
+        """(K,) bool: a motion leads from sample to sample"""
+        return frozen(np.isfinite(self.sigma_bound), bool)
+
+    @cached_property
+    def unproven(self) -> np.ndarray:
+        """(K,) bool: sigma_min could be shown to stay neither above what was to be proven nor, where it was met below that, above sigma_min_fail."""
+        fail = self.rates.motion.cell.thresholds.sigma_min_fail
+        with np.errstate(invalid="ignore"):
+            need = np.where(self.sigma_least >= self.against, self.against, fail)
+            return frozen((self.sigma_bound < need) & (self.sigma_least >= fail) & np.isfinite(self.against), bool)
+
+    @cached_property
+    def joints(self) -> between.Joints:
+        """The joint motion"""
+        return _motion(self.rates)
+
+    def joints_at(self, k: int, time: float) -> np.ndarray:
+        """(n,) rad or m, on interval k at `time`"""
+        start = self.rates.motion.path.time
+        return self.joints.at(np.array([k]), np.array([(time - start[k]) / (start[k + 1] - start[k])]))[0]
+
+
+def _motion(rates):
+    """The joint motion, with the closest postures where a pose was not reached, so that all of it is finite."""
+    return between.joints_between(
+        rates.motion.path.time, rates.motion.closest, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration)
+    )  # fmt: skip
+
+
+def connected(rates: Rates) -> np.ndarray:
+    """(N - 1,) bool: the samples at both ends were reached, the second by a motion from the first."""
+    reached = rates.motion.reached
+    known = reached[1:] & reached[:-1]
+    known[[k - 1 for k in rates.motion.jumps if k > 0]] = False
+    return known
+
+
+def shares_of_halves(rates: Rates):
+    """Speed and acceleration shares, the exact largest on the first and on the second half of each interval (2, K, n each); 0 where there is no motion."""
+    arm, known = rates.motion.cell.arm, connected(rates)[:, None]
+    speed, acceleration = between.peaks_of_halves(_motion(rates))
+    return np.where(known, speed / arm.speed, 0.0), np.where(known, acceleration / arm.acceleration, 0.0)
+
+
+def prove(rates: Rates) -> Proof:
+    """The bounds of every interval, in blocks, so that a long path needs little more room than what is kept."""
+    joints, known = _motion(rates), connected(rates)
+    cuts = range(0, len(known), between.BLOCK)
+    blocks = [_block(rates, joints, known, slice(start, min(start + between.BLOCK, len(known)))) for start in cuts]
+    arrays = [np.concatenate(column) for column in zip(*blocks, strict=True)]
+    for array in arrays[:-1]:
+        array[~known] = np.nan
+    return Proof(rates, *map(frozen, arrays[:-1]), frozen(arrays[-1], int))
+
+
+def _block(rates, joints, known, rows):
+    motion, cell = rates.motion, rates.motion.cell
+    chain, length, limits = cell.chain, rates.characteristic_length, cell.thresholds
+    part, known = joints.part(rows), known[rows]
+    h = part.span_s[:, None]
+    speed, acceleration = between.peaks(part)
+    low, high = between.span(part.position)
+    both = slice(rows.start, rows.stop + 1)
+    poses, jacobians, task = between.tool_jacobians(chain, length, motion.rows, motion.closest[both])
+    sigma = np.stack([rates.sigma_min[both][:-1], rates.sigma_min[both][1:]], axis=1)
+    least = np.where(known, sigma.min(axis=1), -1.0)
+    warn, fail = limits.sigma_min_warn, limits.sigma_min_fail
+    first, second = np.where(least >= warn, warn, np.where(least >= fail, fail, -np.inf)), np.where(least >= fail, fail, -np.inf)
+    arms = between.lever_arms(chain, np.maximum(np.abs(low), np.abs(high)))
+    pairs = np.stack([task[:-1], task[1:]], axis=1)
+    found = between.certify(
+        chain, length, motion.rows, part, arms, np.nan_to_num(sigma), pairs, speed * h, acceleration * h**2, np.stack([first, second], axis=1)
+    )  # fmt: skip
+    time = motion.path.time[both][:-1] + found.where * part.span_s
+    far, turned = between.stray(chain, motion.path.spin_free, part, poses, jacobians, speed * h, acceleration * h**2)
+    against = np.where(np.isfinite(first), first, np.nan)
+    return (
+        low, high, speed / cell.arm.speed, acceleration / cell.arm.acceleration, found.bound, found.least, time, against, far, turned, found.points
+    )  # fmt: skip

@@ -10,8 +10,10 @@ careful code below, which says what is wrong and in which line; so both ways tak
 
 import csv
 import functools
+import hashlib
 import os
 import re
+from collections import deque
 from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
 
@@ -34,7 +36,10 @@ class Table:
     data: bytes of UTF-8 text.  expected: what the file should be, for messages.  known: names of columns by which the header is recognised.
     whole: split a large file at once as well.
     header: names.  cells: for each column its texts.  lines (N,): the line of each row in the file.
+    sha256: the hash of a large file's bytes, formed on the way; else None.
     """
+
+    sha256 = None
 
     def __init__(self, file, data, expected, known=MEANING, whole=False):
         self.file, self.expected, self.large = file, expected, len(data) >= sources.LARGE and not whole
@@ -117,9 +122,12 @@ class _Blocks:
     def __len__(self):
         return len(self.bounds) - 1
 
-    def __getitem__(self, k):
-        """The bytes of block k, with '\\n' line ends."""
-        data = self.data[self.bounds[k] : self.bounds[k + 1]] if k < len(self) else b""
+    def raw(self, k):
+        """The bytes of block k as they are in the file."""
+        return self.data[self.bounds[k] : self.bounds[k + 1]] if k < len(self) else b""
+
+    def clean(self, k, data):
+        """The raw bytes of block k with '\\n' line ends."""
         if b"\r" in data:
             data = data.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
         if b"\0" in data:
@@ -135,7 +143,7 @@ class _Blocks:
     def careful(self, k):
         """The line of each row of block k, and its columns of texts. Raises ReadError at the first line that does not fit."""
         table, first = self.table, self.first_line(k)
-        lines = table.decoded(self[k], first).split("\n")
+        lines = table.decoded(self.clean(k, self.raw(k)), first).split("\n")
         numbered = [(number, line) for number, line in enumerate(lines, first) if holds_cells(line)]
         numbers, used = [number for number, _ in numbered], [line for _, line in numbered]
         widths, cells = self._split(used, numbers)
@@ -191,13 +199,21 @@ def threads():
 def _read_large(table):
     """Lists of arrays, one a block: the numbers by column. Under 'line' the line of each row, under 'label' the labels or None."""
     wanted = [column for column in table.header if column in NUMERIC]
-    engine = _engine(table)
+    engine, source = _engine(table), table.blocks.data
+    digest, jobs, blocks = hashlib.sha256(source[: table.blocks.bounds[0]]), deque(), []
     with ThreadPoolExecutor(threads()) as pool:
         try:
-            blocks = list(pool.map(lambda k: _block(table, k, wanted, engine), range(len(table.blocks))))
+            for k in range(len(table.blocks)):
+                data = table.blocks.raw(k)
+                jobs.append(pool.submit(_block, table, k, data, wanted, engine))
+                digest.update(data)
+                if len(jobs) > 4 * threads():  # the file must not pile up in memory
+                    blocks.append(jobs.popleft().result())
+            blocks += [job.result() for job in jobs]
         except BaseException:
             pool.shutdown(cancel_futures=True)
             raise
+    table.sha256 = digest.hexdigest() if isinstance(source, sources.LargeFile) else None
     first = np.cumsum([table.blocks.line, *(height for height, *_ in blocks)])
     lines = [np.arange(rows, dtype=np.int32) if lines is None else lines for _, rows, lines, *_ in blocks]
     table.blocks.rows = np.cumsum([0, *(rows for _, rows, *_ in blocks)])
@@ -211,9 +227,9 @@ _COMMENT = re.compile(rb"^[ \t]*#[^\n]*\n?", re.M)
 _TRUTH = (b"True", b"TRUE", b"true", b"False", b"FALSE", b"false")  # pandas takes them for 1 and 0
 
 
-def _block(table, k, wanted, engine):
-    """Of block k: its lines, its rows, the line of each row counted from its first (None: one a line), the wanted columns' numbers, the labels."""
-    data = table.blocks[k]
+def _block(table, k, data, wanted, engine):
+    """Of block k, given as its raw bytes: its lines, its rows, the line of each row counted from its first (None: one a line), the wanted columns' numbers, the labels."""
+    data = table.blocks.clean(k, data)
     if not data.isascii():
         try:
             data.decode("utf-8")

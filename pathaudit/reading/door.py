@@ -37,8 +37,7 @@ USES = {
 def path_of_file(file, options: ReadOptions) -> Path:
     """The path in a file. Raises ReadError or ModelError."""
     data = sources.read_all(file, FORMATS.get(options.format, A_FILE))
-    with sources.hash_meanwhile(data) as sha256:
-        return path_of_data(data, file, options, sha256)
+    return path_of_data(data, file, options, lambda: sources.hash_of(data))
 
 
 def path_of_data(data, name, options: ReadOptions = ReadOptions(), sha256=lambda: "") -> Path:
@@ -54,7 +53,7 @@ def path_of_data(data, name, options: ReadOptions = ReadOptions(), sha256=lambda
             path = _timed(path, options)
     except ReadError as error:
         raise _explained(error, name, data, kind, options) from None
-    return replace(path, sha256=sha256()) if large_table else path
+    return path if path.sha256 else replace(path, sha256=sha256())
 
 
 def _check_choices(kind, options):

@@ -3,8 +3,6 @@
 import hashlib
 import os
 import stat
-from concurrent.futures import ThreadPoolExecutor
-from contextlib import contextmanager
 
 from ..errors import ReadError
 
@@ -18,7 +16,7 @@ LARGE = 4 << 20
 def read_bytes(file, expected: str) -> tuple[bytes, str]:
     """The file's bytes and their SHA-256. `expected` says in messages what the file should be, e.g. 'a timed path (CSV)'."""
     data = read_all(file, expected)[:]
-    return data, hashlib.sha256(data).hexdigest()
+    return data, hash_of(data)
 
 
 def read_all(file, expected: str):
@@ -81,14 +79,8 @@ class LargeFile:
         os.close(self.handle)
 
 
-@contextmanager
-def hash_meanwhile(data):
-    """A function that gives the SHA-256 of the data, which a thread forms while the file is read."""
-    with ThreadPoolExecutor(1) as pool:
-        yield pool.submit(_hash, data).result
-
-
-def _hash(data, piece=1 << 22):
+def hash_of(data, piece=1 << 22) -> str:
+    """The SHA-256 of the bytes."""
     digest = hashlib.sha256()
     for start in range(0, len(data), piece):
         digest.update(data[start : start + piece])

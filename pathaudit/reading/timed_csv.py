@@ -9,4 +9,5 @@ EXPECTED = "a timed path as CSV text"
 
 def read_timed_csv(data: bytes, name, sha256: str, options=None) -> Path:
     """The path in the bytes of a file; `name` stands in messages. Raises ReadError."""
-    return path_of(Table(name, data, EXPECTED), name, sha256)
+    table = Table(name, data, EXPECTED)
+    return path_of(table, name, table.sha256 or sha256)

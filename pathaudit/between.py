@@ -12,8 +12,6 @@ from math import comb
 
 import numpy as np
 
-from .kernels.linkage import locate
-
 HALVINGS = 26  # of a bracket in [0, 1]: what is left, squared, is below rounding, and an extreme is flat
 OUTWARD = 1e-12  # of its largest coefficient, by which an extreme of a polynomial is moved outwards; rounding is below 1e-14 of it
 MARGIN = 1e-10  # by which, for each unit of the Jacobian's norm, a bound of sigma_min is lowered; see `certify`
@@ -141,13 +139,19 @@ def joints_between(time, position, speed, acceleration) -> Joints:
 def peaks(joints: Joints):
     """Largest speed and acceleration, by time, of each joint on each interval (K, n each)."""
     h = joints.span_s[:, None]
-    return largest(joints.speed) / h, largest(joints.acceleration) / h**2
+    return largest(joints.speed) / h, (largest(joints.acceleration) + _rounded(joints)) / h**2
 
 
 def peaks_of_halves(joints: Joints):
     """The same on the first and on the second half of each interval (2, K, n each)."""
-    h = joints.span_s[:, None]
-    return np.stack([largest(half) for half in halves(joints.speed)]) / h, np.stack([largest(half) for half in halves(joints.acceleration)]) / h**2
+    h, rounded = joints.span_s[:, None], _rounded(joints)
+    speed, acceleration = (np.stack([largest(half) for half in halves(c)]) for c in (joints.speed, joints.acceleration))
+    return speed / h, (acceleration + rounded) / h**2
+
+
+def _rounded(joints):
+    """(K, n) what rounding of the speeds may do to the accelerations, which are their differences."""
+    return OUTWARD * np.abs(joints.speed).max(axis=0)
 
 
 # --------------------------------------------------------------------------------------------------------------- sigma_min
@@ -155,6 +159,8 @@ def peaks_of_halves(joints: Joints):
 
 def tool_jacobians(chain, length, rows, q):
     """Poses (M, 4, 4) and unscaled Jacobians (M, 6, n) in the chain's first frame, and the task Jacobians (M, rows, n) in tool axes."""
+    from .kernels.linkage import locate
+
     poses, jacobians, _ = locate(*chain, q)
     turned = np.swapaxes(poses[:, :3, :3], 1, 2)
     return poses, jacobians, np.concatenate([turned @ (jacobians[:, :3] / length), turned @ jacobians[:, 3:]], axis=1)[:, :rows]
@@ -361,6 +367,8 @@ def remainders(chain, joints, speed, acceleration, jerk, snap, spin_free):
 
 def _knots(chain, joints, k, cut, poses, jacobians):
     """Tool poses (cut + 1, M, 4, 4) and twists by t (cut + 1, M, 6) at the ends of the pieces of the intervals k (M,)."""
+    from .kernels.linkage import locate
+
     found = [(poses[k], jacobians[k], 0.0)]
     for i in range(1, cut):
         inner, their, _ = locate(*chain, joints.at(k, np.full(len(k), i / cut)))

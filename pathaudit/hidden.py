@@ -60,7 +60,8 @@ def _place(proof, k, joint, order):
     from .between import bernstein
 
     time, t = proof.rates.motion.path.time, np.linspace(0.0, 1.0, 1025)
-    curve = (proof.joints.position, proof.joints.speed, proof.joints.acceleration)[max(order, 0)][:, k, joint]
+    motion = proof.joints(k)
+    curve = (motion.position, motion.speed, motion.acceleration)[max(order, 0)][:, 0, joint]
     values = bernstein(curve[:, None], t)
     values = np.abs(values) if order > 0 else -values if order < 0 else values
     return float(time[k] + t[np.argmax(values)] * (time[k + 1] - time[k]))
@@ -75,8 +76,8 @@ def _speeds(proof, found):
             time, value = _place(proof, k, joint, 1), proof.speed_share[k, joint]
             beside = 100.0 * proof.rates.speed_share[k : k + 2, joint].max()
             why = (
-                f"Between two samples joint {name} must {'slide' if arm.prismatic[joint] else 'turn'} at {value * arm.speed[joint] * scale:.0f} {unit}/s, "
-                f"{100.0 * value:.1f} % of its limit, though at the samples beside no more than {beside:.1f} %."
+                f"Between two samples joint {name} must {'slide' if arm.prismatic[joint] else 'turn'} at {value * arm.speed[joint] * scale:.4g} {unit}/s, "
+                f"{100.0 * value:.2f} % of its limit, though at the samples beside at no more than {beside:.2f} %."
             )
             limit = arm.speed[joint] * scale
             out.append(_finding(proof, "joint speed", severity, name, run, time, value * limit, share * limit, f"{unit}/s", why))
@@ -131,8 +132,8 @@ def _accelerations(proof, found):
         k, (scale, unit), name = run[2], unit_of(arm, joint), arm.joint_names[joint]
         value, limit = proof.acceleration_share[k, joint], arm.acceleration[joint] * scale
         why = (
-            f"Between two samples joint {name} may have to speed up or slow down at {value * limit:.0f} {unit}/s2, {100.0 * value:.0f} % of its limit, "
-            "though not at the samples beside: it depends on how the controller goes from one to the next. Closer samples or a gentler speed would settle it."
+            f"Between two samples joint {name} may have to speed up or slow down at {value * limit:.4g} {unit}/s2, {100.0 * value:.2f} % of its limit, "
+            "though not at the samples beside: it depends on how the controller goes from one to the next. Closer samples or a lower speed would settle it."
         )
         yield _finding(proof, "unproven", "warn", name, run, _place(proof, k, joint, 2), value * limit, share * limit, f"{unit}/s2", why)
 

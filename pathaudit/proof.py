@@ -6,7 +6,7 @@ from functools import cached_property
 import numpy as np
 
 from . import between
-from .conventions import frozen
+from .conventions import frozen, owned
 from .measures import Rates
 
 MOTION = (
@@ -57,22 +57,26 @@ class Proof:
             need = np.where(self.sigma_least >= self.against, self.against, fail)
             return frozen((self.sigma_bound < need) & (self.sigma_least >= fail) & np.isfinite(self.against), bool)
 
-    @cached_property
-    def joints(self) -> between.Joints:
-        """The joint motion"""
-        return _motion(self.rates)
+    def joints(self, k: int) -> between.Joints:
+        """The joint motion on interval k alone"""
+        return _motion(self.rates, slice(k, k + 1))
 
     def joints_at(self, k: int, time: float) -> np.ndarray:
         """(n,) rad or m, on interval k at `time`"""
         start = self.rates.motion.path.time
-        return self.joints.at(np.array([k]), np.array([(time - start[k]) / (start[k + 1] - start[k])]))[0]
+        return self.joints(k).at(np.array([0]), np.array([(time - start[k]) / (start[k + 1] - start[k])]))[0]
 
 
-def _motion(rates):
-    """The joint motion, with the closest postures where a pose was not reached, so that all of it is finite."""
-    return between.joints_between(
-        rates.motion.path.time, rates.motion.closest, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration)
-    )  # fmt: skip
+def _motion(rates, rows):
+    """The joint motion on the intervals `rows`, with the closest postures where a pose was not reached, so that all of it is finite."""
+    ends = slice(rows.start, rows.stop + 1)
+    speed, acceleration = np.nan_to_num(rates.joint_speed[ends]), np.nan_to_num(rates.joint_acceleration[ends])
+    return between.joints_between(rates.motion.path.time[ends], rates.motion.closest[ends], speed, acceleration)
+
+
+def _blocks(count):
+    """Slices of all intervals: a long path needs little more room than what is kept of it."""
+    return [slice(start, min(start + between.BLOCK, count)) for start in range(0, count, between.BLOCK)]
 
 
 def connected(rates: Rates) -> np.ndarray:
@@ -85,26 +89,29 @@ def connected(rates: Rates) -> np.ndarray:
 
 def shares_of_halves(rates: Rates):
     """Speed and acceleration shares, the exact largest on the first and on the second half of each interval (2, K, n each); 0 where there is no motion."""
-    arm, known = rates.motion.cell.arm, connected(rates)[:, None]
-    speed, acceleration = between.peaks_of_halves(_motion(rates))
-    return np.where(known, speed / arm.speed, 0.0), np.where(known, acceleration / arm.acceleration, 0.0)
+    arm, known = rates.motion.cell.arm, connected(rates)
+    out = np.zeros((2, 2, len(known), arm.n))
+    for rows in _blocks(len(known)):
+        speed, acceleration = between.peaks_of_halves(_motion(rates, rows))
+        out[0, :, rows], out[1, :, rows] = speed / arm.speed, acceleration / arm.acceleration
+    out[:, :, ~known] = 0.0
+    return out
 
 
 def prove(rates: Rates) -> Proof:
-    """The bounds of every interval, in blocks, so that a long path needs little more room than what is kept."""
-    joints, known = _motion(rates), connected(rates)
-    cuts = range(0, len(known), between.BLOCK)
-    blocks = [_block(rates, joints, known, slice(start, min(start + between.BLOCK, len(known)))) for start in cuts]
+    """The bounds of every interval."""
+    known = connected(rates)
+    blocks = [_block(rates, known[rows], rows) for rows in _blocks(len(known))]
     arrays = [np.concatenate(column) for column in zip(*blocks, strict=True)]
     for array in arrays[:-1]:
         array[~known] = np.nan
-    return Proof(rates, *map(frozen, arrays[:-1]), frozen(arrays[-1], int))
+    return Proof(rates, *map(owned, arrays))
 
 
-def _block(rates, joints, known, rows):
+def _block(rates, known, rows):
     motion, cell = rates.motion, rates.motion.cell
     chain, length, limits = cell.chain, rates.characteristic_length, cell.thresholds
-    part, known = joints.part(rows), known[rows]
+    part = _motion(rates, rows)
     h = part.span_s[:, None]
     speed, acceleration = between.peaks(part)
     low, high = between.span(part.position)

@@ -174,3 +174,36 @@ def test_a_local_retiming_is_close_to_the_optimum(seed):
     _, least, status = by_native_matrices(problem)
     assert status == "Solved" and retiming.slowest < 0.9
     assert least * (1 - 1e-7) <= retiming.duration <= least * 1.0003
+
+
+@pytest.mark.parametrize("seed", range(8))
+@pytest.mark.parametrize("nodes, rel", [(120, 2e-4), (600, 2e-6)])
+def test_the_least_duration_is_a_lower_bound_and_close(seed, nodes, rel):
+    """Never above the optimum that the cone solver finds, and within twice what the sweeps lose by taking the largest b at each node."""
+    problem = wavy(seed, nodes)
+    ceiling = problem.largest.copy()
+    ceiling[0], ceiling[-1] = min(ceiling[0], problem.start), min(ceiling[-1], problem.end)
+    top = clocks.largest_anywhere(problem.s, problem.first, problem.second, problem.acceleration, ceiling)
+    b, least, status = by_native_matrices(problem)
+    bound = float(clocks.durations(problem.s, top).sum())
+    assert status == "Solved" and least * (1 - rel) <= bound <= least * (1 + 1e-8)
+    assert np.all(b[1:-1] <= top[1:-1] * (1 + 1e-6) + 1e-8) and np.all(fastest(problem)[0] <= top)
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_a_retiming_carries_its_certificate(seed):
+    cell, joints = swaying(seed)
+    audit = pa.audit(path_of_motion(cell, 0.8 * SWAY_TIME, joints), cell)
+    local, even = audit.retime("local"), audit.retime("even")
+    ends = local.factor[0] ** 2, local.factor[-1] ** 2
+    limits = cell.arm.speed, cell.arm.acceleration
+    best = by_native_matrices(Problem(audit.time, audit.rates.joint_speed, audit.rates.joint_acceleration, *limits, *ends, 1.0))[1]
+    assert local.least_duration <= best * (1 + 1e-8) and local.least_duration == even.least_duration
+    assert 0.0 < local.gap < 2e-3 and local.gap < even.gap and local.duration == pytest.approx(local.least_duration * (1 + local.gap))
+    assert f"{local.least_duration:.3f} s" in local.certificate and f"{100 * local.gap:.2g} % more" in local.certificate
+
+
+def test_a_path_that_keeps_its_times_cannot_be_faster():
+    cell, joints = swaying(2)
+    again = pa.audit(path_of_motion(cell, 4.0 * SWAY_TIME, joints), cell).retime()
+    assert abs(again.gap) < 1e-8 and again.certificate.endswith("these take no more.")

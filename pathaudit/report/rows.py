@@ -77,9 +77,9 @@ def row_index(finding, joint_names):
     """The row of `rows_of` that a finding belongs to, or -1 where it concerns the whole path."""
     n = len(joint_names)
     if finding.joint in joint_names:
-        first = {"joint speed": 0, "joint travel": n + 3, "posture jump": n + 3, "joint acceleration": 2 * n + 3}.get(finding.kind)
+        first = {"joint speed": 0, "joint travel": n + 3, "posture jump": n + 3, "joint acceleration": 2 * n + 3, "unproven": 2 * n + 3}.get(finding.kind)
         return -1 if first is None else first + joint_names.index(finding.joint)
-    return {"near-singular": n, "tool speed": n + 1}.get(finding.kind, -1)
+    return {"near-singular": n, "unproven": n, "tool speed": n + 1}.get(finding.kind, -1)
 
 
 def _speed_lanes(arm, thresholds, arrays):

@@ -49,10 +49,25 @@ def check_values(audit, notes=(), compared=None) -> dict:
         "retiming": {
             "style": again.style, "duration_s": again.duration, "slowest_fraction_of_programmed_speed": again.slowest,
             "feasible": bool(again.feasible), "why": again.why,
+            "least_duration_s": again.least_duration, "gap": again.gap, "certificate": again.certificate,
         },
+        "proof": _proof(audit.proof),
         "notes": [note_values(k, placed, audit) for k, placed in enumerate(notes, 1)],
         **({} if compared is None else {"against": compared_values(compared)}),
         "cautions": list(audit.cautions),
+    }  # fmt: skip
+
+
+def _proof(proof):
+    """What is certain between the samples, over the whole path; null where no motion leads from any sample to the next."""
+    known = proof.known
+    bounds = (np.nan,) * 3
+    if known.any():
+        bounds = proof.sigma_bound[known].min(), 1000.0 * proof.stray_m[known].max(), np.degrees(proof.stray_rad[known].max())
+    above, off_line, off_turn = (float(bound) for bound in bounds)
+    return {
+        "motion": proof.motion, "intervals": len(known), "intervals_without_motion": int((~known).sum()), "intervals_unproven": int(proof.unproven.sum()),
+        "sigma_min_above": above, "off_line_mm_below": off_line, "off_turn_deg_below": off_turn,
     }  # fmt: skip
 
 

@@ -3,6 +3,8 @@
 import os
 import textwrap
 
+import numpy as np
+
 from . import noted, origin
 from .compared import compared_text
 from .scene import significant, worst_text
@@ -82,6 +84,16 @@ def _note(number, placed, audit):
 
 def _made(audit):
     return "\n".join(["How the path was made", *map(_indented, audit.path.made)]) if audit.path.made else ""
+
+
+def _between(audit):
+    """What is certain between the samples."""
+    proof = audit.proof
+    if not proof.known.any():
+        return ""
+    clear, far, turned = np.nanmin(proof.sigma_bound), 1000.0 * np.nanmax(proof.stray_m), np.degrees(np.nanmax(proof.stray_rad))
+    certain = f"sigma_min stays above {significant(clear, 3)}; the tool is within {significant(far, 2)} mm and {significant(turned, 2)} deg of the straight way from pose to pose."
+    return f"Between the samples\n{_indented(f'For certain {certain} {proof.motion}')}"
 
 
 def _not_judged(audit):

@@ -12,6 +12,7 @@ from optimal_timing import Problem, by_native_matrices
 import pathaudit as pa
 from pathaudit.kernels import clocks, linkage, rates, steps, task
 from pathaudit.kernels.compiled import OPTIONS
+from pathaudit.proof import prove
 
 from .timing import Row, seconds, side_by_side
 
@@ -152,3 +153,24 @@ def whole_audit(samples=2_000):
     retimed = seconds(lambda: audit.retime())
     note = f"{1e3 * searched:.0f} ms when the start posture is searched too; the suggested retiming {1e3 * retimed:.0f} ms more"
     return Row(f"whole audit, {samples:,} samples, warm", seconds(lambda: pa.audit(path, cell)), None, "<= 30 ms", note)
+
+
+def proving(samples=2_000):
+    """Twice: at steps of 0.01 rad, and through a straight wrist that no sample shows, where the intervals beside it are halved."""
+    rows = []
+    for what, (cell, time, joints) in (("0.01 rad apart", smooth_motion(samples, duration=1.03 * samples * 0.01 / 0.42)), ("a hidden crossing", hidden_crossing(samples))):
+        measured = pa.audit(path_of_motion(cell, time, joints), cell, start=joints[0])
+        proof = prove(measured.rates)
+        step = np.abs(np.diff(joints, axis=0)).max(axis=1).mean()
+        share = np.nanmedian(proof.sigma_bound / np.fmin(measured.rates.sigma_min[1:], measured.rates.sigma_min[:-1]))
+        note = f"{1e3 * step:.1f} mrad a step; {proof.points.sum()} postures looked at between samples, {proof.unproven.sum()} intervals unproven, bound {100 * share:.1f} % of what the samples have (median)"
+        rows.append(Row(f"proof between {samples:,} samples, {what}", seconds(lambda: prove(measured.rates)), None, "<= 20 ms", note))
+    return rows
+
+
+def hidden_crossing(samples):
+    """The six-axis arm through a straight wrist between two samples, clear of its thresholds at both."""
+    joints = MIDDLE + 0.2 * np.sin(np.outer(np.linspace(0.0, 6.0, samples), 0.7 + 0.1 * np.arange(6)))
+    joints[:, 4] = (np.arange(samples) - samples // 2 + 0.5) * 0.0015
+    arm = pa.Arm.from_urdf(robot_file(SIX_AXIS), tip="tool0")
+    return cell_of(arm, start=joints[0], sigma_min_warn=2e-4, sigma_min_fail=1e-4), 0.02 * np.arange(samples), joints

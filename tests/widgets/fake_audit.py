@@ -127,10 +127,14 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0, tight=False):
     retiming = SimpleNamespace(time=np.cumsum(np.r_[0, np.diff(time) / factor[1:]]), factor=factor, style="local", feasible=True,
                                why="Slows 130 mm of the path, down to 65 % of programmed at 7.00 s.", slowest=float(factor.min()),
                                duration=float(np.sum(np.diff(time) / factor[1:])), binding=("",) * samples,
+                               least_duration=0.999 * float(np.sum(np.diff(time) / factor[1:])), gap=0.001001, certificate="No times take 0.1 % less.",
                                audit=lambda: fake_audit(samples, n, 1.3 * duration, gap, seed, tight))
     followed = SimpleNamespace(cell=cell, closest=closest, reached=reached, rows=6, joints=q)
     rates = SimpleNamespace(motion=followed, speed_share=share, acceleration_share=bend, travel_left=room, sigma_min=sigma, tool_speed=tool_speed, tool_speed_limit=tool_speed / worst, reserve=1 / worst)
-    return SimpleNamespace(path=path, cell=cell, time=time, joints=q, rates=rates, finding_list=tuple(found), suggestion=retiming,
+    between = np.fmin(sigma[1:], sigma[:-1]) * np.where(reached[1:] & reached[:-1], 0.99, np.nan)
+    proof = SimpleNamespace(motion="Between two samples the joints run smoothly.", known=np.isfinite(between), sigma_bound=between,
+                            unproven=np.zeros(samples - 1, dtype=bool), stray_m=0.0 * between + 1e-6, stray_rad=0.0 * between + 1e-6)
+    return SimpleNamespace(proof=proof, path=path, cell=cell, time=time, joints=q, rates=rates, finding_list=tuple(found), suggestion=retiming,
                            motion=SimpleNamespace(reached=reached, reasons={}, start_reason="start_deg of the cell"),
                            verdict="fail" if any(f.severity == "fail" for f in found) else "warn" if found else "pass",
                            cautions=("This is not a risk assessment.",), not_judged=(("joint acceleration", "no limit is given"),))

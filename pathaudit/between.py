@@ -313,10 +313,11 @@ def beside_cone(points, first, second):
     return np.where(inside, plane, np.minimum(*rays))
 
 
-def cubic_most(d):
-    """(...) upper bound on [0, 1] of cubics with the coefficients d (4, ...): their chord, and what the inner two are above it."""
-    over = np.maximum(d[1] - (2.0 * d[0] + d[3]) / 3.0, d[2] - (d[0] + 2.0 * d[3]) / 3.0)
-    return np.maximum(d[0], d[3]) + 0.75 * np.maximum(over, 0.0)
+def cubic_most(ends, inner):
+    """(M,) upper bound of the cubics with the coefficients ends (c + 1, M) and inner (2, c, M), piece by piece: the chord, and what is above it."""
+    first, last = ends[:-1], ends[1:]
+    over = np.maximum(inner[0] - (2.0 * first + last) / 3.0, inner[1] - (first + 2.0 * last) / 3.0)
+    return (np.maximum(first, last) + 0.75 * np.maximum(over, 0.0)).max(axis=0)
 
 
 def stray(chain, spin_free, joints: Joints, poses, jacobians, speed, acceleration):
@@ -369,38 +370,41 @@ def _knots(chain, joints, k, cut, poses, jacobians):
     """Tool poses (cut + 1, M, 4, 4) and twists by t (cut + 1, M, 6) at the ends of the pieces of the intervals k (M,)."""
     from .kernels.linkage import locate
 
-    found = [(poses[k], jacobians[k], 0.0)]
+    speed = joints.speed[:, k]
+    found = [(poses[k], jacobians[k], speed[0])]
     for i in range(1, cut):
         inner, their, _ = locate(*chain, joints.at(k, np.full(len(k), i / cut)))
-        found.append((inner, their, i / cut))
-    found.append((poses[k + 1], jacobians[k + 1], 1.0))
-    rates = [bernstein(joints.speed[:, k], t) for *_, t in found]
-    twists = [(jacobian @ rate[:, :, None])[:, :, 0] for (_, jacobian, _), rate in zip(found, rates, strict=True)]
-    return np.stack([pose for pose, *_ in found]), np.stack(twists)
+        found.append((inner, their, bernstein(speed, i / cut)))
+    found.append((poses[k + 1], jacobians[k + 1], speed[-1]))
+    return np.stack([pose for pose, *_ in found]), np.stack([(jacobian @ rate[:, :, None])[:, :, 0] for _, jacobian, rate in found])
+
+
+def _most(place, rate, distance):
+    """(M,) upper bound of the distance of the cubics through place (c + 1, M, d), with a third of their derivative in rate, whose ends are at no distance."""
+    ends = np.zeros(place.shape[:2])
+    if len(place) > 2:
+        ends[1:-1] = distance(place[1:-1])
+    return cubic_most(ends, distance(np.stack([place[:-1] + rate[:-1], place[1:] - rate[1:]])))
 
 
 def _off_line(poses, twists, cut):
-    place, rate = poses[:, :, :3, 3] - poses[0, :, :3, 3], twists[:, :, :3] / (3.0 * cut)
-    control = np.stack([place[:-1], place[:-1] + rate[:-1], place[1:] - rate[1:], place[1:]])
-    return cubic_most(beside_segment(control, place[-1])).max(axis=0)
+    place = poses[:, :, :3, 3] - poses[0, :, :3, 3]
+    return _most(place, twists[:, :, :3] / (3.0 * cut), lambda points: beside_segment(points, place[-1]))
 
 
 def _off_turn(poses, twists, cut, spin_free, rest):
-    turn = poses[:, :, :3, :3]
-    first = np.swapaxes(turn[0], 1, 2)
+    first = np.swapaxes(poses[0, :, :3, :3], 1, 2)
     omega = (first @ twists[:, :, 3:, None])[..., 0]
-    relative = first @ turn
+    relative = first @ poses[1:, :, :3, :3]
+    place = np.zeros((*omega.shape[:2], 3 if spin_free else 4))
     if spin_free:
-        place, half = relative[..., 2], 1.0
-        rate = np.cross(omega, place)
+        place[0, :, 2], place[1:] = 1.0, relative[..., 2]
+        half, rate = 1.0, np.cross(omega, place)
     else:
-        place, half = small_turn_wxyz(relative), 2.0
-        rate = 0.5 * np.concatenate(
-            [-(omega * place[..., 1:]).sum(axis=-1)[..., None], omega * place[..., :1] + np.cross(omega, place[..., 1:])], axis=-1
-        )
-    rate = rate / (3.0 * cut)
-    control = np.stack([place[:-1], place[:-1] + rate[:-1], place[1:] - rate[1:], place[1:]])
-    sine = cubic_most(beside_cone(control, place[0], place[-1])).max(axis=0) + rest
+        place[0, :, 0], place[1:] = 1.0, small_turn_wxyz(relative)
+        w, v = place[..., :1], place[..., 1:]
+        half, rate = 2.0, 0.5 * np.concatenate([-(omega * v).sum(axis=-1, keepdims=True), omega * w + np.cross(omega, v)], axis=-1)
+    sine = _most(place, rate / (3.0 * cut), lambda points: beside_cone(points, place[0], place[-1])) + rest
     return half * np.arcsin(np.minimum(sine, 1.0))
 
 

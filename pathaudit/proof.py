@@ -14,6 +14,9 @@ MOTION = (
     "measured there. A controller may move otherwise."
 )
 
+CLOSE = 0.95  # of the least sigma_min of all samples: to this share the bound of the whole path is sought
+SHARPENED = 200  # intervals, at most, of a block on which it is
+
 
 @dataclass(frozen=True, eq=False)
 class Proof:
@@ -101,14 +104,15 @@ def shares_of_halves(rates: Rates):
 def prove(rates: Rates) -> Proof:
     """The bounds of every interval."""
     known = connected(rates)
-    blocks = [_block(rates, known[rows], rows) for rows in _blocks(len(known))]
+    lowest = CLOSE * np.nanmin(rates.sigma_min, initial=np.inf)
+    blocks = [_block(rates, known[rows], rows, lowest) for rows in _blocks(len(known))]
     arrays = [np.concatenate(column) for column in zip(*blocks, strict=True)]
     for array in arrays[:-1]:
         array[~known] = np.nan
     return Proof(rates, *map(owned, arrays))
 
 
-def _block(rates, known, rows):
+def _block(rates, known, rows, lowest):
     motion, cell = rates.motion, rates.motion.cell
     chain, length, limits = cell.chain, rates.characteristic_length, cell.thresholds
     part = _motion(rates, rows)
@@ -123,9 +127,17 @@ def _block(rates, known, rows):
     first, second = np.where(least >= warn, warn, np.where(least >= fail, fail, -np.inf)), np.where(least >= fail, fail, -np.inf)
     arms = between.lever_arms(chain, np.maximum(np.abs(low), np.abs(high)))
     pairs = np.stack([task[:-1], task[1:]], axis=1)
-    found = between.certify(
-        chain, length, motion.rows, part, arms, np.nan_to_num(sigma), pairs, speed * h, acceleration * h**2, np.stack([first, second], axis=1)
-    )  # fmt: skip
+
+    def certify(k, goals):
+        return between.certify(
+            chain, length, motion.rows, part.part(k), arms[k], np.nan_to_num(sigma[k]), pairs[k], (speed * h)[k], (acceleration * h**2)[k], goals
+        )  # fmt: skip
+
+    found = certify(slice(None), np.stack([first, second], axis=1))
+    # where it matters for what can be said of the whole path, the bound is brought close to the least that the samples have
+    k = np.flatnonzero(known & (found.bound < lowest))[:SHARPENED]
+    closer = certify(k, np.full((len(k), 2), lowest))
+    found.bound[k], found.points[k] = np.maximum(found.bound[k], closer.bound), found.points[k] + closer.points
     time = motion.path.time[both][:-1] + found.where * part.span_s
     far, turned = between.stray(chain, motion.path.spin_free, part, poses, jacobians, speed * h, acceleration * h**2)
     against = np.where(np.isfinite(first), first, np.nan)

@@ -160,7 +160,7 @@ def _raised(shares, between, spread):
 class Plan:
     """What a retiming works with: programmed times u (N,), joint rates and their rates (N, n), limits, ceilings of b = f^2.
 
-    hardest (N, n): the accelerations with the peaks between samples, which a factor that stays the same scales as it does the rates.
+    whole: the `whole_shares` as programmed; hardest (N, n): such accelerations, which a factor that stays the same scales as it does the rates.
     """
 
     rates: Rates
@@ -169,6 +169,7 @@ class Plan:
     bend: np.ndarray
     limit: np.ndarray
     ceiling: np.ndarray
+    whole: tuple
     hardest: np.ndarray
 
     @classmethod
@@ -180,7 +181,7 @@ class Plan:
         limit = np.where(np.isnan(arm.acceleration), np.inf, arm.acceleration * min(limits.acceleration_share_fail, 1.0) * AIM)
         return cls(
             rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit, ceiling,
-            np.nan_to_num(acceleration * arm.acceleration),
+            (speed, acceleration), np.nan_to_num(acceleration * arm.acceleration),
         )  # fmt: skip
 
     @property
@@ -268,7 +269,7 @@ class Plan:
         motion = self.rates.motion
         untouched = bool((b == 1.0).all())
         time = self.u if untouched else self.times(b)
-        again = self.rates if untouched else self.measured(time)
+        speed, acceleration = self.whole if untouched else whole_shares(self.measured(time))
         hindered = []
         lost = int((~motion.reached).sum())
         if lost:
@@ -283,7 +284,7 @@ class Plan:
         if hindered:
             why = f"No retiming can help: {'; '.join(hindered)}. {why}"
         return Retiming(
-            self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, *map(frozen, whole_shares(again))
+            self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, frozen(speed), frozen(acceleration)
         )
 
     def untouched_by_times(self):

@@ -15,6 +15,7 @@ BENCHMARKS = {
     "retiming": in_process.retiming,
     "measuring": in_process.measuring,
     "audit": in_process.whole_audit,
+    "proof": in_process.proving,
     "command": in_subprocess.first_and_warm_check,
     "memory": in_subprocess.memory,
     "imports": in_subprocess.imports,

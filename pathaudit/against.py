@@ -43,6 +43,16 @@ class Against:
         """Whether nothing that is compared differs."""
         return not (self.inputs or self.path_changed or self.was != self.now or any(c.what != "same" for c in self.findings))
 
+    def __str__(self):
+        from .report.compared import compared_text
+
+        return compared_text(self)
+
+    def _repr_html_(self):
+        from .report.compared import compared_html
+
+        return compared_html(self)
+
     @property
     def path_changed(self) -> bool:
         moved = max(self.moved_mm if np.isfinite(self.moved_mm) else 0.0, abs(self.length_mm))

@@ -6,7 +6,9 @@ from functools import cached_property
 import numpy as np
 
 from . import conventions, findings, hidden, retiming
+from .against import against
 from .cell import Cell
+from .earlier import read_earlier
 from .measures import Rates, measure
 from .motion import Motion, follow
 from .proof import Proof, prove
@@ -68,6 +70,10 @@ class Audit:
     def suggestion(self) -> retiming.Retiming:
         """The better suited retiming"""
         return self.retime()
+
+    def against(self, file):
+        """What changed since the report in `file` (of `check --json`): an Against, which shows itself. Raises ReadError."""
+        return against(read_earlier(file), self)
 
     def _ipython_display_(self):
         from .widgets.timeline import show

@@ -148,3 +148,12 @@ def test_damaged_findings_and_signatures_are_refused(earlier):
 def test_what_is_written_is_what_is_read(audit, earlier):
     again = earlier_from(json.loads(json.dumps(check_values(audit))))
     assert [(f.kind, f.joint, f.value) for f in again.findings] == [(f.kind, f.joint, f.value) for f in audit.finding_list]
+
+
+def test_an_audit_compares_itself_with_a_report_in_a_file(audit, tmp_path):
+    file = tmp_path / "first.json"
+    file.write_text(check_json(audit))
+    found = audit.against(file)
+    assert found.same and str(found).startswith("Against first.json") and "Unchanged" in found._repr_html_()
+    with pytest.raises(pa.ReadError, match="no such file"):
+        audit.against(tmp_path / "none.json")

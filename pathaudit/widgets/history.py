@@ -33,10 +33,12 @@ class History:
         self._step(1)
 
     def back_to(self, value):
-        """Walk to the nearest place at which `value` held, where there is one; nothing is forgotten."""
+        """Walk to the nearest place at which `value` held; one that its own gesture has replaced gets its place again, before what holds now."""
         places = [k for k, held in enumerate(self._values) if held == value]
-        if places:
-            self._at, self._gesture = min(places, key=lambda k: abs(k - self._at)), None
+        if not places:
+            self._values.insert(self._at, value)
+            places = [self._at]
+        self._at, self._gesture = min(places, key=lambda k: abs(k - self._at)), None
 
     def _step(self, by):
         self._at = min(max(self._at + by, 0), len(self._values) - 1)

@@ -66,7 +66,10 @@ class Timeline(anywidget.AnyWidget):
         self._refresh_still()
 
     def changed(self):
-        self.trial = trial_facts(self.session)
+        with self.hold_sync():
+            if not self.session.busy:
+                self.set_trait("status", "")
+            self.set_trait("trial", trial_facts(self.session))
         self._refresh_still()
 
     def told(self, words):

@@ -57,5 +57,15 @@ def test_going_back_to_a_value_forgets_nothing():
     assert history.now == "a" and history.can_redo
     history.redo(), history.redo()
     assert history.now == "c"
-    history.back_to("never held")
+
+
+def test_going_back_to_a_value_that_its_own_gesture_has_replaced():
+    history = History("a")
+    for value in "bc":
+        history.push(value, gesture=5)
+    history.back_to("b")
+    assert history.now == "b" and history.can_redo
+    history.redo()
     assert history.now == "c"
+    history.undo(), history.undo()
+    assert history.now == "a" and not history.can_undo

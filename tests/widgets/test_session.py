@@ -112,6 +112,19 @@ def test_cancel_goes_back_to_what_is_shown(session, ear, audit, monkeypatch):
     assert session.shown.edits == SLOW
 
 
+def test_cancel_in_a_drag_goes_back_to_what_the_drag_has_shown(session, ear, monkeypatch):
+    session.change(SLOW, gesture=1).result(10)
+    begun, go = Event(), Event()
+    monkeypatch.setattr(ear, "drawn", lambda variant: (begun.set(), go.wait(10)))
+    future = session.change(SLOWER, gesture=1)
+    assert begun.wait(10) and session.busy
+    session.cancel()
+    assert session.edits == SLOW and not session.busy and session.steps == (True, True)
+    go.set()
+    future.result(10)
+    assert session.shown.edits == SLOW
+
+
 @pytest.mark.parametrize("name", ["", "   ", "as programmed"])
 def test_a_name_that_says_nothing_is_refused(session, name):
     with pytest.raises(ValueError, match="expected one of your own"):

@@ -5,6 +5,7 @@ import html
 import json
 import sys
 import time
+from threading import Event
 from types import SimpleNamespace
 
 import nbconvert
@@ -291,3 +292,14 @@ def test_nothing_that_is_drawn_changes_the_audit(audit):
     still_form(audit)
     np.testing.assert_array_equal(audit.joints, before[0])
     np.testing.assert_array_equal(audit.rates.speed_share, before[1])
+
+
+def test_what_the_worker_does_is_said_until_it_is_given_up(bench, monkeypatch):
+    begun, go = Event(), Event()
+    monkeypatch.setattr(module, "LONG", 0)
+    monkeypatch.setattr(bench, "drawn", lambda variant: (begun.set(), go.wait(10)))
+    bench._on_message(bench, {"do": "slow", "first": 0, "last": 100, "factor": 0.5}, [])
+    assert begun.wait(10) and bench.status.startswith("Working: ") and bench.trial["busy"]
+    bench._on_message(bench, {"do": "cancel"}, [])
+    assert bench.status == "" and not bench.trial["busy"]
+    go.set()

@@ -180,6 +180,19 @@ def _beside(kept):
     return kept.rates.sigma_min[:-1], kept.rates.sigma_min[1:]
 
 
+def test_the_reports_say_what_is_certain_between_the_samples():
+    from pathaudit.report.tables import check_values
+    from pathaudit.report.text import summary
+
+    cell, joints = swaying(3)[:2]
+    audit = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    told, text = check_values(audit)["proof"], " ".join(summary(audit).split())
+    assert told["intervals"] == 300 and told["intervals_without_motion"] == told["intervals_unproven"] == 0 and told["motion"] in text
+    assert 0.9 * audit.rates.sigma_min.min() < told["sigma_min_above"] <= audit.rates.sigma_min.min()
+    assert f"sigma_min stays above {told['sigma_min_above']:.3g}" in text and audit.suggestion.certificate in text
+    assert 0.0 < told["off_line_mm_below"] < 0.1 and 0.0 < told["off_turn_deg_below"] < 0.1
+
+
 def test_long_paths_are_proven_in_blocks(monkeypatch):
     cell, joints = swaying(4)[:2]
     rates = measure(pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0]).motion)

@@ -18,7 +18,7 @@ def summary(audit, notes=(), compared=None) -> str:
     """Verdict, what changed since an earlier report, findings with where, how much and why, the suggested retiming, placed notes, what was not
     judged, cautions."""
     parts = [_head(audit), compared_text(compared) if compared else "", *(_finding(audit, finding) for finding in audit.finding_list)]
-    parts += [_retiming(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
+    parts += [_retiming(audit), _between(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
     return "\n\n".join(part for part in parts if part) + "\n"
 
 

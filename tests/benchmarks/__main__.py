@@ -7,7 +7,7 @@ from pathlib import Path
 os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # small matrices: more threads only wait for each other
 sys.path.insert(0, str(Path(__file__).resolve().parents[1]))
 
-from . import in_process, in_subprocess, reading  # noqa: E402
+from . import in_browser, in_process, in_subprocess, reading  # noqa: E402
 from .timing import table  # noqa: E402
 
 BENCHMARKS = {
@@ -20,6 +20,7 @@ BENCHMARKS = {
     "memory": in_subprocess.memory,
     "imports": in_subprocess.imports,
     "reading": lambda: list(reading.reading()),
+    "browser": in_browser.in_browser,
 }
 
 

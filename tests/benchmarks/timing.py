@@ -6,10 +6,10 @@ from typing import NamedTuple
 
 
 class Row(NamedTuple):
-    """One line of the table: seconds of our own work and of the reference (None without one), and what the reader should know."""
+    """One line of the table: seconds of our own work (or another measure as text) and of the reference (None without one), and a note."""
 
     work: str
-    own: float
+    own: float | str
     reference: float | None
     reach: str
     note: str = ""
@@ -47,5 +47,6 @@ def table(rows) -> str:
     for row in rows:
         reference = "-" if row.reference is None else spelled(row.reference)
         ratio = "-" if row.reference is None else f"{row.reference / row.own:,.0f}"
-        lines.append(f"| {row.work} | {spelled(row.own)} | {reference} | {ratio} | {row.reach} | {row.note} |")
+        own = row.own if isinstance(row.own, str) else spelled(row.own)
+        lines.append(f"| {row.work} | {own} | {reference} | {ratio} | {row.reach} | {row.note} |")
     return "\n".join(lines)

@@ -34,12 +34,15 @@ export function markedStretch(ui, state, told, repaint) {
     return { ends: ends(), words: `marked: ${fixed(time[b] - time[a], 2)} s, ${fixed(along[b] - along[a], 1)} mm` };
   }
 
-  // Where somebody listens to it: what is being tried, else the least that is in force there.
-  function factor() {
-    if (!ui.ask || !state.chosen) return null;
-    if (tried) return { percent: tried, tried: true };
+  // The least that is in force on the stretch, percent.
+  function inForce() {
     const column = state.data.factor_percent[0].subarray(ui.at(state.chosen.first), ui.at(state.chosen.last) + 1);
-    return { percent: state.facts.retiming.applied ? Math.min(...column) : 100 };
+    return state.facts.retiming.applied ? Math.min(...column) : 100;
+  }
+
+  // What is being tried, else what is in force; nothing where nobody listens.
+  function factor() {
+    return ui.ask && state.chosen ? { percent: tried || inForce(), tried: Boolean(tried) } : null;
   }
 
   function drag(percent, gesture) {
@@ -54,5 +57,12 @@ export function markedStretch(ui, state, told, repaint) {
     if (!held) tried = null;
   }
 
-  return { mark, setEnd, moveEnd, ends, shown, factor, drag, answered, release: () => { held = false; } };
+  function release() {
+    held = false;
+    if (!tried || Math.abs(inForce() - tried) > 0.5) return;
+    tried = null;
+    repaint();
+  }
+
+  return { mark, setEnd, moveEnd, ends, shown, factor, drag, answered, release };
 }

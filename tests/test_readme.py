@@ -108,7 +108,7 @@ def test_every_threshold_is_told_with_its_default():
         for key in keys:
             assert (defaults[key] in numbers) if defaults[key] is not None else default == "not judged", key
     assert named == set(defaults) - {"characteristic_length_mm"} and "`characteristic_length_mm`, by default half" in README
-    assert {row[0] for row in told} == {rule.kind for rule in RULES} | {"unreachable", "posture jump"}
+    assert {row[0] for row in told} == {rule.kind for rule in RULES} | {"unreachable", "posture jump", "unproven"}
 
 
 def test_the_reason_of_the_near_singular_bounds_adds_up():

@@ -37,7 +37,7 @@ CAUTIONS = (
     "Run the programme first at reduced speed, at most 250 mm/s at the tool centre point in manual reduced-speed mode "
     "(ISO 10218-1 practice), with the usual safeguards in place.",
     "Local codes and the qualified welding procedure prevail over anything said here.",
-    "Not judged: a controller that moves otherwise between the samples than is stated, servo lag, cables and hoses, collisions.",
+    "Not judged: the controller's own interpolation where it is not the motion stated between samples, servo lag, cables and hoses, collisions.",
     "Joint limits, frames and tool dimensions are taken as given; they were not checked against the real cell.",
 )
 

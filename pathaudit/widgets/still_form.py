@@ -11,12 +11,14 @@ from ..report.text import summary
 QUIET = 1.0  # s without a change before the picture is drawn anew: drawing it would slow the work down
 
 
-def still_form(audit, shown=None, applied=None, notes=()):
-    """Two mime bundles that need no kernel: the picture and the tables. applied: the Retiming that made the audit, where one did; notes: placed.
+def still_form(audit, shown=None, applied=None, before=None, notes=()):
+    """Two mime bundles that need no kernel: the picture and the tables.
+
+    applied: the Retiming that made the audit, and before: the audit as programmed, where there is one; notes: placed.
 
     They stay two outputs beside the widget's: in one bundle with it, readers that cannot show the widget would show nothing.
     """
-    shown = shown or scene(audit, applied=applied)
+    shown = shown or scene(audit, applied=applied, before=before)
     picture = {"image/svg+xml": svg_picture(shown, notes=notes), "image/png": base64.b64encode(png_picture(shown, notes=notes)).decode(),
                "text/plain": "(picture of the timeline)"}
     return picture, {"text/html": still_tables(audit, notes, applied), "text/plain": summary(audit, notes)}
@@ -63,6 +65,7 @@ class StillForm:
         if pending is None:
             return
         session, noting = pending
-        bundles = still_form(session.shown.audit, applied=session.shown.retiming, notes=noting.placed)
+        again = session.shown.retiming
+        bundles = still_form(session.shown.audit, applied=again, before=session.given if again else None, notes=noting.placed)
         for handle, bundle in zip(handles, bundles):
             handle.update(bundle, raw=True)

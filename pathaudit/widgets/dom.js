@@ -59,3 +59,13 @@ export function popover(words, title, inside, fill) {
   set(false);
   return { node, opener, box, open };
 }
+
+// Calls act on what an observer sees; gives what ends that. Whoever keeps the observer after its end (hosts do) keeps nothing of ours with it.
+export function watching(Observer, target, options, act) {
+  const held = { act }, observer = new Observer(() => held.act?.());
+  observer.observe(target, options);
+  return () => {
+    observer.disconnect();
+    held.act = null;
+  };
+}

@@ -4,7 +4,7 @@ import { armPanel } from "./armpanel.js";
 import { rowAxis } from "./axis.js";
 import { rowChoice } from "./choice.js";
 import { clamp, fixed, nearest } from "./data.js";
-import { button, element, focusable } from "./dom.js";
+import { button, element, focusable, watching } from "./dom.js";
 import { findingsPanel } from "./findings.js";
 import { listen } from "./gestures.js";
 import { keyTable } from "./keys.js";
@@ -257,10 +257,8 @@ export function mount(root, ask, onCursor) {
   // The style sheet gives the root a minute colour transition: its end tells that a new theme has arrived. A root that was out of the
   // document meanwhile has none; the page's own mark of the theme tells then.
   for (const type of ["transitionend", "transitioncancel"]) root.addEventListener(type, (event) => event.target === root && repaint(true));
-  const themes = new MutationObserver(() => repaint(true));
-  themes.observe(document.body, { attributeFilter: ["class", "data-jp-theme-name", "data-jp-theme-light"] });
-  const watch = new ResizeObserver(resize);
-  watch.observe(root);
+  const themed = { attributeFilter: ["class", "data-jp-theme-name", "data-jp-theme-light"] };
+  const watches = [watching(MutationObserver, document.body, themed, () => repaint(true)), watching(ResizeObserver, root, {}, resize)];
 
   function showTrial(value) {
     trial.show(value);
@@ -276,8 +274,7 @@ export function mount(root, ask, onCursor) {
 
   // Whoever still holds this view after its end holds no data and no canvas.
   function close() {
-    watch.disconnect();
-    themes.disconnect();
+    watches.forEach((stop) => stop());
     cancelAnimationFrame(state.frame);
     root.replaceChildren();
     for (const held of [state, listeners]) for (const name of Object.keys(held)) held[name] = null;

@@ -44,6 +44,7 @@ async function render({ model, el }) {
     link.close();
     for (const [name, act] of Object.entries(heard)) model.off(name, act);
     view.close();
+    root.remove();      // hosts keep the element that they gave us
   };
 }
 

@@ -49,6 +49,7 @@ class Timeline(anywidget.AnyWidget):
             self.still.close()
         if self.layout is not None:
             self.layout.close()
+        self.set_trait("block", b"")      # a notebook's page keeps the widgets that were closed, but what is large goes
         super().close()
 
     # ---- what the session tells (session.Listener)

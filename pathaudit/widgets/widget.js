@@ -16,6 +16,7 @@ async function render({ model, el }) {
   const status = () => view.say(link.status());
   const refresh = async () => {
     const mine = ++shown;
+    if (!model.get("block").byteLength) return;      // Python is about to close this model
     try {
       const facts = model.get("facts"), data = await unpack(model.get("block"), facts.layout);
       if (mine !== shown) return;

@@ -9,6 +9,7 @@ from .arm import Arm, Chain
 from .conventions import FARTHEST, frozen
 from .errors import ModelError
 from .kernels import rotations
+from .tolerances import Tolerances
 
 
 @dataclass(frozen=True)
@@ -55,6 +56,7 @@ class Cell:
     """arm (its limits as they hold in this cell); placement (4, 4) base in world; tool (4, 4) tool centre point in flange;
     part (4, 4) part frame in world; start (n,) rad or m, the posture to start near, or None.
 
+    tolerances: how far it may be from all this; an audit takes the cell as stated.
     file, sha256: where the cell was read; sources: (file, sha256) of every file that it came from. Raises ModelError.
     """
 
@@ -68,6 +70,7 @@ class Cell:
     file: str = ""
     sha256: str = ""
     sources: tuple = ()
+    tolerances: Tolerances = Tolerances()
 
     def __post_init__(self):
         for field in ("placement", "tool", "part"):
@@ -76,6 +79,7 @@ class Cell:
             object.__setattr__(self, "start", frozen(self.start))
             if self.start.shape != (self.arm.n,) or not np.isfinite(self.start).all():
                 raise ModelError("start", f"{np.size(self.start)} numbers", f"{self.arm.n} finite numbers, one a joint")
+        self.tolerances.check(self.arm)
         for k, joint in enumerate(self.arm.joint_names):
             slides = self.arm.prismatic[k]
             if not self.arm.lower[k] < self.arm.upper[k]:

@@ -23,6 +23,8 @@ def cell_values(cell: Cell) -> dict:
     }  # fmt: skip
     if cell.start is not None:
         values["start"] = _listed(cell.start * np.where(arm.prismatic, 1000.0, 180.0 / np.pi))
+    if cell.tolerances.dimensions:
+        values["tolerance"] = {d.name: d.words for d in cell.tolerances.dimensions}
     return values
 
 

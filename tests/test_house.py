@@ -15,8 +15,8 @@ ROOT = Path(__file__).parents[1]
 PACKAGE = ROOT / "pathaudit"
 
 ORDER = [
-    "conventions", "errors", "writing", "kernels", "taskpath", "course", "arm", "cell", "given", "reading", "converting", "capacity", "motion", "measures", "between",
-    "proof", "causes", "findings", "hidden", "retiming", "edits", "by_hand", "changes", "earlier", "against", "pipeline", "notes", "report", "charts", "widgets", "cli",
+    "conventions", "errors", "writing", "kernels", "taskpath", "course", "arm", "tolerances", "cell", "given", "reading", "converting", "capacity", "motion", "measures", "between",
+    "proof", "causes", "findings", "hidden", "retiming", "edits", "by_hand", "changes", "earlier", "against", "pipeline", "spread", "notes", "report", "charts", "widgets", "cli",
     "__main__",
 ]  # fmt: skip
 """From the top of the house to the bottom: a module imports only from rooms above its own, or from its own room."""

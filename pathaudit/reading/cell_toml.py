@@ -13,18 +13,20 @@ from ..cell import Cell, Thresholds
 from ..conventions import DEG, MM
 from ..errors import ModelError, ReadError, quoted
 from ..kernels import rotations
+from ..tolerances import KEYS as TOLERANCES, Tolerances
 from .sources import decode, read_bytes
 from .toml_text import parse_toml, shown
 
 EXPECTED = "a cell as TOML text"
 FRAME_KEYS = ("xyz_mm", "rpy_deg")
 KEYS = {
-    "": ("name", "arm", "tool", "part", "limits", "thresholds"),
+    "": ("name", "arm", "tool", "part", "limits", "thresholds", "tolerance"),
     "arm": ("urdf", "base", "tip", "placement", "start_deg", "dh", "joint"),
     "tool": FRAME_KEYS,
     "part": FRAME_KEYS,
     "limits": ("speed_deg_s", "speed_mm_s", "acceleration_deg_s2", "acceleration_mm_s2", "travel_deg", "travel_mm"),
     "thresholds": tuple(field.name for field in fields(Thresholds)),
+    "tolerance": TOLERANCES,
 }
 
 
@@ -43,6 +45,7 @@ def read_cell_toml(file) -> Cell:
             part=_frame(top.table("part")),
             start=_start(arm_table, arm),
             thresholds=_thresholds(top.table("thresholds")),
+            tolerances=_tolerances(top.table("tolerance"), arm),
             file=str(file),
             sha256=sha256,
             sources=((str(file), sha256), *sources),
@@ -120,6 +123,13 @@ def _start(table, arm):
 def _thresholds(table):
     try:
         return Thresholds(**{key: table.number(key) for key in table.values})
+    except ModelError as error:
+        raise table.error(error.field, error.value, error.reason) from None
+
+
+def _tolerances(table, arm):
+    try:
+        return Tolerances.of(arm, **table.values)
     except ModelError as error:
         raise table.error(error.field, error.value, error.reason) from None
 

@@ -41,7 +41,7 @@ def write(path, file, kind):
     return lost
 
 
-@pytest.mark.parametrize("one, other", itertools.product(WRITTEN, WRITTEN))
+@pytest.mark.parametrize("one, other", list(itertools.product(WRITTEN, WRITTEN)))
 def test_every_format_to_every_other_and_back(tmp_path, one, other):
     place = files(tmp_path)
     (tmp_path / "source.csv").write_text(CSV, encoding="utf-8")

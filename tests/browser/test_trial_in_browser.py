@@ -53,9 +53,10 @@ class Instrument:
         self.page.wait_for_function("(count) => sent.length >= count", arg=count)
         return self.page.evaluate("sent.splice(0)")
 
-    def answer(self, count=1):
-        """Let Python do what the view has asked for, and the view show it."""
-        asked = self.messages(count)
+    def answer(self, last="true"):
+        """Let Python do what the view has asked for, and the view show it. last: JavaScript that the newest message must fulfil before."""
+        self.page.wait_for_function(f"() => {{ const m = sent.at(-1); return m && ({last}); }}")
+        asked = self.messages()
         for content in asked:
             self.timeline._on_message(self.timeline, content, [])
         if self.timeline.session._worker._pool:
@@ -95,7 +96,7 @@ def test_a_marked_stretch_is_slowed_by_the_slider_and_undone(instrument, audit):
     slider.focus()
     for _ in range(3):
         instrument.page.keyboard.press("ArrowLeft")
-    asked = instrument.answer()
+    asked = instrument.answer("m.factor < 0.975")
     assert asked[-1] | {"gesture": 0} == {"do": "slow", "first": 20, "last": 30, "factor": 0.97, "gesture": 0}
     assert len({message["gesture"] for message in asked}) == 1
     assert "down to 97 %" in instrument.said()

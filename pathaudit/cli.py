@@ -1,4 +1,4 @@
-"""The command line: `pathaudit check`, `pathaudit sign`, `pathaudit convert`, `pathaudit notes` and `pathaudit demo`.
+"""The command line: `pathaudit check`, `pathaudit study`, `pathaudit sign`, `pathaudit convert`, `pathaudit notes` and `pathaudit demo`.
 
 Exit status: 0 nothing fails; 1 a finding fails; 2 something given cannot be used, said in one line on stderr.
 """
@@ -57,12 +57,41 @@ def _parser():
     check.add_argument("--notes", metavar="FILE.notes.toml", help="put these notes into the summary, the JSON and the page, with what is stale")
     check.add_argument("--against", metavar="EARLIER.json", help="tell what changed since this report of check --json, and whether its signature holds")
     _add_reading(check)
+    _add_study(commands)
     _add_sign(commands)
     _add_convert(commands)
     _add_notes(commands)
     demo = commands.add_parser("demo", help="write a ready cell, path and notebook", description="Write a ready cell, path and notebook into a folder.", allow_abbrev=False)
     demo.add_argument("folder", metavar="FOLDER", help="made where it is missing; nothing in it is overwritten")
     return parser
+
+
+STUDY = """example:
+  pathaudit study my-cell/seam.csv --cell my-cell/cell.toml --draws 2000 --json spread.json
+
+the cell states what may be off, for example:
+  [tolerance]
+  part_xyz_mm = 1.0                       # within +-1 mm along each axis of the world
+  part_rpy_deg = [0.1, 0.1, 0.2]
+  tool_xyz_mm = { sigma = 0.3 }           # or with a standard deviation
+  joint_zero_deg = { j4 = 0.05 }
+also: base_xyz_mm, base_rpy_deg, tool_rpy_deg, joint_zero_mm, link_mm, speed_percent
+
+exit status: 0 no draw fails, 1 at least one draw or the cell as stated fails, 2 unusable input or arguments
+"""
+
+
+def _add_study(commands):
+    parser = commands.add_parser(
+        "study", help="what the tolerances of a cell do to a path", description="What the tolerances of a cell do to a path: chances, what to measure better first, how far off it may be.",
+        epilog=STUDY, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
+    )  # fmt: skip
+    parser.add_argument("path", metavar="PATH", help="the path, in any of the formats that are read")
+    parser.add_argument("--cell", metavar="CELL.toml", required=True, help="the cell, with what may be off under [tolerance]")
+    parser.add_argument("--draws", metavar="N", default="2000", help="how many cells are drawn at random; 2000 where nothing is said")
+    parser.add_argument("--seed", metavar="S", default="0", help="the same seed gives the same draws; 0 where nothing is said")
+    parser.add_argument("--json", metavar="FILE", help="write all of it as JSON; - writes it to stdout, the summary to stderr")
+    _add_reading(parser)
 
 
 READING = {
@@ -205,6 +234,8 @@ def _run(arguments):
         return _merge_notes(options) if options.act == "merge" else _list_notes(options)
     if options.command == "sign":
         return _sign(options)
+    if options.command == "study":
+        return _study(options)
     if options.command == "convert":
         return _convert(options)
     return _check(options) if options.command == "check" else _demo(options.folder)
@@ -235,6 +266,48 @@ def _check(options):
         _say(_content("json", judged, more), sys.stdout)
     _say(summary(judged, **more), sys.stderr if piped else sys.stdout)
     return 1 if judged.verdict == "fail" else 0
+
+
+def _study(options):
+    from .reading import read_cell
+
+    draws, seed = (_whole(f"--{name}", getattr(options, name)) for name in ("draws", "seed"))
+    path, cell = _read_path(options.path, options), read_cell(options.cell)
+    _check_outputs({"json": options.json} if options.json is not None else {}, [options.path, *(file for file, _ in cell.sources)])
+
+    from .pipeline import audit
+    from .report.studied import study_text, study_values
+    from .report.tables import report_text
+    from .spread.study import study
+    from .writing import write_whole
+
+    judged = audit(path, cell)
+    try:
+        found = study(judged, draws, seed, told=_told())
+    except ModelError as error:
+        raise UsageError(f"--{error.field}: found {error.value}, expected {error.reason}") from None
+    if options.json not in (None, "-"):
+        write_whole(options.json, report_text(study_values(found)))
+    piped = options.json == "-"
+    if piped:
+        _say(report_text(study_values(found)), sys.stdout)
+    _say(study_text(found), sys.stderr if piped else sys.stdout)
+    return 1 if judged.verdict == "fail" or found.verdict == "fail" or found.chance("fail").draws else 0
+
+
+def _whole(word, text):
+    """A whole number of an option."""
+    try:
+        return int(text)
+    except ValueError:
+        raise UsageError(f"{word}: found {quoted(text)}, expected a whole number") from None
+
+
+def _told():
+    """What says on a terminal, in one line, how far the work is; nothing elsewhere."""
+    if sys.stderr is None or not sys.stderr.isatty():
+        return None
+    return lambda words, share: _say(f"\r\x1b[Kpathaudit: {words}" + ("\r\x1b[K" if share == 1.0 else ""), sys.stderr)
 
 
 def _content(name, judged, more):

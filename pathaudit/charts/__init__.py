@@ -14,9 +14,11 @@ from .joints import joint_over_time
 from .look import image_options
 from .reserve import reserve_along_path
 from .speeds import speeds_along_path
+from .tolerances import bands_along_path, sensitivities
 from .variants import variants_compared
 from .velocity import velocity_capacity
 
 __all__ = [
-    "force_capacity", "image_options", "joint_over_time", "reserve_along_path", "speeds_along_path", "variants_compared", "velocity_capacity",
+    "bands_along_path", "force_capacity", "image_options", "joint_over_time", "reserve_along_path", "sensitivities", "speeds_along_path", "variants_compared",
+    "velocity_capacity",
 ]  # fmt: skip

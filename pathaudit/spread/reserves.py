@@ -32,12 +32,14 @@ class Reserve:
 @dataclass(frozen=True, eq=False)
 class Worst:
     """The shortest way found to another verdict: off by `values` (D,) of `dimensions`. size: how many times their sizes that is, taken together as
-    the root of the sum of squares, or all of them at once so many times. by: what is flagged then, as a number of what is watched."""
+    the root of the sum of squares, or all of them at once so many times. by: what is flagged then, as a number of what is watched. audited: the verdict of
+    the whole audit of that cell, "" where it was not audited."""
 
     dimensions: tuple
     values: np.ndarray
     size: float
     by: int
+    audited: str = ""
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,6 +1,6 @@
 """An audited path under the tolerances of its cell: the draws, and everything that is read from them."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from statistics import NormalDist
 
@@ -157,9 +157,9 @@ def _normal(uniform):
 def study(nominal: Audit, draws=2000, seed=0, told=None, map=None) -> Study:
     """Study an audited path under the tolerances that its cell states.
 
-    told(words, share) hears what goes on and how much of it is done; what it raises ends the study. map(function, tasks) runs the tasks in order, by
+    told(words, share) hears what goes on and how much of that part is done, last ("done", 1.0); what it raises ends the study. map(function, tasks) runs the tasks in order, by
     default on a thread a core; for a Dask client: lambda f, tasks: client.gather(client.map(f, tasks)). The result is the same, bit for bit.
-    Without tolerances only the reserves tell anything: every draw is the cell as stated. Raises ModelError.
+    Without tolerances only the reserves tell anything: then there are SCRAMBLINGS draws, all of them the cell as stated. Raises ModelError.
     """
     if isinstance(draws, bool) or not isinstance(draws, (int, np.integer)) or not LEAST <= draws <= LARGEST:
         raise ModelError("draws", repr(draws), f"a whole number from {LEAST} to {LARGEST:,}")
@@ -178,11 +178,14 @@ def _study(nominal, draws, seed, told, map):
     shared = Shared(Job(course, cell, dimensions), map)
     told("judging the cell as stated", 0.0)
     level = shared.levels(np.zeros((1, len(dimensions))))[0]
-    values = drawn(dimensions, draws, seed)
+    values = drawn(dimensions, draws if dimensions else SCRAMBLINGS, seed)
     levels, band = _run(shared, values, course, told)
     told("how much each dimension tells", 0.0)
     slope = slopes(shared, dimensions) if dimensions else np.zeros((len(level), 0))
-    rest = _reserves(Shared(Job(course, cell, _wider(dimensions)), map), Verdicts(course.watched, level), cell, len(dimensions), slope, told)
+    single, *found = _reserves(Shared(Job(course, cell, _wider(dimensions)), map), Verdicts(course.watched, level), cell, len(dimensions), slope, told)
+    told("full audits of what was found", 0.9)
+    rest = single, *(w and replace(w, audited=audit_off(nominal, w.dimensions, w.values).verdict) for w in found)
+    told("done", 1.0)
     arrays = (owned(a) for a in (values, levels))
     return Study(nominal, dimensions, seed, course.watched, frozen(level), *arrays, band, frozen(slope), *rest)
 

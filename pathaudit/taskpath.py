@@ -5,6 +5,8 @@ the column names of a timed path get their meaning.
 """
 
 import hashlib
+import math
+import mmap
 import re
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
@@ -29,7 +31,11 @@ MEANING = frozenset(
 )
 """Every column name that this module understands; all others are handed through."""
 
-BLOCK = 1 << 15  # rows worked on at once: what is formed on the way stays in the processor's cache
+BLOCK = 1 << 13  # rows worked on at once: what is formed on the way stays in the processor's cache and is too small to be asked from the system anew
+
+PIECE = 32 * BLOCK  # rows that are worth another thread
+
+LONG = 4 << 20  # bytes; from here on NumPy asks for huge pages
 
 ORIENTATIONS = "qw,qx,qy,qz or rx_deg,ry_deg,rz_deg (or _rad) or i,j,k"
 
@@ -154,60 +160,57 @@ def assemble(header, cells, numbers, *, name, sha256, place, label=None, lines=N
     """Build a Path from named columns.
 
     header, cells: the column names and, for each, its values as given.
-    numbers(column) -> (N,) float64, or a list of such arrays that follow each other; raises ReadError.
-    place(row) -> words that name a row for the user.
+    numbers(column) -> (N,) float64; raises ReadError.  place(row) -> words that name a row for the user.
     label: the texts of the column of that name, where they are at hand already.  lines, made: the path's `source_line` and `made`.
-    All is formed in blocks of rows: a path of millions of samples needs little more memory than it keeps.
     """
-    source = _Source(header, numbers, name, place)
-    time = np.concatenate(source.quantity("time", TIME))
-    position = np.empty((len(time), 3))
-    for k, c in enumerate("xyz"):
-        np.concatenate(source.quantity(f"the tool centre point's {c}", _units(c, LENGTH)), out=position[:, k])
-    if len(time) < 2:
-        raise ReadError(name, "", f"{len(time)} sample" + "s" * (len(time) != 1), "at least 2 samples")
-    _check_time(source, time)
-    _check_position(source, position)
-    rotation, spin_free = _rotation(source, len(time))
-    process = _process(source, len(time))
-    if label is None:
-        label = map(str, cells[header.index("label")]) if "label" in header else ("",) * len(time)
-    lines = None if lines is None else owned(lines)
-    columns = tuple(header), tuple(cells)
-    return Path(owned(time), owned(position), owned(rotation), spin_free, owned(process), tuple(label), *columns, str(name), sha256, lines, tuple(made))
+    filling = Filling(header, name)
+    values = [numbers(column) for column in filling.columns]
+    rows = len(values[0])
+    filling.make_room(rows)
+
+    def put(start):
+        filling.put(start, [array[start : start + PIECE] for array in values], lambda row: place(start + row))
+
+    _each(put, range(0, rows, PIECE))
+    return filling.path(rows, cells, sha256=sha256, place=place, label=label, lines=lines, made=made)
 
 
-@dataclass(frozen=True)
-class _Source:
-    """The named columns of one source and the words for its places. A column comes in blocks of rows, the same for every column."""
+def _each(work, starts):
+    """Do the work for each; much of it is shared by two threads."""
+    if len(starts) < 2:
+        for start in starts:
+            work(start)
+        return
+    with ThreadPoolExecutor(2) as pool:
+        list(pool.map(work, starts))
 
-    header: tuple
-    numbers: Callable
-    name: str
-    place: Callable
 
-    def error(self, row, found, expected):
-        return ReadError(self.name, self.place(int(row)), found, expected)
+class Filling:
+    """The arrays of a path while its rows are put in, block by block, in any order and by several threads.
 
-    def column(self, column):
-        values = self.numbers(column)
-        pieces = [values] if isinstance(values, np.ndarray) else values
-        blocks = [piece[at : at + BLOCK] for piece in pieces for at in range(0, len(piece) or 1, BLOCK)]
-        for start, block in _numbered(blocks):
-            bad = ~np.isfinite(block)
-            if bad.any():
-                row = int(np.argmax(bad))
-                raise ReadError(self.name, f"{self.place(start + row)}, column {column}", f"{block[row]}", "a finite number")
-        return blocks
+    header, name: the source's column names, and its name in messages. Raises ReadError where these columns do not make a timed path.
+    columns: those whose numbers are needed, in the order in which `put` takes them.
+    What is formed on the way is as long as a block, so that a path of millions of samples needs little more memory than it keeps.
+    """
 
-    def quantity(self, title, units):
-        """The column that gives one quantity, converted; `units` maps column names to conversions."""
+    def __init__(self, header, name):
+        self.header, self.name = tuple(header), name
+        scaled = [self._given("time", TIME), *(self._given(f"the tool centre point's {c}", _units(c, LENGTH)) for c in "xyz")]
+        self.form, turned = self._orientation()
+        scaled += turned
+        if "process" in self.header:
+            scaled.append(("process", _as_given))
+        self.columns, self._convert = zip(*scaled)
+        self.time, self.position, self.rotation, self.process = np.empty(0), np.empty((0, 3)), np.empty((0, 3, 3)), np.empty(0, bool)
+
+    def _given(self, title, units):
+        """The column that gives one quantity, and its conversion; `units` maps column names to conversions."""
         given = [column for column in units if column in self.header]
         if len(given) > 1:
             raise ReadError(self.name, "header", f"both {given[0]} and {given[1]}", f"{title} once")
         if not given:
             raise ReadError(self.name, "header", self._missing(units), f"{title} as {_either(units)}")
-        return [units[given[0]](block) for block in self.column(given[0])]
+        return given[0], units[given[0]]
 
     def _missing(self, wanted):
         """What to say was found where none of the `wanted` columns is there: a column that looks like a try at one."""
@@ -218,13 +221,113 @@ class _Source:
             return f"a column {quoted(near[0])}" + (" without a unit" if near[0].lower() in names else "")
         return f"the columns {quoted(', '.join(self.header))}"
 
+    def _orientation(self):
+        """The one form of orientation that the header has, and its columns with their conversions."""
+        angles = [_units(f"r{c}", ANGLE) for c in "xyz"]
+        groups = {"quaternion": [{c: _as_given} for c in QUATERNION], "angles": angles, "axis": [{c: _as_given} for c in AXIS]}
+        there = {form: [any(c in self.header for c in names) for names in group] for form, group in groups.items()}
+        whole = [form for form, found in there.items() if all(found)]
+        if len(whole) > 1:
+            columns = [c for form in whole for names in groups[form] for c in names if c in self.header]
+            raise ReadError(self.name, "header", f"two forms of the orientation ({', '.join(columns)})", f"exactly one of {ORIENTATIONS}")
+        if not whole:
+            raise _no_orientation(self, groups, there)
+        titles = [f"the turn about {c}" for c in "XYZ"] if whole == ["angles"] else [""] * 4
+        return whole[0], [self._given(title, names) for title, names in zip(titles, groups[whole[0]])]
 
-def _numbered(blocks):
-    """(first row, block) of blocks of rows that follow each other."""
-    start = 0
-    for block in blocks:
-        yield start, block
-        start += len(block)
+    def make_room(self, rows):
+        """Room for so many rows; what was put in stays. Nobody may put rows in meanwhile."""
+        for field in ("time", "position", "rotation", "process"):
+            old = getattr(self, field)
+            new = _room((rows, *old.shape[1:]), old.dtype)
+            new[: min(rows, len(old))] = old[:rows]
+            setattr(self, field, new)
+
+    def put(self, start, values, place):
+        """Check and convert rows: an array (M,) for each of `columns`, for the rows from `start` on; place(k) names row k of these. Raises ReadError."""
+        for at in range(0, len(values[0]), BLOCK):
+            self._put_block(start + at, [array[at : at + BLOCK] for array in values], lambda k: place(at + k))  # noqa: B023  used before the next turn
+
+    def _put_block(self, start, values, place):
+        rows = slice(start, start + len(values[0]))
+        for column, block in zip(self.columns, values):
+            _refuse(~np.isfinite(block), lambda k: ReadError(self.name, f"{place(k)}, column {column}", f"{block[k]}", "a finite number"))
+        time, x, y, z, *turned = (convert(block) for convert, block in zip(self._convert, values))
+        expected = f"times within {LATEST:g} s (check the unit of the column)"
+        _refuse(~(np.abs(time) <= LATEST), lambda k: ReadError(self.name, place(k), f"time {time[k]:g} s", expected))
+        self.time[rows] = time
+        for c, block in enumerate((x, y, z)):
+            expected = f"coordinates within {FARTHEST:g} m (check the unit of the column)"
+            _refuse(~(np.abs(block) <= FARTHEST), lambda k: ReadError(self.name, place(k), f"a tool centre point at {block[k]:g} m", expected))
+            self.position[rows, c] = block
+        self._put_rotation(self.rotation[rows], turned, place)
+        if "process" in self.header:
+            process = turned[-1]
+            _refuse((process != 0) & (process != 1), lambda k: ReadError(self.name, place(k), f"process = {process[k]:g}", "1 while the process runs or 0 on an air move"))
+            self.process[rows] = process
+        else:
+            self.process[rows] = True
+
+    def _put_rotation(self, out, turned, place):
+        if self.form == "angles":
+            out[:] = rotations.matrix_from_rpy(np.stack(turned[:3], axis=-1))
+        elif self.form == "quaternion":
+            _frames_from_wxyz(self._unit(turned[:4], QUATERNION, "a quaternion", place), out)
+        else:  # the turns about the axes are chosen when all are there
+            for c, block in enumerate(self._unit(turned[:3], AXIS, "a tool axis", place)):
+                out[:, c, 2] = block
+
+    def _unit(self, vectors, columns, title, place):
+        """One block of vectors, an array a component, with length 1: what is within the tolerance of 1 is scaled to it."""
+        with np.errstate(over="ignore"):
+            length = np.sqrt(sum(value * value for value in vectors))
+        off = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
+        _refuse(off, lambda k: ReadError(self.name, place(k), f"{title} of length {length[k]:.6g} ({', '.join(columns)})", "length 1"))
+        return [value / length for value in vectors]
+
+    def path(self, rows, cells, *, sha256, place, label=None, lines=None, made=()) -> Path:
+        """The Path of the first `rows` rows, all of which were put in; the rest as in `assemble`. Raises ReadError."""
+        if rows < 2:
+            raise ReadError(self.name, "", f"{rows} sample" + "s" * (rows != 1), "at least 2 samples")
+        time, position, rotation, process = (array[:rows] for array in (self.time, self.position, self.rotation, self.process))
+        _check_increasing(self.name, time, place)
+        if self.form == "axis":
+            for start in range(0, rows, BLOCK):
+                block = rotation[start : start + BLOCK]
+                block[:] = _carried_on(block[:, :, 2].copy(), rotation[start - 1] if start else None)
+        if label is None:
+            label = map(str, cells[self.header.index("label")]) if "label" in self.header else ("",) * rows
+        lines = None if lines is None else owned(lines)
+        arrays = owned(time), owned(position), owned(rotation), self.form == "axis", owned(process)
+        return Path(*arrays, tuple(label), self.header, tuple(cells), str(self.name), sha256, lines, tuple(made))
+
+
+def _room(shape, dtype):
+    """An array for values that are written once. A long one gets its memory in the system's small pages: NumPy asks for huge ones, and clearing
+    those costs more than all that is written into them, twice so where two threads come to one at the same time."""
+    size = math.prod(shape) * dtype.itemsize
+    if size < LONG or not hasattr(mmap, "MAP_ANONYMOUS"):
+        return np.empty(shape, dtype)
+    return np.frombuffer(mmap.mmap(-1, size, flags=mmap.MAP_PRIVATE | mmap.MAP_ANONYMOUS), dtype).reshape(shape)
+
+
+def _as_given(values):
+    return values
+
+
+def _refuse(bad, error):
+    """Raise error(k) for the first row k of a block that is bad."""
+    if bad.any():
+        raise error(int(np.argmax(bad)))
+
+
+def _check_increasing(name, time, place):
+    for start in range(0, len(time), BLOCK):
+        late = ~(np.diff(time[start : start + BLOCK + 1]) >= SHORTEST_STEP)
+        if late.any():
+            row = start + int(np.argmax(late)) + 1
+            found = f"time {time[row]:.9g} s after {time[row - 1]:.9g} s in {place(row - 1)}"
+            raise ReadError(name, place(row), found, "times that strictly increase (a recorded log is repaired when it is read as format recorded)")
 
 
 def _units(name, units):
@@ -234,90 +337,6 @@ def _units(name, units):
 def _either(names):
     *first, last = names
     return f"{', '.join(first)} or {last}" if first else last
-
-
-def _check_time(source, time):
-    far = ~(np.abs(time) <= LATEST)
-    if far.any():
-        row = int(np.argmax(far))
-        raise source.error(row, f"time {time[row]:g} s", f"times within {LATEST:g} s (check the unit of the column)")
-    late = ~(np.diff(time) >= SHORTEST_STEP)
-    if late.any():
-        row = int(np.argmax(late)) + 1
-        raise source.error(row, f"time {time[row]:.9g} s after {time[row - 1]:.9g} s in {source.place(row - 1)}", "times that strictly increase (a recorded log is repaired when it is read as format recorded)")
-
-
-def _check_position(source, position):
-    for start in range(0, len(position), BLOCK):
-        far = ~(np.abs(position[start : start + BLOCK]) <= FARTHEST)
-        if far.any():
-            row, c = np.argwhere(far)[0] + (start, 0)
-            raise source.error(row, f"a tool centre point at {position[row, c]:g} m", f"coordinates within {FARTHEST:g} m (check the unit of the column)")
-
-
-def _process(source, samples):
-    if "process" not in source.header:
-        return np.ones(samples, dtype=bool)
-    process = np.concatenate(source.column("process"))
-    wrong = (process != 0) & (process != 1)
-    if wrong.any():
-        row = int(np.argmax(wrong))
-        raise source.error(row, f"process = {process[row]:g}", "1 while the process runs or 0 on an air move")
-    return process != 0
-
-
-def _rotation(source, samples):
-    """(N, 3, 3) and whether the spin about the tool axis is free, from the one orientation form that the source has."""
-    angles = [_units(f"r{c}", ANGLE) for c in "xyz"]
-    groups = {"quaternion": [{c: None} for c in QUATERNION], "angles": angles, "axis": [{c: None} for c in AXIS]}
-    there = {form: [any(c in source.header for c in names) for names in group] for form, group in groups.items()}
-    whole = [form for form, found in there.items() if all(found)]
-    if len(whole) > 1:
-        columns = [c for form in whole for names in groups[form] for c in names if c in source.header]
-        raise ReadError(source.name, "header", f"two forms of the orientation ({', '.join(columns)})", f"exactly one of {ORIENTATIONS}")
-    if not whole:
-        raise _no_orientation(source, groups, there)
-    rotation = np.empty((samples, 3, 3))
-    if whole == ["angles"]:
-        columns = [source.quantity(f"the turn about {c.upper()}", names) for c, names in zip("xyz", angles)]
-        _in_blocks(lambda start, *rpy: _put(rotation, start, rotations.matrix_from_rpy(np.stack(rpy, axis=-1))), columns)
-    elif whole == ["quaternion"]:
-        columns = [source.column(c) for c in QUATERNION]
-        _in_blocks(lambda start, *q: _frames_from_wxyz(_unit(source, start, q, QUATERNION, "a quaternion"), rotation[start : start + len(q[0])]), columns)
-    else:
-        start = 0
-        for axis in zip(*(source.column(c) for c in AXIS)):
-            axes = np.stack(_unit(source, start, axis, AXIS, "a tool axis"), axis=-1)
-            start = _put(rotation, start, _carried_on(axes, rotation[start - 1] if start else None))
-    return rotation, whole == ["axis"]
-
-
-def _put(out, start, values):
-    """Write rows from `start` on; returns the row after them."""
-    out[start : start + len(values)] = values
-    return start + len(values)
-
-
-def _in_blocks(work, columns):
-    """work(first row, one block a column) for each block of rows; many blocks are shared by two threads."""
-    jobs = [(start, blocks) for (start, _), blocks in zip(_numbered(columns[0]), zip(*columns))]
-    if len(jobs) < 8:
-        for start, blocks in jobs:
-            work(start, *blocks)
-        return
-    with ThreadPoolExecutor(2) as pool:
-        list(pool.map(lambda job: work(job[0], *job[1]), jobs))
-
-
-def _unit(source, start, vectors, columns, title):
-    """One block of vectors, an array a component, with length 1: what is within the tolerance of 1 is scaled to it."""
-    with np.errstate(over="ignore"):
-        length = np.sqrt(sum(value * value for value in vectors))
-    bad = ~(np.abs(length - 1.0) <= UNIT_TOLERANCE)
-    if bad.any():
-        row = int(np.argmax(bad))
-        raise source.error(start + row, f"{title} of length {length[row]:.6g} ({', '.join(columns)})", "length 1")
-    return [value / length for value in vectors]
 
 
 def _frames_from_wxyz(wxyz, out):

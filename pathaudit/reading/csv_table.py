@@ -3,19 +3,14 @@
 The delimiter (',' or ';' or tab) is the one under which the header shows most known columns. One line holds one row, so that row
 numbers in messages are those of the user's editor.
 
-A small file is split at once. A large one stays on its disk: only its numbers are read, block by block on several threads by
-pyarrow's or pandas' engine, and its texts are split when somebody asks for them. A block that the engine does not take is read by the
-careful code below, which says what is wrong and in which line; so both ways take and refuse the same files.
+A small file is split at once. A large one stays on its disk: `large_csv` reads its numbers block by block, and its texts are split when
+somebody asks for them. A block that the engine there does not take is read by the careful code below, which says what is wrong and in
+which line; so both ways take and refuse the same files.
 """
 
 import csv
 import functools
-import hashlib
-import os
-import re
-from collections import deque
 from collections.abc import Sequence
-from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
 
@@ -25,21 +20,20 @@ from . import sources
 from .sources import check_text, not_utf8
 
 NUMBER = "a number with a decimal point"
-BLOCK = 1 << 21  # bytes
+BLOCK = 1 << 20  # bytes; an engine asks the system for memory again and again from twice as many on
 LONGEST_HEADER = 100_000  # bytes
 NUMERIC = MEANING - {"label"}
 
 
 class Table:
-    """Cells by column, numbers by column, and the place of each row in the file.
+    """Cells by column, numbers by column, and the place of each row in the file; of a large file the blocks alone.
 
     data: bytes of UTF-8 text.  expected: what the file should be, for messages.  known: names of columns by which the header is recognised.
     whole: split a large file at once as well.
-    header: names.  cells: for each column its texts.  lines (N,): the line of each row in the file.
-    sha256: the hash of a large file's bytes, formed on the way; else None.
+    header: names.  cells: for each column its texts.  lines (N,): the line of each row in the file, which is None in a large one.
     """
 
-    sha256 = None
+    label = None
 
     def __init__(self, file, data, expected, known=MEANING, whole=False):
         self.file, self.expected, self.large = file, expected, len(data) >= sources.LARGE and not whole
@@ -53,12 +47,10 @@ class Table:
         self._check_header(known)
         self.blocks = _Blocks(self, data, start, line)
         if self.large:
-            self.read = _read_large(self)
-            self.lines, self.label = self.read.pop("line"), self.read.pop("label")
-            self.cells = tuple(TextColumn(self.blocks, k) for k in range(len(self.header)))
+            self.lines, self.cells = None, tuple(TextColumn(self.blocks, k) for k in range(len(self.header)))
         else:
             self.lines, columns = self.blocks.careful(0)
-            self.cells, self.label = tuple(map(tuple, columns)), None
+            self.cells = tuple(map(tuple, columns))
 
     def _first_line(self, data):
         """Where the text below the header starts, that line's number, and the header line."""
@@ -91,9 +83,7 @@ class Table:
         return f"line {self.lines[row]}"
 
     def numbers(self, column):
-        """What Python's float() makes of each cell: (N,) float64; a large file's in pieces, which are handed over once."""
-        if self.large:
-            return self.read.pop(column) or [np.zeros(0)]
+        """What Python's float() makes of each cell: (N,) float64."""
         return numbers_of(self.file, column, self.cells[self.header.index(column)], self.lines)
 
 
@@ -190,133 +180,6 @@ class TextColumn(Sequence):
 
     def __eq__(self, other):
         return isinstance(other, Sequence) and len(self) == len(other) and all(mine == theirs for mine, theirs in zip(self, other))
-
-
-def threads():
-    return min(os.cpu_count() or 1, 4)
-
-
-def _read_large(table):
-    """Lists of arrays, one a block: the numbers by column. Under 'line' the line of each row, under 'label' the labels or None."""
-    wanted = [column for column in table.header if column in NUMERIC]
-    engine, source = _engine(table), table.blocks.data
-    digest, jobs, blocks = hashlib.sha256(source[: table.blocks.bounds[0]]), deque(), []
-    with ThreadPoolExecutor(threads()) as pool:
-        try:
-            for k in range(len(table.blocks)):
-                data = table.blocks.raw(k)
-                jobs.append(pool.submit(_block, table, k, data, wanted, engine))
-                digest.update(data)
-                if len(jobs) > 4 * threads():  # the file must not pile up in memory
-                    blocks.append(jobs.popleft().result())
-            blocks += [job.result() for job in jobs]
-        except BaseException:
-            pool.shutdown(cancel_futures=True)
-            raise
-    table.sha256 = digest.hexdigest() if isinstance(source, sources.LargeFile) else None
-    first = np.cumsum([table.blocks.line, *(height for height, *_ in blocks)])
-    lines = [np.arange(rows, dtype=np.int32) if lines is None else lines for _, rows, lines, *_ in blocks]
-    table.blocks.rows = np.cumsum([0, *(rows for _, rows, *_ in blocks)])
-    labels = [text for *_, texts in blocks for text in texts] if "label" in table.header else None
-    columns = {column: [values[k] for _, _, _, values, _ in blocks] for k, column in enumerate(wanted)}
-    empty = [np.zeros(0, np.int32)]
-    return {**columns, "line": np.concatenate(empty + [here + np.int32(start) for here, start in zip(lines, first)]), "label": labels}
-
-
-_COMMENT = re.compile(rb"^[ \t]*#[^\n]*\n?", re.M)
-_TRUTH = (b"True", b"TRUE", b"true", b"False", b"FALSE", b"false")  # pandas takes them for 1 and 0
-
-
-def _block(table, k, data, wanted, engine):
-    """Of block k, given as its raw bytes: its lines, its rows, the line of each row counted from its first (None: one a line), the wanted columns' numbers, the labels."""
-    data = table.blocks.clean(k, data)
-    if not data.isascii():
-        try:
-            data.decode("utf-8")
-        except UnicodeDecodeError:
-            table.decoded(data, table.blocks.first_line(k))
-    if b'"' not in data and b"#" not in data and b"\n\n" not in data and not data.startswith(b"\n"):
-        read = engine(data)
-        if read is not None:
-            return read[0], read[0], None, *read[1:]
-    numbers, cells = table.blocks.careful(k)
-    read = engine(_COMMENT.sub(b"", data)) if b'"' not in data else None
-    if read is None or read[0] != len(numbers):
-        texts = cells[table.header.index("label")] if "label" in table.header else ()
-        read = len(numbers), [numbers_of(table.file, column, cells[table.header.index(column)], numbers) for column in wanted], texts
-    height = data.count(b"\n") + (not data.endswith(b"\n"))
-    return height, len(numbers), numbers - table.blocks.first_line(k), *read[1:]
-
-
-def _engine(table):
-    """A function of bytes -> (rows, arrays of the numeric columns, labels), or None where it does not get rows of numbers from them."""
-    try:
-        import pyarrow.csv  # noqa: F401
-    except ImportError:
-        return _pandas_engine(table)
-    return _arrow_engine(table)
-
-
-def _arrow_engine(table):
-    import pyarrow as arrow
-    from pyarrow import csv as arrow_csv
-
-    names = [f"c{k}" for k in range(len(table.header))]
-    types = {name: arrow.float64() for name, column in zip(names, table.header) if column in NUMERIC}
-    numeric = list(types)
-    if "label" in table.header:
-        types[names[table.header.index("label")]] = arrow.dictionary(arrow.int32(), arrow.utf8())
-    convert = arrow_csv.ConvertOptions(column_types=types, include_columns=list(types), null_values=[], strings_can_be_null=False, check_utf8=False)
-    parse = arrow_csv.ParseOptions(delimiter=table.delimiter, quote_char=False)
-
-    def engine(data):
-        read = arrow_csv.ReadOptions(use_threads=False, block_size=len(data) + 1, column_names=names)
-        try:
-            found = arrow_csv.read_csv(arrow.BufferReader(data), read, parse, convert)
-        except (arrow.ArrowException, ValueError, OSError):
-            return None
-        labels = ()
-        if "label" in table.header:
-            column = found.column(len(numeric)).combine_chunks()
-            words = column.dictionary.to_pylist()
-            labels = [words[code] for code in column.indices.to_pylist()]
-        out = np.empty((len(numeric), found.num_rows))  # the engine's own memory is used again by the next block
-        for k in range(len(numeric)):
-            out[k] = found.column(k).to_numpy()
-        return found.num_rows, out, labels
-
-    return engine
-
-
-def _pandas_engine(table):
-    import io
-
-    import pandas
-
-    places = [k for k, column in enumerate(table.header) if column in NUMERIC]
-    spot = table.header.index("label") if "label" in table.header else None
-    kinds = {**{k: np.float64 for k in places}, **({} if spot is None else {spot: str})}
-    options = {"header": None, "names": range(len(table.header)), "usecols": list(kinds), "dtype": kinds, "sep": table.delimiter}
-    options |= {"na_filter": False, "quoting": csv.QUOTE_NONE, "engine": "c", "index_col": False, "low_memory": False}
-    if tuple(map(int, pandas.__version__.split(".")[:2])) < (3, 1):  # from there on the one converter is exact
-        options["float_precision"] = "round_trip"
-    delimiter, extra = ord(table.delimiter), len(table.header) - 1
-
-    def engine(data):
-        letters = np.frombuffer(data if data.endswith(b"\n") else data + b"\n", np.uint8)
-        ends = np.flatnonzero(letters == ord("\n"))
-        counts = np.diff(np.searchsorted(np.flatnonzero(letters == delimiter), ends), prepend=0)
-        if (counts != extra).any() or any(word in data for word in _TRUTH):
-            return None
-        try:
-            found = pandas.read_csv(io.BytesIO(data), **options)
-        except (ValueError, OverflowError):
-            return None
-        if len(found) != len(ends):
-            return None
-        return len(found), [found[k].to_numpy() for k in places], () if spot is None else found[spot].tolist()
-
-    return engine
 
 
 def holds_cells(line):

@@ -2,7 +2,6 @@
 
 from collections.abc import Sequence
 
-import numpy as np
 
 from ..errors import ReadError, first_repeated, one_line, quoted
 from ..taskpath import MEANING, Path
@@ -147,4 +146,4 @@ def _numbers(name, column, cells):
         raise ReadError(name, f"column {column}", f"values of type {kind}", "numbers")
     if types.is_boolean(kind):
         arrow = arrow.cast(pyarrow.int8())
-    return [np.asarray(piece.cast(pyarrow.float64(), safe=False)) for piece in arrow.chunks] or np.zeros(0)
+    return arrow.cast(pyarrow.float64(), safe=False).to_numpy()

@@ -3,6 +3,7 @@
 from ..taskpath import Path
 from .columns import path_of
 from .csv_table import Table
+from .large_csv import read_large
 
 EXPECTED = "a timed path as CSV text"
 
@@ -10,4 +11,4 @@ EXPECTED = "a timed path as CSV text"
 def read_timed_csv(data: bytes, name, sha256: str, options=None) -> Path:
     """The path in the bytes of a file; `name` stands in messages. Raises ReadError."""
     table = Table(name, data, EXPECTED)
-    return path_of(table, name, table.sha256 or sha256)
+    return read_large(table, sha256) if table.large else path_of(table, name, sha256)

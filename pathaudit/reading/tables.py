@@ -2,7 +2,6 @@
 
 from collections.abc import Sequence
 
-
 from ..errors import ReadError, first_repeated, one_line, quoted
 from ..taskpath import MEANING, Path
 from .columns import Columns, path_of

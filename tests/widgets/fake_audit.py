@@ -6,6 +6,7 @@ import numpy as np
 
 from pathaudit.arm import Chain
 from pathaudit.cell import Thresholds
+from pathaudit.tolerances import Tolerances
 
 SPEED_DEG_S = (200.0, 180.0, 200.0, 400.0, 400.0, 600.0)
 
@@ -119,7 +120,7 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0, tight=False):
                           effort=np.full(n, np.nan), n=n, prismatic=np.zeros(n, dtype=bool), reach=1.9)
     ends = np.array(links)
     ends[0], ends[-1] = np.linalg.inv(part) @ placement @ links[0], links[-1] @ tool
-    cell = SimpleNamespace(chain=Chain(ends, np.zeros(n, dtype=np.uint8)), name="Bracket cell <7>", arm=arm, placement=placement, tool=tool, part=part, start=None, thresholds=thresholds,
+    cell = SimpleNamespace(chain=Chain(ends, np.zeros(n, dtype=np.uint8)), name="Bracket cell <7>", arm=arm, placement=placement, tool=tool, part=part, start=None, thresholds=thresholds, tolerances=Tolerances(),
                            file="cell.toml", sha256="a" * 64, sources=(("cell.toml", "a" * 64),), characteristic_length=0.95)
     path = SimpleNamespace(source_line=None, made=(), time=time, position=position, process=process, samples=samples, duration=float(time[-1] - time[0]),
                            distance=distance, length=float(distance[-1]), file="seam.csv", sha256="b" * 64, spin_free=False,

@@ -16,19 +16,36 @@ def chromium():
         yield running
 
 
+@pytest.fixture(scope="session")
+def spare(chromium):
+    """Pages that tests have left, by their options: a new profile takes longer than many a test."""
+    pages = {}
+    yield pages
+    for page in sum(pages.values(), []):
+        page.close()
+
+
 @pytest.fixture
-def watched(chromium):
-    """Make a Watched page; at the end of the test it must have no fault."""
+def watched(chromium, spare):
+    """Make a Watched page, empty as a new one; at the end of the test it must have no fault. fresh: nobody else has used it or will."""
     made = []
 
-    def make(**options):
-        made.append(hosts.Watched(chromium, **options))
-        return made[-1]
+    def make(width=1200, height=1000, fresh=False, **options):
+        free = [] if fresh else spare.setdefault(repr(options), [])
+        one = free.pop() if free else hosts.Watched(chromium, width, height, **options)
+        one.page.set_viewport_size({"width": width, "height": height})
+        made.append((one, fresh, free))
+        return one
 
     yield make
-    faults = [fault for one in made for fault in one.faults]
-    for one in made:
-        one.close()
+    faults = [fault for one, _, _ in made for fault in one.faults]
+    for one, fresh, free in made:
+        if fresh or one.faults:
+            one.close()
+        else:
+            one.page.mouse.move(0, 0)
+            one.page.goto("about:blank")
+            free.append(one)
     assert not faults, faults
 
 

@@ -174,7 +174,7 @@ def test_a_path_that_is_reached_in_part_and_one_that_is_not_at_all(lab, page):
 @pytest.fixture
 def link(watched):
     """kernelLink on a page without a host, with a clock of its own; window.said gathers what it says, window.heard what it listens to."""
-    page = watched().page
+    page = watched(fresh=True).page
     page.clock.install()
     page.set_content("<div id='el'></div>")
     page.add_script_tag(type="module", content=joined_modules() + """

@@ -7,7 +7,7 @@ from pathlib import Path
 os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # small matrices: more threads only wait for each other
 sys.path.insert(0, str(Path(__file__).resolve().parents[1]))
 
-from . import in_browser, in_process, in_subprocess, reading  # noqa: E402
+from . import in_browser, in_process, in_subprocess, reading, tolerances  # noqa: E402
 from .timing import table  # noqa: E402
 
 BENCHMARKS = {
@@ -16,6 +16,7 @@ BENCHMARKS = {
     "measuring": in_process.measuring,
     "audit": in_process.whole_audit,
     "proof": in_process.proving,
+    "tolerances": tolerances.studying,
     "command": in_subprocess.first_and_warm_check,
     "memory": in_subprocess.memory,
     "imports": in_subprocess.imports,

@@ -48,8 +48,8 @@ def bands_along_path(study, *, along="time"):
     """
     audit, limits = study.audit, study.audit.cell.thresholds
     busiest = 100.0 * np.fmax.reduce(audit.rates.speed_share, axis=1)
-    sigma, share = study.bands.at(np.arange(audit.path.samples))
-    share = np.where(np.isfinite(share), 100.0 * share, np.nan)
+    bands = study.bands.at(np.arange(audit.path.samples))
+    sigma, share = bands.sigma_min, np.where(np.isfinite(bands.busiest), 100.0 * bands.busiest, np.nan)
     view = along_path(audit, along, np.column_stack([busiest, audit.rates.sigma_min, share.T, sigma.T]), numbered(audit, lambda f: f.kind in ("near-singular", "joint speed")))
     rows = (_row(view, share, busiest, "%{y:.1f} % of the speed limit", limits.speed_share_warn * 100.0, limits.speed_share_fail * 100.0),
             _row(view, sigma, audit.rates.sigma_min, "sigma_min %{y:.4f}", limits.sigma_min_warn, limits.sigma_min_fail))

@@ -179,6 +179,6 @@ def _worst_values(study, w):
 
 def _band_values(study):
     bands = study.bands
-    rows = {f"{name}_{level}": row for name, rows in (("sigma_min", bands.sigma_min), ("speed_share_percent", 100.0 * bands.speed_share))
+    rows = {f"{name}_{level}": row for name, rows in (("sigma_min", bands.sigma_min), ("busiest_joint_percent", 100.0 * bands.busiest))
             for level, row in zip(("5", "50", "95"), rows, strict=True)}  # fmt: skip
     return {"sample": bands.sample.tolist(), **{name: [float(f"{value:.6g}") for value in row] for name, row in rows.items()}}

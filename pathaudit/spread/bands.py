@@ -7,24 +7,31 @@ import numpy as np
 from ..conventions import owned
 
 SHARES = (0.05, 0.5, 0.95)
-MOST_DRAWS, MOST_SAMPLES = 2000, 2000  # that are kept for it: 32 MB
+MOST_DRAWS, MOST_SAMPLES = 1000, 1000  # that are kept for it: 28 MB with six joints
 
 
 @dataclass(frozen=True, eq=False)
 class Bands:
-    """sample (K,): numbers of samples. sigma_min, speed_share (3, K): of the draws 5, 50 and 95 % lie at or below; speed_share is the busiest joint's.
+    """sample (K,): numbers of samples. sigma_min, busiest (3, K), speed_share (3, K, n): of the draws 5, 50 and 95 % lie at or below, at each sample by
+    itself; speed_share is each joint's, of its limit, busiest the largest of them.
 
-    Where a pose is not reached in so many draws, sigma_min is 0 and speed_share infinite.
+    Where a pose is not reached in so many draws, sigma_min is 0 and the shares are infinite.
     """
 
     sample: np.ndarray
     sigma_min: np.ndarray
+    busiest: np.ndarray
     speed_share: np.ndarray
 
-    def at(self, samples):
-        """sigma_min and speed_share (3, M) at the sample numbers (M,), straight between those that are kept."""
+    def at(self, samples) -> "Bands":
+        """The bands at the sample numbers (M,), straight between those that are kept; NaN beside infinite ones."""
+        return Bands(owned(np.asarray(samples)), *(owned(self._between(samples, rows)) for rows in (self.sigma_min, self.busiest, self.speed_share)))
+
+    def _between(self, samples, rows):
+        flat = np.moveaxis(rows, 1, -1).reshape(-1, len(self.sample))
         with np.errstate(invalid="ignore"):
-            return tuple(np.stack([np.interp(samples, self.sample, row) for row in rows]) for rows in (self.sigma_min, self.speed_share))
+            there = np.stack([np.interp(samples, self.sample, row) for row in flat])
+        return np.moveaxis(there.reshape(*np.moveaxis(rows, 1, -1).shape[:-1], -1), -1, 1)
 
 
 def kept_samples(rates) -> np.ndarray:
@@ -44,11 +51,11 @@ def kept_draws(draws) -> np.ndarray:
 
 
 def bands(sample, sigma, share) -> Bands:
-    """Of sigma, share (M, K), in which infinity stands for what is not reached."""
-    return Bands(owned(sample), *(owned(_quantiles(values).astype(float)) for values in (sigma, share)))
+    """Of sigma (M, K) and share (M, K, n), in which zero and infinity stand for what is not reached."""
+    return Bands(owned(sample), *(owned(_quantiles(values).astype(float)) for values in (sigma, share.max(axis=2), share)))
 
 
 def _quantiles(values):
-    """(3, K): values that were drawn, not means of two of them, which infinity would spoil."""
+    """(3, ...): values that were drawn, not means of two of them, which infinity would spoil."""
     at = [min(len(values) - 1, int(np.ceil(share * len(values))) - 1) for share in SHARES]
     return np.partition(values, at, axis=0)[at]

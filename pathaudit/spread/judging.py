@@ -65,7 +65,7 @@ def _shown(kind, slides):
 class Course:
     """All that a draw needs beside its chain, as plain arrays, so that it can be sent to another process.
 
-    keep (K,): the samples whose sigma_min and largest speed share are kept.
+    keep (K,): the samples whose sigma_min and speed shares are kept.
     """
 
     prismatic: np.ndarray
@@ -137,8 +137,8 @@ class Course:
 
 @dataclass(frozen=True, eq=False)
 class Judged:
-    """levels (M, L) of what is watched in M draws; sigma, share (M, K) float32 at the samples kept: sigma_min, 0 where not reached, and the largest
-    speed share, infinite there."""
+    """levels (M, L) of what is watched in M draws; at the samples kept sigma (M, K), sigma_min, 0 where not reached, and share (M, K, n), the speed
+    shares, infinite there; both float32."""
 
     levels: np.ndarray
     sigma: np.ndarray
@@ -165,8 +165,9 @@ def _few(course, links, speed):
     change *= (speed[:, None] ** 2 / course.acceleration)[:, None]
     columns = _levels(course, joints, outcome, sigma, share, change, speed)
     levels = np.stack([columns[w.kind] if w.joint is None else columns[w.kind][:, w.joint] for w in course.watched], axis=1)
-    low, busiest = sigma[:, course.keep], np.fmax.reduce(share[:, course.keep], axis=2)
-    return levels, np.nan_to_num(low, nan=0.0).astype(np.float32), np.where(np.isnan(busiest), np.inf, busiest).astype(np.float32)
+    low, kept = sigma[:, course.keep].astype(np.float32), share[:, course.keep].astype(np.float32)
+    low[np.isnan(low)], kept[np.isnan(kept)] = 0.0, np.inf
+    return levels, low, kept
 
 
 def _levels(course, joints, outcome, sigma, share, change, speed):

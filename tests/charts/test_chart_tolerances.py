@@ -38,7 +38,7 @@ def test_the_band_holds_the_draws_and_the_line_is_the_cell_as_stated(wide, along
     low, high = by_name["5 % of the draws are below", "y"], by_name["90 % of the draws", "y"]
     stated, middle = by_name["as stated", "y"], by_name["middle of the draws", "y"]
     np.testing.assert_allclose(stated.y, 100 * wide.audit.rates.speed_share.max(axis=1))
-    np.testing.assert_allclose(low.y, 100 * wide.bands.speed_share[0])
+    np.testing.assert_allclose(low.y, 100 * wide.bands.busiest[0])
     assert (np.array(low.y) <= np.array(middle.y)).all() and (np.array(middle.y) <= np.array(high.y)).all()
     np.testing.assert_allclose(by_name["as stated", "y2"].y, wide.audit.rates.sigma_min)
     assert high.fill == "tonexty" and list(figure.data).index(high) == list(figure.data).index(low) + 1
@@ -48,8 +48,8 @@ def test_the_band_holds_the_draws_and_the_line_is_the_cell_as_stated(wide, along
 def test_where_draws_do_not_reach_the_band_has_a_gap(wide):
     from dataclasses import replace
 
-    share = wide.bands.speed_share.copy()
+    share = wide.bands.busiest.copy()
     share[2, 10:20] = np.inf
-    figure = charts.bands_along_path(replace(wide, bands=replace(wide.bands, speed_share=share)))
+    figure = charts.bands_along_path(replace(wide, bands=replace(wide.bands, busiest=share)))
     high = next(t for t in figure.data if t.name == "90 % of the draws")
     assert np.isnan(np.asarray(high.y, float)[10:20]).all() and np.isfinite(np.asarray(high.y, float)[21:]).all()

@@ -20,7 +20,7 @@ from pathaudit.tolerances import Dimension
 def same(one, other):
     for name in ("values", "levels", "nominal", "slopes"):
         np.testing.assert_array_equal(getattr(one, name), getattr(other, name))
-    for name in ("sample", "sigma_min", "speed_share"):
+    for name in ("sample", "sigma_min", "busiest", "speed_share"):
         np.testing.assert_array_equal(getattr(one.bands, name), getattr(other.bands, name))
     assert one.reserves == other.reserves
     for a, b in ((one.worst, other.worst), (one.all_at_once, other.all_at_once)):
@@ -78,7 +78,8 @@ def test_without_tolerances_every_draw_is_the_audit(seed, quick):
     worst = {f.severity for f in find(audit.rates)[0]}
     assert found.verdict == ("fail" if "fail" in worst else "warn" if "warn" in worst else "pass")
     assert (found.levels == found.nominal).all() and found.chance(found.verdict).share == 1.0
-    np.testing.assert_allclose(found.bands.speed_share, np.tile(audit.rates.speed_share.max(axis=1), (3, 1)), rtol=1e-6)
+    np.testing.assert_allclose(found.bands.busiest, np.tile(audit.rates.speed_share.max(axis=1), (3, 1)), rtol=1e-6)
+    np.testing.assert_allclose(found.bands.speed_share, np.tile(audit.rates.speed_share, (3, 1, 1)), rtol=1e-6, atol=1e-12)
     np.testing.assert_allclose(found.bands.sigma_min, np.tile(audit.rates.sigma_min, (3, 1)), rtol=1e-6)
     assert found.sensitivities() == () and len(found.reserves) == 6
 
@@ -143,20 +144,25 @@ def test_slopes_are_the_differences_of_audits(studied, six):
 
 def test_bands_hold_what_they_say(studied, six):
     assert len(studied.bands.sample) == six.path.samples
-    low, middle, high = studied.bands.speed_share
-    assert (low <= middle).all() and (middle <= high).all()
-    again = [studied.audit_of(k).rates.speed_share.max(axis=1) for k in range(0, 300, 15)]
-    inside = np.mean([(low <= row * (1 + 1e-6)) & (row <= high * (1 + 1e-6)) for row in again])
-    assert 0.8 < inside < 0.98
+    again = [studied.audit_of(k).rates for k in range(0, 300, 15)]
+    for (low, middle, high), rows in ((studied.bands.speed_share, [r.speed_share for r in again]), (studied.bands.sigma_min, [r.sigma_min for r in again]),
+                                      (studied.bands.busiest, [r.speed_share.max(axis=1) for r in again])):  # fmt: skip
+        assert (low <= middle).all() and (middle <= high).all()
+        inside = np.mean([(low <= row * (1 + 1e-6)) & (row <= high * (1 + 1e-6)) for row in rows])
+        assert 0.8 < inside < 0.98
     at = studied.bands.at(np.array([0, 1, 2]))
-    np.testing.assert_array_equal(at[1], studied.bands.speed_share[:, :3])
+    np.testing.assert_array_equal(at.speed_share, studied.bands.speed_share[:, :3])
+    np.testing.assert_array_equal(at.sigma_min, studied.bands.sigma_min[:, :3])
+    between = studied.bands.at(np.array([0.5])).speed_share[:, 0]
+    np.testing.assert_allclose(between, studied.bands.speed_share[:, :2].mean(axis=1))
 
 
 def test_bands_are_drawn_values_even_where_some_do_not_reach():
     share = np.array([[1.0], [2.0], [np.inf], [3.0]] * 25)
-    found = bands(np.array([4]), np.where(np.isinf(share), 0.0, 1.0), share)
-    assert found.speed_share.ravel().tolist() == [1.0, 2.0, np.inf] and found.sigma_min.ravel().tolist() == [0.0, 1.0, 1.0]
-    assert kept_draws(5000).sum() == 2000 and kept_draws(7).all()
+    found = bands(np.array([4]), np.where(np.isinf(share), 0.0, 1.0), np.stack([share, np.where(np.isinf(share), share, 0.5)], axis=2))
+    assert found.busiest.ravel().tolist() == [1.0, 2.0, np.inf] and found.speed_share[:, 0].tolist() == [[1.0, 0.5], [2.0, 0.5], [np.inf, np.inf]]
+    assert found.sigma_min.ravel().tolist() == [0.0, 1.0, 1.0]
+    assert kept_draws(5000).sum() == 1000 and kept_draws(7).all()
 
 
 def test_the_worst_draw_is_one_and_can_be_audited_in_full(studied):

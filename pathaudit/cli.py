@@ -91,6 +91,7 @@ def _add_study(commands):
     parser.add_argument("--draws", metavar="N", default="2000", help="how many cells are drawn at random; 2000 where nothing is said")
     parser.add_argument("--seed", metavar="S", default="0", help="the same seed gives the same draws; 0 where nothing is said")
     parser.add_argument("--json", metavar="FILE", help="write all of it as JSON; - writes it to stdout, the summary to stderr")
+    parser.add_argument("--html", metavar="FILE", help="write the audit with bands and tables of the study as one self-contained page")
     _add_reading(parser)
 
 
@@ -273,9 +274,11 @@ def _study(options):
 
     draws, seed = (_whole(f"--{name}", getattr(options, name)) for name in ("draws", "seed"))
     path, cell = _read_path(options.path, options), read_cell(options.cell)
-    _check_outputs({"json": options.json} if options.json is not None else {}, [options.path, *(file for file, _ in cell.sources)])
+    outputs = {name: getattr(options, name) for name in ("json", "html") if getattr(options, name) is not None}
+    _check_outputs(outputs, [options.path, *(file for file, _ in cell.sources)])
 
     from .pipeline import audit
+    from .report.page import one_page
     from .report.studied import study_text, study_values
     from .report.tables import report_text
     from .spread.study import study
@@ -286,8 +289,9 @@ def _study(options):
         found = study(judged, draws, seed, told=_told())
     except ModelError as error:
         raise UsageError(f"--{error.field}: found {error.value}, expected {error.reason}") from None
-    if options.json not in (None, "-"):
-        write_whole(options.json, report_text(study_values(found)))
+    for name, file in outputs.items():
+        if file != "-":
+            write_whole(file, one_page(judged, study=found) if name == "html" else report_text(study_values(found)))
     piped = options.json == "-"
     if piped:
         _say(report_text(study_values(found)), sys.stdout)

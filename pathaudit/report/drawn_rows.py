@@ -179,8 +179,11 @@ def _draw_lines(surface, places, arrays, row, y):
     values = [arrays[name].reshape(len(time), -1)[:, column].astype(float) for name, column, _ in row["lines"]]
     if row["lines"][0][2] == "ceiling":
         _draw_shortage(surface, places, row, y, time, *(np.minimum(v, row["high"]) for v in (values[0], values[-1])))
-    for value, (_, _, style) in zip(values, row["lines"]):
+    for value, (name, column, style) in zip(values, row["lines"]):
         shown = np.clip(value, row["low"], row["high"])
+        if style == "band":
+            _draw_band(surface, places, row, y, time, shown, np.clip(_upper(arrays[name], column).astype(float), row["low"], row["high"]))
+            continue
         if style != "main":
             colour, width, dash = (SOFT, 1.2, (6, 3)) if style == "ceiling" else (INK, 1.1, (1.5, 2.5))
             for t, v in pieces(time, value <= row["high"], shown):
@@ -192,6 +195,19 @@ def _draw_lines(surface, places, arrays, row, y):
             bad = row["bad"] if row["bad"] != "outside" else "above" if bound > 50 else "below"
             for t, v in beyond(time, shown, bound, bad):
                 surface.line(thinned(places.x(t), height_of(row, y, v)), SEVERITY[severity], 2.4 if severity == "fail" else 1.8)
+
+
+def _upper(band, column):
+    """The upper edge that belongs to a band's lower one (rows.Row)"""
+    return band[:, column + band.shape[1] // 2]
+
+
+def _draw_band(surface, places, row, y, time, low, high):
+    """What the draws of a study lie in, as far as poses are reached."""
+    for t, below, above in pieces(time, np.isfinite(low), low, high):
+        if len(t) > 1:
+            edges = [thinned(places.x(t), height_of(row, y, v)) for v in (below, above)]
+            surface.wash(np.vstack([edges[0], edges[1][::-1]]))
 
 
 def _draw_shortage(surface, places, row, y, time, ceiling, speed):

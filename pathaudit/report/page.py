@@ -10,6 +10,7 @@ from .noted import for_view
 from .scene import scene
 from .script import joined_modules, style_sheet
 from .still import svg_picture
+from .studied_html import study_html
 
 _POLICY = "default-src 'none'; script-src 'unsafe-inline'; style-src 'unsafe-inline'; img-src data:; base-uri 'none'; form-action 'none'"
 
@@ -35,9 +36,9 @@ render({ model, el: document.getElementById("live") }).catch(() => document.body
 """
 
 
-def one_page(audit, notes=(), compared=None):
-    """The whole page as a string. notes: placed notes, all of their texts; compared: the audit Against an earlier report."""
-    shown = scene(audit)
+def one_page(audit, notes=(), compared=None, study=None):
+    """The whole page as a string. notes: placed notes, all of their texts; compared: the audit Against an earlier report; study: of it under tolerances."""
+    shown = scene(audit, study=study)
     block, layout = shown.packed()
     facts, told = _json({**shown.facts, "layout": layout}), _json([for_view(placed, audit) for placed in notes])
     title = f"{audit.verdict.upper()}: {audit.cell.name}"
@@ -54,7 +55,7 @@ def one_page(audit, notes=(), compared=None):
 <div id="live"></div>
 <div class="pa-still pa-picture">{svg_picture(shown, title=False, notes=notes)}</div>
 <div class="pa-still"><h2>Findings</h2><div class="pa-wide">{tables.findings_table(audit)}</div></div>
-{_notes(audit, notes)}{_rest(audit)}
+{_notes(audit, notes)}{study_html(study) if study else ""}{_rest(audit)}
 <script type="application/json" id="facts">{facts}</script>
 <script type="application/json" id="notes">{told}</script>
 <script type="text/plain" id="block">{base64.b64encode(block).decode()}</script>

@@ -10,7 +10,8 @@ import numpy as np
 
 @dataclass(frozen=True)
 class Row:
-    """One lane. `lines` are (array name, column, style), style "main", "ceiling" or "before"; the main line comes last.
+    """One lane. `lines` are (array name, column, style), style "main", "ceiling", "before" or "band"; the main line comes last.
+    Of a band, `column` is its lower edge; the upper one stands half of the array's columns further on.
 
     A bound is (value, severity); bad: the side of the bounds that is flagged, "above", "below" or "outside" (beyond the nearer end).
     ticks: (value, text) beside the row; word: what is said in a lane that has nothing to draw.
@@ -55,7 +56,7 @@ def rows_of(arm, thresholds, arrays, applied=False):
 
     arrays: what the scene draws, by name; applied: the factor is in force already.
     """
-    return (*_speed_lanes(arm, thresholds, arrays), _sigma_row(thresholds, arrays["sigma_min"]), _speed_row(thresholds, arrays),
+    return (*_speed_lanes(arm, thresholds, arrays), _sigma_row(thresholds, arrays), _speed_row(thresholds, arrays),
             _factor_row(), *_travel_lanes(arm, thresholds, arrays["travel_percent"]), *_acceleration_lanes(arm, thresholds, arrays))
 
 
@@ -64,7 +65,8 @@ def groups_of(arm, thresholds, arrays, findings, applied=False):
     names, n = arm.joint_names, arm.n
     marked = {row_index(finding, names) for finding in findings}
     warn, fail = 100 * thresholds.speed_share_warn, 100 * thresholds.speed_share_fail
-    head = f"Joints: percent of speed limit (warn {warn:g}, limit {fail:g})"
+    band = "; band: 90 % of the draws" if "band_share_percent" in arrays else ""
+    head = f"Joints: percent of speed limit (warn {warn:g}, limit {fail:g}){band}"
     joints = tuple(Group(name, (n + 3 + j, j, 2 * n + 3 + j), j, head, not marked & {n + 3 + j, 2 * n + 3 + j}) for j, name in enumerate(names))
     dotted = "as programmed" if "before_speed_mm_s" in arrays else "as suggested" if "suggested_speed_mm_s" in arrays else ""
     speed = "Tool speed, mm/s; dashed: most possible" + (f"; dotted: {dotted}" if dotted else "")
@@ -99,6 +101,8 @@ def _share_lane(title, name, arrays, warn, fail):
     names = [known for known in (f"before_{name}", name) if known in arrays]
     high = np.clip(1.08 * max(_most(arrays[known], 0.0) for known in names), 1.25 * limit, 2.0 * limit)
     lines = tuple((known, 0, "main" if known == name else "before") for known in names)
+    if f"band_{name}" in arrays:
+        lines, high = ((f"band_{name}", 0, "band"), *lines), np.clip(1.08 * _most(arrays[f"band_{name}"], 0.0), high, 2.0 * limit)
     return Row(title, "%", lines, 0.0, float(high), 24, ((100 * warn, "warn"), (100 * fail, "fail")))
 
 
@@ -122,13 +126,16 @@ def _travel_lanes(arm, thresholds, travel):
                   ((near, "warn"), (100.0 - near, "warn"), (0.0, "fail"), (100.0, "fail")), "outside")
 
 
-def _sigma_row(thresholds, sigma):
+def _sigma_row(thresholds, arrays):
+    sigma, band = arrays["sigma_min"], arrays.get("band_sigma_min")
+    every = sigma if band is None else np.concatenate([sigma, band.ravel()])
+    lines = () if band is None else (("band_sigma_min", 0, "band"),)
     warn, fail = thresholds.sigma_min_warn, thresholds.sigma_min_fail
     scale = fail or warn or 0.02
-    low = np.clip(_least(sigma, scale), scale / 30, scale / 2)
-    high = max(1.3 * _most(sigma, warn), 2 * warn, 2 * scale)
+    low = np.clip(_least(every, scale), scale / 30, scale / 2)
+    high = max(1.3 * _most(every, warn), 2 * warn, 2 * scale)
     ticks = ((warn, f"warn {warn:g}"), (fail, f"fail {fail:g}"))
-    return Row("sigma_min", "", (("sigma_min", 0, "main"),), float(low), float(high), 56, ((warn, "warn"), (fail, "fail")), "below",
+    return Row("sigma_min", "", (*lines, ("sigma_min", 0, "main")), float(low), float(high), 56, ((warn, "warn"), (fail, "fail")), "below",
                log=True, digits=3, ticks=ticks)
 
 

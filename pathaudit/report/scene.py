@@ -48,11 +48,12 @@ def _rounded(block, bits):
     return np.where(np.isfinite(block), (words + np.uint32(1 << (bits - 1))) & mask, words)
 
 
-def scene(audit, most=MOST_SAMPLES, *, applied=None, before=None):
+def scene(audit, most=MOST_SAMPLES, *, applied=None, before=None, study=None):
     """The Scene of an audit: at most `most` samples, with every peak and every finding's worst sample among them.
 
     applied: the Retiming that made this audit, where it is one of retimed times; its factor is shown instead of a suggestion's.
     before: the Audit of the same poses as programmed, to be drawn with it; sample for sample the same pose.
+    study: of this audit under the tolerances of its cell (spread/study.py), to be drawn as bands.
     """
     again = applied or audit.suggestion
     full = _full_arrays(audit, again, applied is not None)
@@ -61,10 +62,21 @@ def scene(audit, most=MOST_SAMPLES, *, applied=None, before=None):
     kept = _kept(audit, full, most)
     arrays = {"sample": kept.astype(float), **{name: values[kept] for name, values in full.items()}}
     cell = audit.cell
+    if study is not None and study.dimensions:
+        arrays |= _band_arrays(study, kept)
     arrays["joints"] = audit.joints[kept]
     arrays["path_m"] = audit.path.position[kept] @ cell.part[:3, :3].T + cell.part[:3, 3]
     arrays = {name: np.ascontiguousarray(values, dtype=np.float32) for name, values in arrays.items()}
-    return Scene(plain(_facts(audit, arrays, again, applied is not None)), arrays)
+    facts = _facts(audit, arrays, again, applied is not None)
+    if "band_sigma_min" in arrays:
+        facts["spread"] = spread_words(study)
+    return Scene(plain(facts), arrays)
+
+
+def spread_words(study):
+    """What the bands are, in a sentence."""
+    fail, many = study.chance("fail"), f"{study.draws:,} draws of {len(study.dimensions)} toleranced dimension{'s' * (len(study.dimensions) > 1)}"
+    return f"Bands: 90 % of {many}, at each place by itself. Of the draws {100 * fail.share:.3g} % fail (95 % interval {100 * fail.low:.3g} to {100 * fail.high:.3g} %)."
 
 
 def _full_arrays(audit, again, is_applied):
@@ -101,6 +113,14 @@ def _before_arrays(before):
         "before_acceleration_percent": 100 * rates.acceleration_share,
         "before_speed_mm_s": 1e3 * rates.tool_speed,
     }
+
+
+def _band_arrays(study, kept):
+    """The edges of the bands at the kept samples: lower ones in the first half of the columns, upper ones in the second; NaN where poses are not reached."""
+    bands = study.bands.at(kept)
+    share, sigma = 100 * bands.speed_share[[0, 2]], bands.sigma_min[[0, 2]]
+    return {"band_share_percent": np.where(np.isfinite(share).all(axis=0), share, np.nan).transpose(1, 0, 2).reshape(len(kept), -1),
+            "band_sigma_min": np.where(sigma[0] > 0, sigma, np.nan).T}
 
 
 def _kept(audit, full, most):

@@ -20,17 +20,27 @@ def study_text(study) -> str:
     return "\n\n".join(part for part in parts if part) + "\n"
 
 
-def _head(study):
+def verdict_words(study) -> str:
+    """As stated, and the chances of failing and of a warning"""
+    line = f"as stated {study.verdict.upper()}"
+    return f"{line}; {_percent(study.chance('fail'))} fail, {_percent(study.chance('warn'))} warn" if study.dimensions else line
+
+
+def given_words(study) -> str:
+    """What was drawn"""
     audit, stated = study.audit, len(study.dimensions)
-    line = f"STUDY  {os.path.basename(audit.path.file)} in {audit.cell.name}: as stated {study.verdict.upper()}"
     if stated:
-        line += f"; {_percent(study.chance('fail'))} fail, {_percent(study.chance('warn'))} warn"
         given = f"{study.draws:,} draws of {stated} dimension{'s' * (stated > 1)}, seed {study.seed}. In brackets: the 95 % interval."
     else:
         given = "Nothing is stated under [tolerance] in the cell, so there are no chances to tell: only how far off it may be."
     if audit.verdict != study.verdict:
         given += f" The audit of the cell as stated says {audit.verdict.upper()}, for what lies between the samples."
-    return f"{line}\n{_indented(given)}"
+    return given
+
+
+def _head(study):
+    line = f"STUDY  {os.path.basename(study.audit.path.file)} in {study.audit.cell.name}: {verdict_words(study)}"
+    return f"{line}\n{_indented(given_words(study))}"
 
 
 def _percent(chance):
@@ -41,16 +51,21 @@ def _percents(share):
     return f"{100.0 * share:.2f}" if 0.0 < share < 0.1 else f"{100.0 * share:.1f}"
 
 
+def chance_rows(study) -> list:
+    """(severity, finding, chance, as stated, at the worst) of what is flagged in any draw"""
+    rows = []
+    for i, w in enumerate(study.watched):
+        severity = next((name for name in ("fail", "warn") if study.chance_of(i, name).draws), None)
+        if severity:
+            worst = study.levels[study.worst_draw(i), i]
+            rows.append((severity.upper(), study.name(i), _percent(study.chance_of(i, severity)), _level(w, study.nominal[i]), _level(w, worst)))
+    return rows
+
+
 def _chances(study):
     if not study.dimensions:
         return ""
-    rows = []
-    for i, w in enumerate(study.watched):
-        for severity in ("fail", "warn"):
-            chance = study.chance_of(i, severity)
-            if chance.draws:
-                rows.append(f"{severity.upper():4s}  {study.name(i)}: {_percent(chance)}; as stated {_level(w, study.nominal[i])}, at the worst {_level(w, study.levels[study.worst_draw(i), i])}")
-                break
+    rows = [f"{severity:4s}  {name}: {chance}; as stated {stated}, at the worst {worst}" for severity, name, chance, stated, worst in chance_rows(study)]
     return "\n".join(["Chance of each finding", *map(_indented, rows or ["No draw is flagged."])])
 
 
@@ -58,35 +73,50 @@ def _level(w, level):
     return f"{significant(level * w.scale, 4)} {w.unit}".strip() if np.isfinite(level) else "not reached"
 
 
-def _first(study):
-    """What to measure better first."""
-    rows = [s for s in study.sensitivities() if s.share > 0.0]
-    if not rows:
-        return ""
+def sensitivity_rows(study) -> list:
+    """(dimension, share of the variance, slope, stated) for the deciding finding, the most telling first"""
+    w = study.watched[study.deciding]
+    return [(s.dimension.name, f"{100 * s.share:.1f} %", f"{s.slope:+.3g} {w.unit} per {s.dimension.unit}".replace("  ", " "), s.dimension.words)
+            for s in study.sensitivities() if s.share > 1e-6]  # fmt: skip
+
+
+def sensitivity_head(study) -> str:
+    return f"Measure better first, for {study.name(study.deciding)}, which is nearest to failing by how much it varies"
+
+
+def sensitivity_check(study) -> str:
+    """How far the slopes are to be believed"""
     i, w = study.deciding, study.watched[study.deciding]
-    width = max(len(s.dimension.name) for s in rows[:SHOWN])
-    told = [f"{s.dimension.name:{width}}  {100 * s.share:5.1f} % of the variance  {s.slope:+9.3g} {_per(w, s.dimension)}  stated {s.dimension.words}" for s in rows[:SHOWN]]
-    more = [f"and {len(rows) - SHOWN} more, together {100 * sum(s.share for s in rows[SHOWN:]):.1f} %"] if len(rows) > SHOWN else []
     check = f"Standard deviation {_level(w, study.spread[i])} over the draws, {_level(w, study.first_order[i])} to first order."
     if study.straight[i] < STRAIGHT:
         check += f" The slopes explain only {100 * max(study.straight[i], 0.0):.0f} % of the variance: rely on the draws, not on this list."
-    head = f"Measure better first, for {study.name(i)}, which is nearest to failing by how much it varies"
-    return "\n".join([head, *(f"      {line}" for line in told + more), _indented(check)])
+    return check
 
 
-def _per(w, dimension):
-    return f"{w.unit} per {dimension.unit}".strip()
+def _first(study):
+    rows = sensitivity_rows(study)
+    if not rows:
+        return ""
+    names, slopes = (max(len(row[k]) for row in rows[:SHOWN]) for k in (0, 2))
+    told = [f"{name:{names}}  {share:>7} of the variance   {slope:{slopes}}   stated {stated}" for name, share, slope, stated in rows[:SHOWN]]
+    more = [f"and {len(rows) - SHOWN} more; all stand in the JSON"] if len(rows) > SHOWN else []
+    return "\n".join([sensitivity_head(study), *(f"      {line}" for line in told + more), _indented(sensitivity_check(study))])
+
+
+def reserve_head(study) -> str:
+    until = {"pass": "before anything is flagged", "warn": "before it fails", "fail": "until it fails no more"}[study.verdict]
+    return f"How far off one dimension alone may be {until}"
+
+
+def reserve_rows(study) -> list:
+    """(dimension, to one side, to the other)"""
+    return [(r.dimension.name, _side(study, "-", r.minus, r.minus_by, r), _side(study, "+", r.plus, r.plus_by, r)) for r in study.reserves]
 
 
 def _alone(study):
-    if not study.reserves:
-        return ""
-    width, rows = max(len(r.dimension.name) for r in study.reserves), []
-    for r in study.reserves:
-        low, high = _side(study, "-", r.minus, r.minus_by, r), _side(study, "+", r.plus, r.plus_by, r)
-        rows.append(f"      {r.dimension.name:{width}}  {low:38}  {high}".rstrip())
-    head = {"pass": "before anything is flagged", "warn": "before it fails", "fail": "until it fails no more"}[study.verdict]
-    return "\n".join([f"How far off one dimension alone may be {head}", *rows])
+    rows = reserve_rows(study)
+    width, low = (max(len(row[k]) for row in rows) for k in (0, 1))
+    return "\n".join([reserve_head(study), *(f"      {name:{width}}   {minus:{low}}   {plus}" for name, minus, plus in rows)])
 
 
 def _side(study, sign, value, by, reserve):
@@ -101,7 +131,8 @@ def _down(value):
     return significant(np.floor(value / unit + 1e-9) * unit, 3)
 
 
-def _together(study):
+def together_lines(study) -> list:
+    """Sentences on several dimensions at once"""
     said = []
     if study.all_at_once:
         w = study.all_at_once
@@ -111,13 +142,15 @@ def _together(study):
     if study.worst:
         w = study.worst
         there = ", ".join(f"{d.name.removeprefix('part ')} {value:+.3g} {d.unit}" for d, value in zip(w.dimensions, w.values, strict=True))
-        said.append(f"The worst direction of where the part stands: {there}; then {study.name(w.by)} (audited in full: {w.audited.upper()}). {_sizes(w)}")
+        sizes = ", ".join(f"{d.size:g} {d.unit}" for d in w.dimensions)
+        said.append(f"The worst direction of where the part stands: {there}; then {study.name(w.by)} (audited in full: {w.audited.upper()}). "
+                    f"That is {_down(w.size)} times {sizes}, taken together as the root of the sum of squares.")  # fmt: skip
+    return said
+
+
+def _together(study):
+    said = together_lines(study)
     return "\n".join(["Together", *map(_indented, said)]) if said else ""
-
-
-def _sizes(w):
-    sizes = ", ".join(f"{d.size:g} {d.unit}" for d in w.dimensions)
-    return f"That is {_down(w.size)} times {sizes}, taken together as the root of the sum of squares."
 
 
 def _meaning(study):

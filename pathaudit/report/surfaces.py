@@ -8,6 +8,7 @@ import numpy as np
 
 INK, SOFT, QUIET, FAINT, LANE, TUBE, GROUND = "#1b1f24", "#5b6168", "#9a9fa4", "#dcdee0", "#f4f4f5", "#d2d4d6", "#ffffff"
 LINE, GREEN, SEVERITY = "#0072b2", "#009e73", {"pass": "#009e73", "warn": "#b97f00", "fail": "#d55e00"}     # Okabe and Ito, the orange darker
+WASH = "#b3d5e8"     # the line's colour, three tenths of it on the ground
 STRIPES = {"warn": (8, (1,)), "fail": (5, (1, -1)), "gap": (8, (-1,))}       # spacing, directions of the stripes
 
 
@@ -27,6 +28,9 @@ class Svg:
 
     def area(self, points, kind, colour):
         self._parts.append(f'<path d="{_steps(np.asarray(points, dtype=float))}z" fill="url(#{self._pattern(kind, colour)})"/>')
+
+    def wash(self, points):
+        self._parts.append(f'<path d="{_steps(np.asarray(points, dtype=float))}z" fill="{WASH}"/>')
 
     def rect(self, x, y, w, h, fill="none", stroke="none", width=1.0, dash=()):
         dashes = f' stroke-dasharray="{" ".join(map(str, dash))}"' if dash else ""
@@ -103,6 +107,9 @@ class Bitmap:
         mask = Image.new("1", tuple((high - low).tolist()))
         ImageDraw.Draw(mask).polygon([tuple(p) for p in (large - low).tolist()], fill=1)
         self._paste(low, high - low, kind, colour, 1.0, mask)
+
+    def wash(self, points):
+        self._draw.polygon([tuple(p) for p in (self.LARGE * np.asarray(points, dtype=float)).tolist()], fill=WASH)
 
     def rect(self, x, y, w, h, fill="none", stroke="none", width=1.0, dash=()):
         if fill != "none":

@@ -25,6 +25,7 @@ export function headPanel(ui) {
   function show() {
     const facts = ui.facts(), again = facts.retiming;
     const said = [facts.file, `${facts.samples.toLocaleString("en")} samples`, `${fixed(facts.duration_s, 2)} s`, `${fixed(facts.length_mm, 0)} mm`];
+    if (facts.spread) said.push(facts.spread);
     if (facts.shown < facts.samples) said.push(`${facts.shown.toLocaleString("en")} drawn, every peak kept`);
     const needed = again.feasible && again.slowest_percent < 99.95;
     const retiming = again.applied ? `Shown at other speeds than programmed. ${again.why}`

@@ -114,6 +114,7 @@ function drawBounds(context, place, at, colours) {
 
 // A line in its own colour, drawn again thicker and in the severity's colour where it lies beyond a bound.
 function drawLine(context, place, at, colours, data, [name, column, style]) {
+  if (style === "band") return drawSpread(context, place, at, colours, data[name], column);
   const { row, y, height } = at;
   const path = trace(place, data[name][column], (value) => heightOf(at, clamp(value, row.low, row.high)));
   const zone = (from, to, colour, width, dash = []) => {
@@ -136,6 +137,26 @@ function drawLine(context, place, at, colours, data, [name, column, style]) {
     if (above) zone(y - 1, edge, colours[severity], width);
     else zone(edge, y + height + 1, colours[severity], width);
   }
+}
+
+// Between a band's lower edge and its upper one, half of the columns further on, as far as poses are reached.
+function drawSpread(context, place, at, colours, columns, column) {
+  const { samples: [first, last], axis: { places } } = place, { row, y, height } = at, lows = columns[column], highs = columns[column + columns.length / 2];
+  const spot = (values, k) => [place.x(places[k]), heightOf(at, clamp(values[k], row.low, row.high))];
+  context.save();
+  clipTo(context, place, y, y + height);
+  context.fillStyle = colours.line;
+  context.globalAlpha = 0.3;
+  context.beginPath();
+  for (let i = first, start = first; i <= last + 1; i++) {
+    if (i <= last && Number.isFinite(lows[i])) continue;
+    if (i > start) context.moveTo(...spot(lows, start));
+    for (let k = start; k < i; k++) context.lineTo(...spot(highs, k));
+    for (let k = i - 1; k >= start; k--) context.lineTo(...spot(lows, k));
+    start = i + 1;
+  }
+  context.fill();
+  context.restore();
 }
 
 // Where the tool speed lies above the largest possible: what is under the one and over the other.

@@ -37,10 +37,10 @@ class Timeline(anywidget.AnyWidget):
     status = traitlets.Unicode().tag(sync=True)
     cursor = traitlets.Int().tag(sync=True, echo_update=False)
 
-    def __init__(self, audit, shown=None, still=None, noting=None):
-        """shown: the audit's Scene, where it has been made already; still: the StillForm beside this one, told of every change."""
-        self.session, self.still, self.noting = Session(audit, self), still, noting or Noting(audit)
-        super().__init__(**_state(shown or scene(audit)), trial=trial_facts(self.session), notes=self.noting.told())
+    def __init__(self, audit, shown=None, still=None, noting=None, study=None):
+        """study: of the audit under tolerances, whose bands are drawn while it runs as programmed; shown: the audit's Scene, where it has been made already; still: the StillForm beside this one, told of every change."""
+        self.session, self.still, self.noting, self.study = Session(audit, self), still, noting or Noting(audit), study
+        super().__init__(**_state(shown or scene(audit, study=study)), trial=trial_facts(self.session), notes=self.noting.told())
         self.on_msg(self._on_message)
 
     def close(self):
@@ -55,8 +55,9 @@ class Timeline(anywidget.AnyWidget):
     # ---- what the session tells (session.Listener)
 
     def drawn(self, variant):
-        before = None if variant.retiming is None else self.session.given
-        return _state(scene(variant.audit, applied=variant.retiming, before=before))
+        if variant.retiming is None:
+            return _state(scene(variant.audit, study=self.study))
+        return _state(scene(variant.audit, applied=variant.retiming, before=self.session.given))
 
     def shown(self, variant, drawing):
         with self.hold_sync():
@@ -139,10 +140,11 @@ def _state(shown):
     return {"facts": {**shown.facts, "layout": layout}, "block": block}
 
 
-def show(audit, notes=None):
+def show(audit, notes=None, study=None):
     """Display an audit in the running notebook cell: live timeline, picture and tables; plain text where there is no notebook.
 
-    notes: the file that holds the notes; by default beside the notebook, named like the path's file, and made by the first note. Gives the Desk, on which the same can be tried from Python as with the mouse.
+    notes: the file that holds the notes; by default beside the notebook, named like the path's file, and made by the first note.
+    study: of this audit under tolerances, drawn as bands. Gives the Desk, on which the same can be tried from Python as with the mouse.
     """
     from IPython import get_ipython
     from IPython.display import display
@@ -154,9 +156,9 @@ def show(audit, notes=None):
         display({"text/plain": summary(audit, noting.placed)}, raw=True)
     if not hasattr(shell, "kernel"):
         return Desk(Session(audit))
-    shown = scene(audit)
+    shown = scene(audit, study=study)
     still = StillForm(shell)
-    timeline = Timeline(audit, shown, still, noting)
+    timeline = Timeline(audit, shown, still, noting, study)
     _replace(shell, timeline)
     display({"application/vnd.jupyter.widget-view+json": {"version_major": 2, "version_minor": 0, "model_id": timeline.model_id},
              "text/plain": _line(audit)}, raw=True)

@@ -13,7 +13,7 @@ SAME_S = 1e-6
 MOST_SEGMENTS = 20_000  # of the present path that the earlier places are compared with at once
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, repr=False)
 class Against:
     """An audit compared with an earlier report. was, now: the verdicts; inputs: what is given otherwise, in words, one text a key.
 
@@ -43,7 +43,7 @@ class Against:
         """Whether nothing that is compared differs."""
         return not (self.inputs or self.path_changed or self.was != self.now or any(c.what != "same" for c in self.findings))
 
-    def __str__(self):
+    def __repr__(self):
         from .report.compared import compared_text
 
         return compared_text(self)

@@ -267,7 +267,7 @@ def write_tables(folder):
         (folder / name).write_bytes(converted(read_path(folder / "bead.jsonl"), kind).content)
 
 
-NOTEBOOK_NAMES = ("01-check-a-seam.ipynb", "02-try-other-speeds.ipynb", "03-hand-over-with-notes.ipynb")
+NOTEBOOK_NAMES = ("01-check-a-seam.ipynb", "02-try-other-speeds.ipynb", "03-hand-over-with-notes.ipynb", "06-a-verdict-that-holds.ipynb")
 
 
 def run_notebook(folder, name):

@@ -1,16 +1,22 @@
-"""Makes the demo's notes: those of two people on one seam, each with a copy of the same file.
+"""Makes what people have written into the demo: the notes of two of them on one seam, each with a copy of the same file, and a signed report.
 
 `python tests/make_notes.py` writes them to the demo and to notebooks/. Names, dates and ids are fixed, so that the files come out the same each time.
 """
 
+import contextlib
+import json
 from dataclasses import replace
+from datetime import UTC, datetime
 
 from make_demo import DEMO, NOTEBOOKS
 
 import pathaudit as pa
+from pathaudit.earlier import earlier_from, signed
 from pathaudit.notes import Notes, new_note, write_notes
+from pathaudit.report.tables import check_json, report_text
 
 DAY, NIGHT = "handover.notes.toml", "handover-night.notes.toml"
+SIGNED = "seam-signed.json"
 LIND, SATO = "R. Lind", "M. Sato"
 
 
@@ -51,12 +57,21 @@ def day_notes_later(day):
     return day.put(day.by_id["d2976e40"].edit("Fails on this bench. Fixture lowered by 60 mm on Tuesday: audit again.", LIND, "2026-03-03T06:35:00Z"))
 
 
+def signed_report():
+    """The report of the moved fixture, as it was signed."""
+    with contextlib.chdir(DEMO):
+        audit = pa.audit(pa.read_path("seam.csv"), pa.read_cell("cell-moved.toml"))
+    when = datetime(2026, 3, 4, 7, 10, tzinfo=UTC)
+    return report_text(signed(earlier_from(json.loads(check_json(audit))), LIND, "Fixture lowered; first run in manual reduced-speed mode.", when).values)
+
+
 def main():
     day = day_notes()
     for folder in (DEMO, NOTEBOOKS):
         for name, notes in ((DAY, day_notes_later(day)), (NIGHT, night_notes(day))):
             (folder / name).unlink(missing_ok=True)
             write_notes(folder / name, notes)
+        (folder / SIGNED).write_text(signed_report(), encoding="utf-8")
 
 
 if __name__ == "__main__":

@@ -48,7 +48,8 @@ def test_the_notebook_runs_and_says_what_is_stored(run_again):
 
 def test_audits_show_themselves_in_three_outputs(run_again):
     shown = [cell for cell in code_cells(run_again[1]) if any("application/vnd.jupyter.widget-view+json" in o.get("data", {}) for o in cell["outputs"])]
-    assert shown
+    asked = [cell for cell in code_cells(run_again[1]) if re.search(r"^(audit|moved)$|pa\.show\(", "".join(cell["source"]), re.M)]
+    assert shown == asked
     for cell in shown:
         widget, picture, tables = cell["outputs"]
         assert "text/plain" in widget["data"]

@@ -18,7 +18,7 @@ def summary(audit, notes=(), compared=None) -> str:
     """Verdict, what changed since an earlier report, findings with where, how much and why, the suggested retiming, placed notes, what was not
     judged, cautions."""
     parts = [_head(audit), compared_text(compared) if compared else "", *(_finding(audit, finding) for finding in audit.finding_list)]
-    parts += [_retiming(audit), _between(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
+    parts += [_retiming(audit), between_text(audit), _made(audit), notes_text(notes, audit), _not_judged(audit), _cautions(audit)]
     return "\n\n".join(part for part in parts if part) + "\n"
 
 
@@ -86,7 +86,7 @@ def _made(audit):
     return "\n".join(["How the path was made", *map(_indented, audit.path.made)]) if audit.path.made else ""
 
 
-def _between(audit):
+def between_text(audit) -> str:
     """What is certain between the samples."""
     proof = audit.proof
     if not proof.known.any():

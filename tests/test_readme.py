@@ -4,6 +4,7 @@ import re
 import shutil
 import subprocess
 import sys
+import tomllib
 from dataclasses import fields
 
 import pytest
@@ -131,7 +132,10 @@ def test_the_path_example_reads(in_demo):
 
 
 def test_the_cell_examples_read(in_demo):
-    cell, rows_arm = blocks("toml")
+    cell, tolerance, rows_arm = blocks("toml")
+    stated = in_demo / "stated.toml"
+    stated.write_text((in_demo / "cell.toml").read_text("utf-8") + "\n" + tolerance, "utf-8")
+    assert {d.key for d in pa.read_cell(stated).tolerances.dimensions} == set(tomllib.loads(tolerance)["tolerance"])
     (in_demo / "example.toml").write_text(cell)
     (in_demo / "rows.toml").write_text(rows_arm)
     read = pa.read_cell("example.toml")

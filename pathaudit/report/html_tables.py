@@ -59,7 +59,7 @@ def findings_table(audit):
     if not rows:
         return "<div>No findings.</div>"
     head = ("", "", "finding", "from - to, s", "from - to, mm", "worst", "why")
-    return table(head, rows, (_NUMBER, _SHORT, _SHORT, _NUMBER, _NUMBER, _SHORT))
+    return table(head, rows, (_NUMBER, _SHORT, _LEFT, _NUMBER, _NUMBER, _LEFT))
 
 
 def _needed(again):

@@ -25,7 +25,7 @@ export function mount(root, ask, onCursor) {
   const listeners = { cursor: [], chosen: [], shown: [], factor: [] };
   const tell = (event, ...values) => listeners[event].forEach((listener) => listener(...values));
   const at = (sample) => nearest(state.data.sample[0], sample);
-  const status = element("div", { class: "pa-status", role: "status" });
+  const status = element("div", { class: ask ? "pa-status pa-room" : "pa-status", role: "status" });
   const keys = keyTable();
 
   // What the parts share; samples are the path's own numbers, of which only some are kept and drawn.
@@ -87,7 +87,7 @@ export function mount(root, ask, onCursor) {
   const head = headPanel(ui), readout = readoutPanel(), arm = armPanel(ui, () => repaint(true));
   const trial = trialPanel(ui), findings = findingsPanel(ui, (k) => goTo(k, true)), notes = notesPanel(ui);
   root.classList.add("pa");
-  root.replaceChildren(head.node, readout.node, tools, element("div", { class: "pa-main" }, rows, arm.node), trial.node, findings.node, notes.node, status);
+  root.replaceChildren(head.node, readout.node, status, tools, element("div", { class: "pa-main" }, rows, arm.node), trial.node, findings.node, notes.node);
 
   function show(facts, data) {
     const sample = state.data && ui.sample(), ends = state.data && span.zoomed() && state.span.map(sampleAt);

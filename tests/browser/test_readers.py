@@ -126,6 +126,7 @@ def test_what_was_saved_with_state_is_drawn_and_says_that_nobody_answers(lab, re
     page = opened(lab, reader, "state.ipynb")
     before = hosts.painted(page)
     assert "no kernel" in page.locator(".pa-status").inner_text()
+    assert page.locator(".pa").evaluate("(root) => getComputedStyle(root.parentNode, '::before').content") == "none"
     page.locator(".pa-rows").focus()
     page.keyboard.press("Home")
     hosts.painted(page, before)

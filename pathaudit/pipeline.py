@@ -93,9 +93,15 @@ def audit(path: Path, cell: Cell, *, start=None, start_reason="", told=lambda wo
     told("following the path")
     motion = follow(path, cell, start=start, start_reason=start_reason)
     told("measuring every sample")
-    rates = measure(motion)
+    return judge(measure(motion), told)
+
+
+def judge(rates: Rates, told=lambda words: None) -> Audit:
+    """The audit of measures that are there already: what is flagged, and what is proven between the samples."""
     told("judging")
     found, not_judged = findings.find(rates)
+    told("looking between the samples")
     proof = prove(rates)
     found = findings.in_order([*found, *hidden.find(proof, found)])
-    return Audit(path, cell, motion, rates, found, not_judged, proof)
+    motion = rates.motion
+    return Audit(motion.path, motion.cell, motion, rates, found, not_judged, proof)

@@ -27,18 +27,37 @@ EVEN_ENOUGH = 0.7  # an even factor below this costs so much that the local reti
 class Retiming:
     """Times for the same poses. time (N,) s from the path's own start; factor (N,) fraction of the programmed speed, in (0, 1].
 
-    style "even", "local" or "by hand"; feasible: the joint speed and acceleration limits hold everywhere; why: a sentence.
-    speed_share, acceleration_share (N, n) at the new times, with the peaks between samples told at the nearer one.
+    style "even", "local" or "by hand"; possible: nothing stands in the way that no times can change; why: a sentence; again: the measures at the new times.
     """
 
     rates: Rates
     style: str
     time: np.ndarray
     factor: np.ndarray
-    feasible: bool
+    possible: bool
     why: str
-    speed_share: np.ndarray
-    acceleration_share: np.ndarray
+    again: Rates
+
+    @cached_property
+    def feasible(self) -> bool:
+        """Whether the joint speed and acceleration limits hold everywhere. A retiming by hand promises nothing: it is measured."""
+        if not self.possible or self.style != "by hand":
+            return self.possible
+        return bool(max(np.nan_to_num(self.speed_share).max(), np.nan_to_num(self.acceleration_share).max()) <= 1.0)
+
+    @cached_property
+    def _shares(self):
+        return tuple(map(frozen, whole_shares(self.again)))
+
+    @property
+    def speed_share(self) -> np.ndarray:
+        """(N, n) at the new times, with the peaks between samples told at the nearer one"""
+        return self._shares[0]
+
+    @property
+    def acceleration_share(self) -> np.ndarray:
+        """(N, n) likewise"""
+        return self._shares[1]
 
     @property
     def duration(self) -> float:
@@ -97,14 +116,14 @@ class Retiming:
         return replace(self.rates.motion.path, time=self.time)
 
     def audit(self, told=lambda words: None):
-        """The retimed path audited with the same cell, starting in the same posture. told: as `pipeline.audit` takes it."""
-        from .pipeline import audit
+        """The retimed path audited with the same cell, in the same posture. told: as `pipeline.audit` takes it.
 
-        motion = self.rates.motion
-        if not motion.reached[0]:
-            return audit(self.path(), motion.cell, told=told)
-        reason = "Starts in the posture of the audit that was retimed."
-        return audit(self.path(), motion.cell, start=motion.closest[0], start_reason=reason, told=told)
+        The joints are those of the audit that was retimed: they follow from the poses, whatever the times are.
+        """
+        from .pipeline import judge
+
+        motion = replace(self.again.motion, start_reason="Starts in the posture of the audit that was retimed.")
+        return judge(replace(self.again, motion=motion), told)
 
 
 def retime(rates: Rates, style=None) -> Retiming:
@@ -168,21 +187,25 @@ class Plan:
     speed: np.ndarray
     bend: np.ndarray
     limit: np.ndarray
-    ceiling: np.ndarray
-    whole: tuple
-    hardest: np.ndarray
 
     @classmethod
     def of(cls, rates):
         arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
-        speed, acceleration = whole_shares(rates)
-        worst = np.nan_to_num(speed).max(axis=1) / min(limits.speed_share_fail, 1.0)
-        ceiling = np.where(worst > 1.0, (AIM / np.maximum(worst, 1.0)) ** 2, 1.0)
         limit = np.where(np.isnan(arm.acceleration), np.inf, arm.acceleration * min(limits.acceleration_share_fail, 1.0) * AIM)
-        return cls(
-            rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit, ceiling,
-            (speed, acceleration), np.nan_to_num(acceleration * arm.acceleration),
-        )  # fmt: skip
+        return cls(rates, rates.motion.path.time, np.nan_to_num(rates.joint_speed), np.nan_to_num(rates.joint_acceleration), limit)
+
+    @cached_property
+    def whole(self):
+        return whole_shares(self.rates)
+
+    @cached_property
+    def ceiling(self):
+        worst = np.nan_to_num(self.whole[0]).max(axis=1) / min(self.rates.motion.cell.thresholds.speed_share_fail, 1.0)
+        return np.where(worst > 1.0, (AIM / np.maximum(worst, 1.0)) ** 2, 1.0)
+
+    @cached_property
+    def hardest(self):
+        return np.nan_to_num(self.whole[1] * self.rates.motion.cell.arm.acceleration)
 
     @property
     def needed(self):
@@ -269,7 +292,7 @@ class Plan:
         motion = self.rates.motion
         untouched = bool((b == 1.0).all())
         time = self.u if untouched else self.times(b)
-        speed, acceleration = self.whole if untouched else whole_shares(self.measured(time))
+        again = self.rates if untouched else self.measured(time)
         hindered = []
         lost = int((~motion.reached).sum())
         if lost:
@@ -283,9 +306,7 @@ class Plan:
             why = f"{why} What other times do not change: {stays}."
         if hindered:
             why = f"No retiming can help: {'; '.join(hindered)}. {why}"
-        return Retiming(
-            self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, frozen(speed), frozen(acceleration)
-        )
+        return Retiming(self.rates, style, frozen(time), frozen(np.sqrt(b)), not hindered, why, again)
 
     def untouched_by_times(self):
         """What fails at any speed, in words."""

@@ -56,3 +56,14 @@ def test_an_unknown_style_is_refused():
     cell, joints = swaying(2)[:2]
     with pytest.raises(ValueError, match="'even', 'local' or None"):
         pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0]).retime("fast")
+
+
+def test_the_audit_of_new_times_is_that_of_the_retimed_path_on_its_own():
+    cell, joints = swaying(2)[:2]
+    programmed = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    for again in (programmed.retime("local"), programmed.retime("even")):
+        judged, alone = again.audit(), pa.audit(again.path(), cell, start=joints[0])
+        assert np.allclose(judged.joints, alone.joints, rtol=0, atol=1e-12) and np.array_equal(judged.time, alone.time)
+        for name in ("joint_speed", "joint_acceleration", "sigma_min", "tool_speed", "travel_left"):
+            assert np.allclose(getattr(judged.rates, name), getattr(alone.rates, name), rtol=1e-9, atol=1e-9, equal_nan=True), name
+        assert [(f.kind, f.joint, f.severity, f.first, f.last) for f in judged.finding_list] == [(f.kind, f.joint, f.severity, f.first, f.last) for f in alone.finding_list]

@@ -57,7 +57,7 @@ def test_a_change_is_told_step_by_step(session, ear, audit):
     session.change(SLOW).result(10)
     assert session.edits == SLOW == session.shown.edits and session.given is audit
     said = [entry[1] for entry in ear.heard if entry[0] == "told"]
-    assert said == ["", "finding the new times", "following the path", "measuring every sample", "judging", "drawing"]
+    assert said == ["", "finding the new times", "judging", "looking between the samples", "drawing"]
     assert ear.heard[0] == ("changed",) and ear.heard[-1] == ("shown", "drawing of 1")
 
 

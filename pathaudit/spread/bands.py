@@ -52,10 +52,12 @@ def kept_draws(draws) -> np.ndarray:
 
 def bands(sample, sigma, share) -> Bands:
     """Of sigma (M, K) and share (M, K, n), in which zero and infinity stand for what is not reached."""
-    return Bands(owned(sample), *(owned(_quantiles(values).astype(float)) for values in (sigma, share.max(axis=2), share)))
+    return Bands(owned(sample), *(owned(_quantiles(values).astype(float)) for values in (sigma, np.maximum.reduce([*np.moveaxis(share, 2, 0)]), share)))
 
 
 def _quantiles(values):
     """(3, ...): values that were drawn, not means of two of them, which infinity would spoil."""
     at = [min(len(values) - 1, int(np.ceil(share * len(values))) - 1) for share in SHARES]
-    return np.partition(values, at, axis=0)[at]
+    rows = np.ascontiguousarray(values.reshape(len(values), -1).T)
+    rows.sort(axis=1)  # a third of the time of finding the three alone
+    return rows[:, at].T.reshape(len(at), *values.shape[1:])

@@ -1,6 +1,6 @@
 """Many draws of a cell through the audit's own following, measures and bounds, at the samples of its path.
 
-A draw costs two kernel calls, which let other threads run; what remains is done for a few draws at once. A draw's numbers depend on nothing but
+A draw costs a kernel call or a few, which let other threads run; what remains is done for a few draws at once. A draw's numbers depend on nothing but
 the draw, so that any number of threads, processes or machines of one kind gives the same bits.
 """
 
@@ -10,6 +10,7 @@ import numpy as np
 
 from ..arm import Chain
 from ..findings import RULES, TRAVEL_SLACK
+from ..measures import task_jacobians
 from ..motion import pose_distance
 
 TOGETHER = 5_000  # samples of draws that are worked on at once: their arrays stay in a core's cache
@@ -65,7 +66,8 @@ def _shown(kind, slides):
 class Course:
     """All that a draw needs beside its chain, as plain arrays, so that it can be sent to another process.
 
-    keep (K,): the samples whose sigma_min and speed shares are kept.
+    keep (K,): the samples whose sigma_min and speed shares are kept. joints (N, n), jacobians (N, n, n), sigma (N,), weights (N, 4): the followed path of the cell as
+    stated, from which draws are solved; of no samples where it was not followed smoothly, or has not as many joints as its task has rows.
     """
 
     prismatic: np.ndarray
@@ -86,6 +88,10 @@ class Course:
     allow: np.ndarray
     watched: tuple
     keep: np.ndarray
+    joints: np.ndarray
+    jacobians: np.ndarray
+    sigma: np.ndarray
+    weights: np.ndarray
 
     @classmethod
     def of(cls, audit, keep=()) -> "Course":
@@ -99,7 +105,16 @@ class Course:
                   rates.twists(along, path.position, path.rotation)[0], motion.twist, motion.twist_rate, motion.closest[0], allow)  # fmt: skip
         # kernels take no read-only arrays, and a copy for every draw would cost as much as an eighth of its work
         return cls(np.array(cell.chain.prismatic), length, motion.rows, *(np.array(a, dtype=float, order="C") for a in arrays),
-                   watched(audit.rates), np.asarray(keep, dtype=int))  # fmt: skip
+                   watched(audit.rates), np.asarray(keep, dtype=int), *_known(audit, along))  # fmt: skip
+
+    def near(self, links, joints, rate, change, sigma) -> bool:
+        """Fill joints, rate, change (N, n) and sigma (N,) from the cell as stated; False where the path has to be followed anew."""
+        from ..kernels import draws
+
+        if not len(self.joints):
+            return False
+        path = self.position, self.rotation, self.twist, self.twist_rate
+        return draws.draw(Chain(links, self.prismatic), self.length, self.weights, path, self.joints, self.jacobians, self.sigma, joints, rate, change, sigma)
 
     def follow(self, links):
         """joints (N, n), NaN where not reached; closest (N, n); outcome (N,)"""
@@ -135,6 +150,18 @@ class Course:
         return speed, acceleration, measures[:, 0]
 
 
+def _known(audit, along):
+    """joints, jacobians, sigma_min and weights of the cell as stated, of no samples where draws cannot be solved from there"""
+    from ..kernels.draws import BEFORE, foretelling
+    from ..kernels.steps import REACHED
+
+    motion, n = audit.motion, audit.cell.arm.n
+    if n != motion.rows or (motion.outcome != REACHED).any():
+        return np.empty((0, n)), np.empty((0, n, n)), np.empty(0), np.empty((0, BEFORE))
+    jacobians = task_jacobians(motion, slice(None))
+    return tuple(np.array(a, dtype=float, order="C") for a in (motion.joints, jacobians, audit.rates.sigma_min, foretelling(along)))
+
+
 @dataclass(frozen=True, eq=False)
 class Judged:
     """levels (M, L) of what is watched in M draws; at the samples kept sigma (M, K), sigma_min, 0 where not reached, and share (M, K, n), the speed
@@ -155,42 +182,61 @@ def judge(course: Course, links, speed) -> Judged:
 def _few(course, links, speed):
     draws, samples, n = len(links), len(course.time), len(course.speed)
     joints, rate, change = (np.empty((draws, samples, n)) for _ in range(3))
-    sigma, outcome = np.empty((draws, samples)), np.empty((draws, samples), np.uint8)
+    sigma, outcome = np.empty((draws, samples)), np.zeros((draws, samples), np.uint8)
     for k in range(draws):
-        joints[k], closest, outcome[k] = course.follow(links[k])
-        rate[k], change[k], sigma[k] = course.rates(links[k], joints[k], closest)
-    share = np.abs(rate, out=rate)
-    share *= (speed[:, None] / course.speed)[:, None]
-    change = np.abs(change, out=change)
-    change *= (speed[:, None] ** 2 / course.acceleration)[:, None]
-    columns = _levels(course, joints, outcome, sigma, share, change, speed)
+        if not course.near(links[k], joints[k], rate[k], change[k], sigma[k]):
+            joints[k], closest, outcome[k] = course.follow(links[k])
+            rate[k], change[k], sigma[k] = course.rates(links[k], joints[k], closest)
+    rate, change = np.abs(rate, out=rate), np.abs(change, out=change)
+    columns = _levels(course, joints, outcome, sigma, rate, change, speed)
     levels = np.stack([columns[w.kind] if w.joint is None else columns[w.kind][:, w.joint] for w in course.watched], axis=1)
-    low, kept = sigma[:, course.keep].astype(np.float32), share[:, course.keep].astype(np.float32)
-    low[np.isnan(low)], kept[np.isnan(kept)] = 0.0, np.inf
-    return levels, low, kept
+    every = len(course.keep) == samples
+    low, share = (a.astype(np.float32) if every else a[:, course.keep].astype(np.float32) for a in (sigma, rate))
+    share *= (speed[:, None] / course.speed)[:, None].astype(np.float32)
+    if outcome.any():
+        low[np.isnan(low)], share[np.isnan(share)] = 0.0, np.inf
+    return levels, low, share
 
 
-def _levels(course, joints, outcome, sigma, share, change, speed):
-    """kind -> (M,) or (M, n), the worst over the path; NaN where nothing was reached."""
+def _levels(course, joints, outcome, sigma, rate, change, speed):
+    """kind -> (M,) or (M, n), the worst over the path; NaN where nothing was reached. rate, change: sizes of joint speeds and accelerations."""
     from ..kernels.steps import JUMPED, UNREACHED
 
     lost, jumped = outcome == UNREACHED, outcome == JUMPED
     jumps = jumped.copy()
     jumps[:, 0] = False
     jumps[:, 1:] &= ~lost[:, :-1]
-    left = np.fmin.reduce(np.minimum(joints - course.lower, course.upper - joints), axis=1)
+    least, most = (np.fmin, np.fmax) if lost.any() else (np.minimum, np.maximum)
+    left = np.minimum(_over_path(least, joints) - course.lower, course.upper - _over_path(most, joints))
+    peaks = np.maximum(_over_path(most, rate), _hidden(course, joints, jumped, rate))  # NaN stays
     tool = np.linalg.norm(course.twist[:, :3], axis=1).max() * 1000.0
     return {
         "unreachable": lost.sum(axis=1).astype(float), "posture jump": jumps.sum(axis=1).astype(float),
-        "near-singular": np.fmin.reduce(sigma, axis=1), "joint travel": np.where(np.abs(left) < TRAVEL_SLACK, 0.0, left),
-        "joint speed": _peaks(course, joints, jumped, share, speed), "joint acceleration": np.fmax.reduce(change, axis=1), "tool speed": tool * speed,
+        "near-singular": least.reduce(sigma, axis=1), "joint travel": np.where(np.abs(left) < TRAVEL_SLACK, 0.0, left),
+        "joint speed": peaks * (speed[:, None] / course.speed), "joint acceleration": _over_path(most, change) * (speed[:, None] ** 2 / course.acceleration),
+        "tool speed": tool * speed,
     }  # fmt: skip
 
 
-def _peaks(course, joints, jumped, share, speed):
-    """(M, n) the largest of findings.peak_share"""
-    between = np.abs(np.diff(joints, axis=1)) * (speed[:, None] / course.speed)[:, None] / np.diff(course.time)[:, None]
+def _hidden(course, joints, jumped, rate):
+    """(M, n) the largest mean joint speed over an interval that shows a peak hidden in it, as in findings.peak_share; 0 where none does."""
+    between = np.abs(np.diff(joints, axis=1))
+    between *= np.repeat(1.0 / np.diff(course.time), joints.shape[2]).reshape(-1, joints.shape[2])
+    beside = np.maximum(rate[:, 1:], rate[:, :-1])
+    beside *= HIDDEN
     with np.errstate(invalid="ignore"):
-        hidden = between > HIDDEN * np.maximum(share[:, 1:], share[:, :-1])
-    hidden &= ~jumped[:, 1:, None]
-    return np.maximum(np.fmax.reduce(share, axis=1), np.where(hidden, between, 0.0).max(axis=1, initial=0.0))  # NaN stays
+        hidden = between > beside
+    if jumped.any():
+        hidden &= ~jumped[:, 1:, None]
+    return np.where(hidden, between, 0.0).max(axis=1) if hidden.any() else np.zeros((len(joints), joints.shape[2]))
+
+
+def _over_path(reach, values):
+    """(M, n) reach.reduce of values (M, N, n) over the samples, half against half: N short loops over n would take most of the time of all this."""
+    while values.shape[1] > 8:
+        half = values.shape[1] // 2
+        rest = values[:, 2 * half :]
+        values = reach(values[:, :half], values[:, half : 2 * half])
+        if rest.shape[1]:
+            values[:, :1] = reach(values[:, :1], rest)
+    return reach.reduce(values, axis=1)

@@ -34,7 +34,7 @@ def studying(draws=2000, samples=500):
     alone = seconds(lambda: drawing(map), 3)
     spent = (process_time() - start) / 4
     work = f"{draws:,} draws of a cell x {samples} poses, {len(dimensions)} toleranced dimensions"
-    note = f"{1e6 * spent / draws / samples:.2f} us of processor time a pose; every pose followed to 1e-10 and measured whole, chances and bands included"
+    note = f"{1e6 * spent / draws / samples:.2f} us of processor time a pose; every pose solved and measured whole, bands included"
     whole = seconds(lambda: pa.study(audit, draws), 3)
     return [Row(f"{work}, warm", both, None, "<= 1 s", note), Row("the same on one core", alone, None, "-", "the same bits"),
             Row("the whole study", whole, None, "-", "sensitivities, how far off each dimension may be, worst directions and full audits included")]  # fmt: skip

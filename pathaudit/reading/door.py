@@ -33,6 +33,9 @@ USES = {
 }
 """The choices that a format has, beside `format` itself."""
 
+TABLES_OF_SAMPLES = {"timed", "parquet", "feather", "json-lines"}
+"""The formats in which a recorded path may come."""
+
 
 def path_of_file(file, options: ReadOptions) -> Path:
     """The path in a file. Raises ReadError or ModelError."""
@@ -66,15 +69,24 @@ def _check_choices(kind, options):
 
 
 def _explained(error, name, data, kind, options):
-    """The error, with what the file was taken for where that is not plain."""
+    """The error, with what the file was taken for where that is not plain, and with the mend of a hole in a log."""
+    words = [_taken_for(name, data, kind, options)]
+    if kind in TABLES_OF_SAMPLES and import_module(f"{__package__}.recorded").leaves_out(error.where.rpartition("column ")[2], error.found):
+        words.append("a recorded log with holes is repaired with --format recorded")
+    words = "; ".join(filter(None, words))
+    return ReadError(error.file, error.where, error.found, f"{error.expected} ({words})") if words else error
+
+
+def _taken_for(name, data, kind, options):
+    """In words, or ''."""
     if options.format is None:
-        return error if kind == "timed" else ReadError(error.file, error.where, error.found, f"{error.expected} (taken for {FORMATS[kind]})")
+        return "" if kind == "timed" else f"taken for {FORMATS[kind]}"
     try:
         seen = sniff(name, data)
     except ReadError:
-        return error
-    same = seen == kind or kind == "recorded" and seen in ("timed", "parquet", "feather", "json-lines")
-    return error if same else ReadError(error.file, error.where, error.found, f"{error.expected} (the content looks like {FORMATS[seen]})")
+        return ""
+    same = seen == kind or kind == "recorded" and seen in TABLES_OF_SAMPLES
+    return "" if same else f"the content looks like {FORMATS[seen]}"
 
 
 def _timed(course, options):

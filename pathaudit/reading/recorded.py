@@ -15,7 +15,7 @@ from ..kernels import rotations
 from ..taskpath import ANGLE, AXIS, LENGTH, QUATERNION, TIME, Path, assemble
 from .csv_table import Table, is_number, not_a_number
 from .json_lines import json_columns
-from .smoothing import HALF, MOST, dwells, smoothed
+from .smoothing import HALF, MOST, dwells, noise, smoothed
 from .sniffing import sniff
 from .tables import table_columns
 
@@ -29,6 +29,9 @@ FILLED = 20  # usual intervals; a longer drop-out is not filled
 REST = 0.1 * MM, 0.1 * DEG
 """A tool that moved less over a drop-out rested."""
 STALE = 5  # rows that may repeat a pose while the tool moves
+SPIKE, SPIKE_NOISE, SPIKE_LEAST = 5, 10, (1.0 * MM, 1.0 * DEG)
+"""A sample that is off its neighbours by more than so many steps around it, so many times the noise and so much is a spike."""
+LONGEST_SPIKE = 3  # samples; one alone is mended, more are told
 UNIT = 0.05  # how far from length 1 an orientation may be
 TURN = 90 * DEG  # the most that a filled drop-out may turn
 
@@ -40,7 +43,7 @@ def read_recorded(data: bytes, name, sha256: str, options) -> Path:
         raise ReadError(name, "", f"{len(table.cells[0]):,} rows", f"at most {MOST_ROWS:,} of a recorded path: cut the log")
     said = []
     log = _Log.of(name, table, said)
-    for mend in (_dropped_rows, _late_rows, _equal_stamps, _stale_poses, _drop_outs):
+    for mend in (_dropped_rows, _late_rows, _equal_stamps, _spikes, _stale_poses, _drop_outs):
         log = mend(log, said)
     if len(log.time) < 2:
         raise ReadError(name, "", f"{len(log.time)} usable samples", "at least 2 samples")
@@ -131,6 +134,11 @@ class _Log(NamedTuple):
 _KNOWN = {*TIME, *QUATERNION, *AXIS, "process", *(f"{c}_{u}" for c in "xyz" for u in LENGTH), *(f"r{c}_{u}" for c in "xyz" for u in ANGLE)}
 
 
+def leaves_out(column, found) -> bool:
+    """Whether a row goes here for what another reader refuses: its words for what it found in that column."""
+    return column in _KNOWN - {"process"} and (found in ("an empty cell", "no value") or found.strip("'").strip().lower() in NOTHING - {""})
+
+
 def _numbers(name, table, column):
     """(N,) float64 of a column; NaN where the recorder has nothing."""
     cells = table.cells[table.header.index(column)]
@@ -194,6 +202,8 @@ def _continuous(wxyz):
 def _apart(one, other):
     """Distance in m and turn in rad between poses (..., 6 or 7)."""
     cross = np.linalg.norm(one[..., 3:] - other[..., 3:], axis=-1)
+    if one.shape[-1] == 7:  # a quaternion and its negative are one orientation
+        cross = np.minimum(cross, np.linalg.norm(one[..., 3:] + other[..., 3:], axis=-1))
     half = 2.0 * np.arcsin(np.clip(cross / 2.0, 0.0, 1.0))
     return np.linalg.norm(one[..., :3] - other[..., :3], axis=-1), half * (2.0 if one.shape[-1] == 7 else 1.0)
 
@@ -248,6 +258,55 @@ def _equal_stamps(log, said):
     return log._replace(time=time, clock=log.clock & ~moved)
 
 
+def _spikes(log, said):
+    """One sample that leaves the path and is back with the next is put on the straight line between its neighbours; two or three are told and stay.
+
+    It is off that line by more than SPIKE times the longest of the steps around it (the two beyond its neighbours, and that from neighbour to
+    neighbour), SPIKE_NOISE times the log's noise and SPIKE_LEAST, in place or in orientation. A motion that did this would need, for one interval,
+    many times the speed that it has before and after. What has another spike or an end of the log within two samples is not judged.
+    """
+    found = {size: _off_the_path(log, size) for size in range(1, LONGEST_SPIKE + 1)}
+    first = np.flatnonzero(found[1][0])
+    longer = [(k, found[size][1][k], found[size][2][k]) for size in range(2, LONGEST_SPIKE + 1) for k in np.flatnonzero(found[size][0])]
+    if longer:
+        said.append(f"{_times(len(longer), 'jump')} of two or three samples off the path and back left as {'it is' if len(longer) == 1 else 'they are'}, first in {log.place(min(longer)[0])}, "
+                    f"by at most {max(jump[1] for jump in longer) / MM:.4g} mm and {max(jump[2] for jump in longer) / DEG:.4g} deg: look at the recording there.")  # fmt: skip
+    if not len(first):
+        return log
+    pose = log.pose.copy()
+    pose[first] = _mixed(log.pose[first - 1], log.pose[first + 1], _share(log.time[first - 1], log.time[first], log.time[first + 1]))
+    length, turn = _apart(log.pose[first], pose[first])
+    said.append(f"{_times(len(first), 'spike')} of one sample off the path put on the straight line between the samples before and after, first in {log.place(first[0])}: changed by at most "
+                f"{length.max() / MM:.4g} mm and {turn.max() / DEG:.4g} deg.")  # fmt: skip
+    if pose.shape[1] == 7:
+        pose[:, 3:] = rotations.continuous_wxyz(pose[:, 3:])
+    own = log.own.copy()
+    own[first] = False
+    return log._replace(pose=pose, own=own)
+
+
+def _off_the_path(log, size):
+    """Where (N,) a spike of so many samples begins; how far, m, and turned, rad, its farthest sample is off."""
+    n = len(log.time)
+    out = np.zeros(n, bool), np.zeros(n), np.zeros(n)
+    if n < size + 4:
+        return out
+    before, after = np.arange(1, n - size - 2), np.arange(1, n - size - 2) + size + 1
+    with np.errstate(over="ignore", invalid="ignore"):
+        steps = [_apart(log.pose[before - 1], log.pose[before]), _apart(log.pose[after], log.pose[after + 1]), _apart(log.pose[before], log.pose[after])]
+        rough = noise(log.pose[:, :3]), noise(log.pose[:, 3:]) * (2.0 if log.pose.shape[1] == 7 else 1.0)
+        scale = (1.0, 1.0, 2.0 / (size + 1))  # from neighbour to neighbour it is size + 1 intervals
+        limits = [np.maximum(SPIKE * np.max([part * step[k] for part, step in zip(scale, steps)], axis=0), max(SPIKE_NOISE * rough[k], SPIKE_LEAST[k])) for k in range(2)]
+        off = np.array([_apart(log.pose[before + j], _mixed(log.pose[before], log.pose[after], _share(log.time[before], log.time[before + j], log.time[after]))) for j in range(1, size + 1)])
+        out[0][before + 1] = (off > limits).all(axis=0).any(axis=0)
+    out[1][before + 1], out[2][before + 1] = off.max(axis=0)
+    return out
+
+
+def _share(start, time, end):
+    return ((time - start) / (end - start))[:, None]
+
+
 def _stale_poses(log, said):
     """A pose that is repeated while the tool moves was not read anew: up to STALE such rows in a run go, where the step after them makes up for them."""
     if len(log.time) < 4:
@@ -279,8 +338,13 @@ def _rate(log, a, b):
 def _between(log, time):
     """Poses at times, on the straight line and at the constant turn between the samples around them."""
     k = np.clip(np.searchsorted(log.time, time, "right") - 1, 0, len(log.time) - 2)
-    share = ((time - log.time[k]) / (log.time[k + 1] - log.time[k]))[:, None]
-    a, b = log.pose[k], log.pose[k + 1]
+    return _mixed(log.pose[k], log.pose[k + 1], _share(log.time[k], time, log.time[k + 1]))
+
+
+def _mixed(a, b, share):
+    """Poses at the given shares (M, 1) of the way from a to b (M, 6 or 7)."""
+    if a.shape[1] == 7:
+        b = np.where((np.arange(7) > 2) & (np.sum(a[:, 3:] * b[:, 3:], axis=1) < 0.0)[:, None], -b, b)
     angle = np.arccos(np.clip(np.sum(a[:, 3:] * b[:, 3:], axis=1), -1.0, 1.0))[:, None]
     with np.errstate(invalid="ignore", divide="ignore"):
         left, right = np.sin((1.0 - share) * angle) / np.sin(angle), np.sin(share * angle) / np.sin(angle)

@@ -95,7 +95,9 @@ def test_a_format_is_asked_for_and_the_content_is_another(file):
 
 
 def test_what_a_file_was_taken_for_is_told(file):
-    assert refusal(file(LINES.replace('"t_s": 1', '"t_s": null'))).endswith("line 2, column t_s: found 'null', expected a number (taken for JSON lines)")
+    assert refusal(file(LINES.replace('"t_s": 1', '"t_s": true'))).endswith("line 2, column t_s: found 'true', expected a number (taken for JSON lines)")
+    hole = "line 2, column t_s: found 'null', expected a number (taken for JSON lines; a recorded log with holes is repaired with --format recorded)"
+    assert refusal(file(LINES.replace('"t_s": 1', '"t_s": null'))).endswith(hole)
 
 
 def test_every_format_has_a_reader_and_every_choice_belongs_to_one():

@@ -122,6 +122,74 @@ def test_stale_poses_in_motion_go_and_dwells_stay(read):
     assert np.abs(p.position[:300] * 1000 - motion(T)[:300, :3]).max() < 0.01 and (p.position[300:] == p.position[299]).all()
 
 
+def turned(wxyz, angle):
+    """A quaternion after a turn about its own Z."""
+    w, x, y, z = wxyz
+    c, s = np.cos(angle / 2), np.sin(angle / 2)
+    return np.array([w * c - z * s, x * c + y * s, y * c - x * s, z * c + w * s])
+
+
+def test_a_spike_is_put_between_its_neighbours_and_told(read, tmp_path):
+    poses = motion(T)
+    poses[100, 1] += 7.5
+    poses[300, 3:] = -turned(poses[300, 3:], np.radians(200))  # the sign of a quaternion means nothing
+    p = read(table(T, poses))
+    assert "2 spikes of one sample off the path put on the straight line between the samples before and after, first in line 102: changed by at most 7.5 mm and 160 deg." in p.made
+    assert p.samples == 500 and (p.time == T).all()
+    np.testing.assert_allclose(p.position[100], (p.position[99] + p.position[101]) / 2, atol=1e-12)
+    plain = pa.read_path(tmp_path / "log.csv")
+    others = np.ones(500, bool)
+    others[[100, 300]] = False
+    for field in ("position", "rotation"):
+        np.testing.assert_array_equal(getattr(p, field)[others], getattr(plain, field)[others])
+    truth = read(table(T))
+    assert np.abs(p.position - truth.position).max() < 1e-6 and np.abs(p.rotation - truth.rotation).max() < 1e-4
+
+
+def test_a_spike_at_uneven_times_lies_where_its_time_says(read):
+    t, poses = np.delete(T, 201), np.delete(motion(T), 201, axis=0)
+    poses[200, 2] -= 30
+    p = read(table(t, poses))
+    assert any(words.startswith("1 spike of one sample") for words in p.made)
+    assert np.abs(p.position[200] * 1000 - motion(T[200:201])[0, :3]).max() < 1e-2
+
+
+@pytest.mark.parametrize("size", [2, 3])
+def test_longer_jumps_are_told_and_stay(read, size):
+    poses = motion(T)
+    poses[100 : 100 + size, 0] += 4.0
+    p = read(table(T, poses))
+    assert any(words.startswith("1 jump of two or three samples off the path and back left as it is, first in line 102, by at most 4") and words.endswith("look at the recording there.") for words in p.made)
+    assert (p.position * 1000 == pytest.approx(poses[:, :3])) and not any("spike" in words for words in p.made)
+
+
+def test_steps_corners_starts_and_noise_are_no_spikes(read):
+    """At full speed around corners and back, from rest at once, onto another level and staying there, noise of any size up to 1 mm."""
+    rng = np.random.default_rng(7)
+    legs = [np.zeros((60, 3))]
+    for direction in ([1, 0, 0], [-1, 0, 0], [0, 1, 0], [0, 0.7, 0.7], [0, 0, 0], [0, -1, 0]):
+        legs.append(legs[-1][-1] + 4.0 * np.outer(np.arange(1, 61), direction))
+    place = np.concatenate(legs)
+    place[200:] += [0, 0, 25.0]
+    t = STEP * np.arange(len(place))
+    for sigma in (0.0, 0.001, 0.03, 0.3, 1.0):
+        for _ in range(5):
+            axis = np.tile([0.0, 0, -1], (len(place), 1)) + rng.normal(size=place.shape) * sigma * 1e-3
+            axis /= np.linalg.norm(axis, axis=1, keepdims=True)
+            noisy = place + rng.normal(size=place.shape) * sigma
+            p = read({"t_s": t.tolist(), **{c: v.tolist() for c, v in zip("x_mm y_mm z_mm i j k".split(), [*noisy.T, *axis.T])}})
+            assert not any("spike" in words or "jump" in words for words in p.made)
+            np.testing.assert_array_equal(p.position, noisy / 1000)
+
+
+def test_what_lies_beside_another_spike_or_an_end_is_not_judged(read):
+    poses = motion(T)
+    poses[[0, 1, 100, 102, 498, 499], 1] += 9.0
+    p = read(table(T, poses))
+    assert not any("spike" in words or "jump" in words for words in p.made)
+    assert np.abs(p.position * 1000 - poses[:, :3]).max() < 1e-9
+
+
 def test_orientations_that_are_not_unit_are_scaled_and_told(read):
     poses = motion(T)
     poses[7, 3:] *= 1.02
@@ -185,6 +253,37 @@ def test_a_plain_reader_says_where_repairs_are(read, tmp_path):
     with pytest.raises(pa.ReadError, match="expected times that strictly increase .a recorded log is repaired when it is read as format recorded"):
         read(table(np.floor(T / 0.01) * 0.01))
         pa.read_path(tmp_path / "log.csv")
+
+
+@pytest.mark.parametrize("cell", ["", " ", "NaN", "null", "-"])
+@pytest.mark.parametrize("column", ["t_s", "y_mm", "qz"])
+def test_a_plain_reader_of_a_log_with_a_hole_names_the_mend_which_then_works(read, tmp_path, cell, column):
+    columns = table(T)
+    columns[column][40] = cell
+    p = read(columns)
+    assert any("1 row without a whole time and pose left out, first in line 42." in words for words in p.made)
+    with pytest.raises(pa.ReadError, match="line 42, column .*: found .*, expected .*number.* .a recorded log with holes is repaired with --format recorded.$"):
+        pa.read_path(tmp_path / "log.csv")
+
+
+def test_a_plain_reader_of_json_lines_does_so_too(read, tmp_path):
+    columns = table(T)
+    columns["x_mm"][33] = None
+    lines = "".join(json.dumps(dict(zip(columns, row))) + "\n" for row in zip(*columns.values()))
+    read(lines, "log.jsonl")
+    with pytest.raises(pa.ReadError, match="line 34, column x_mm: found 'null', expected a number .taken for JSON lines; a recorded log with holes is repaired with --format recorded"):
+        pa.read_path(tmp_path / "log.jsonl")
+
+
+@pytest.mark.parametrize("column, cell", [("process", ""), ("y_mm", "ten"), ("y_mm", "1,5")])
+def test_what_a_recorded_path_would_not_mend_has_no_such_words(read, tmp_path, column, cell):
+    columns = table(T, process=[1] * len(T))
+    columns[column][40] = f'"{cell}"' if "," in cell else cell
+    for format in ("recorded", None):
+        with pytest.raises(pa.ReadError) as caught:
+            (tmp_path / "log.csv").write_text(text(columns))
+            pa.read_path(tmp_path / "log.csv", format)
+        assert "line 42" in str(caught.value) and "--format recorded" not in str(caught.value)
 
 
 # smoothing

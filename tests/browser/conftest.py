@@ -51,7 +51,9 @@ def watched(chromium, spare):
 
 @pytest.fixture(scope="session")
 def lab(tmp_path_factory):
-    """One server for the whole run."""
+    """One server for the whole run; the kernels are compiled before a notebook waits for them."""
+    from pathaudit.kernels import clocks, linkage, rates, steps  # noqa: F401
+
     server = hosts.Lab(tmp_path_factory.mktemp("lab"))
     yield server
     server.close()

@@ -10,6 +10,7 @@ from pathlib import PurePath
 import numpy as np
 
 from ..causes import lost_words_along
+from . import origin
 from .rows import groups_of, row_index, rows_of
 from .skeleton import arm_facts
 from .thinning import kept_samples, runs, spans
@@ -17,7 +18,7 @@ from .thinning import kept_samples, runs, spans
 MOST_SAMPLES = 5000
 _FINEST = 2000           # stretches nearer to each other than duration / this are drawn as one
 _LATEST_START = 1e5      # s; a start beyond is a clock's date, and times are written from the first sample on
-_EXACT = ("sample", "time_s", "programmed_s")
+_EXACT = ("sample", "time_s", "programmed_s", "line")
 _PEAKS = ("share_percent", "acceleration_percent", "sigma_min", "speed_mm_s", "speed_limit_mm_s", "factor_percent",
           "before_share_percent", "before_acceleration_percent", "before_speed_mm_s")
 _PLACES = 100            # at most so many near-singular places are asked what is lost there
@@ -64,6 +65,8 @@ def scene(audit, most=MOST_SAMPLES, *, applied=None, before=None, study=None):
     cell = audit.cell
     if study is not None and study.dimensions:
         arrays |= _band_arrays(study, kept)
+    if audit.path.source_line is not None:
+        arrays["line"] = audit.path.source_line[kept]
     arrays["joints"] = audit.joints[kept]
     arrays["path_m"] = audit.path.position[kept] @ cell.part[:3, :3].T + cell.part[:3, 3]
     arrays = {name: np.ascontiguousarray(values, dtype=np.float32) for name, values in arrays.items()}
@@ -155,7 +158,7 @@ def _finding(number, finding, audit, arrays, names):
         "number": number, "kind": finding.kind, "severity": finding.severity, "joint": finding.joint or "",
         "from_s": float(finding.t_start - start), "to_s": float(finding.t_end - start), "worst_s": float(finding.worst_t - start),
         "from_mm": float(finding.from_mm), "to_mm": float(finding.to_mm), "worst": worst_text(finding), "why": finding.why,
-        "first": finding.first, "last": finding.last,
+        "line": origin.sentence(audit, finding), "first": finding.first, "last": finding.last,
         "at": int(np.abs(arrays["sample"] - finding.worst).argmin()), "row": row_index(finding, names),
     }
 

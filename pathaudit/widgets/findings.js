@@ -13,7 +13,7 @@ const FINDING_COLUMNS = [
   ["from – to, s", (f, start) => range(start + f.from_s, start + f.to_s, 2), (f) => f.from_s, "pa-number"],
   ["from – to, mm", (f) => range(f.from_mm ?? NaN, f.to_mm ?? NaN, 0), (f) => f.from_mm ?? Infinity, "pa-number"],
   ["worst", (f) => f.worst, (f) => f.worst],
-  ["why", (f) => f.why, (f) => f.why, "pa-why"],
+  ["why", (f) => `${f.why} ${f.line || ""}`.trim(), (f) => f.why, "pa-why"],
 ];
 
 // choose(k): go to finding k.

@@ -69,9 +69,10 @@ export function readoutPanel() {
     const found = facts.findings.filter((f) => time >= f.from_s - 1e-6 && time <= f.to_s + 1e-6);
     const words = found.length ? found.map((f) => `${f.number} ${f.severity}: ${f.kind} ${f.joint}`.trim()).join(" · ") : "no finding";
     const gone = facts.lost.find(([from, to]) => sample >= from && sample <= to);
-    set(here, words);
+    const line = data.line ? `line ${data.line[0][i]}` : "";
+    set(here, line ? `${line} · ${words}` : words);
     set(lost, gone ? `can hardly ${gone[2]}` : "none");
-    return { found, words: `${said[0]} seconds, ${said[1]} millimetres, busiest joint ${said[4]}, ${words}${gone ? `, the tool can hardly ${gone[2]}` : ""}` };
+    return { found, words: `${said[0]} seconds, ${said[1]} millimetres, busiest joint ${said[4]}, ${line && `${line}, `}${words}${gone ? `, the tool can hardly ${gone[2]}` : ""}` };
   }
 
   return { node, show };

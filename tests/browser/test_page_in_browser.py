@@ -103,6 +103,21 @@ def test_the_readout_says_what_the_audit_holds(opened, audit):
     assert f"{audit.time[i]:.3f} seconds" in slider.get_attribute("aria-valuetext")
 
 
+def test_the_lines_of_the_path_s_own_file_stand_with_the_findings_and_at_the_cursor(opened):
+    """Seven samples a line, below a head of eleven lines; without lines nothing is said of them."""
+    known, unknown = fake_audit(2000), fake_audit(2000)
+    known.path.source_line, known.path.file = 12 + np.arange(2000) // 7, "folder/seam.nc"
+    page = opened(known)
+    for row, finding in zip(page.locator(".pa-findings tbody tr").all(), known.finding_list, strict=True):
+        first, last, worst = (12 + sample // 7 for sample in (finding.first, finding.last, finding.worst))
+        assert row.inner_text().endswith(f"{finding.why} Lines {first} to {last} of seam.nc, the worst in line {worst}.")
+        row.click()
+        assert cursor(page) == finding.worst and page.locator(".pa-where b").inner_text().startswith(f"line {worst} · ")
+        assert f", line {worst}, " in page.locator(".pa-rows").get_attribute("aria-valuetext")
+    page = opened(unknown)
+    assert "line" not in page.locator(".pa-where b").inner_text() and "of seam" not in page.locator(".pa-findings").inner_text()
+
+
 def test_an_unreached_place_has_no_numbers_and_no_arm(opened, audit):
     page = opened(audit)
     finding = next(k for k, f in enumerate(audit.finding_list) if f.kind == "unreachable")

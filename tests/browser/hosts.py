@@ -58,7 +58,7 @@ class Watched:
         self._host_says, self._host_code = host_says, host_code
         self.context.on("request", self._note)
         self.page = self.context.new_page()
-        self.page.on("pageerror", lambda error: self._fault(f"page error: {error.stack}"))
+        self.page.on("pageerror", lambda error: self._fault(f"page error: {error.name} {error.message} {error.stack}"))
         self.page.on("console", lambda message: message.type == "error" and self._fault(f"console: {message.text}"))
 
     def _fault(self, words):

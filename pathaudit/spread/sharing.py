@@ -12,7 +12,8 @@ from ..cell import Cell
 from .judging import Course, Judged, judge
 from .placing import frames
 
-TASK = 25  # draws of a task: some 30 ms at 500 samples, against 2 ms that a task costs on a cluster
+ROUND = 80  # tasks handed over at once: their results are what memory has to hold
+TASK = 25  # draws of a task: some 20 ms at 500 samples, against 2 ms that a task costs on a cluster
 
 
 @dataclass(frozen=True, eq=False)
@@ -37,7 +38,9 @@ class Shared:
 
     def tasks(self, values):
         """The results of values (M, D), TASK draws each, as they come."""
-        return self.map(self.job, [values[first : first + TASK] for first in range(0, len(values), TASK)])
+        tasks = [values[first : first + TASK] for first in range(0, len(values), TASK)]
+        for first in range(0, len(tasks), ROUND):
+            yield from self.map(self.job, tasks[first : first + ROUND])
 
     def levels(self, values, size=TASK) -> np.ndarray:
         """(M, L) levels of what is watched"""

@@ -48,6 +48,20 @@ def test_on_a_dask_cluster_too(small):
         same(study(small, draws=130, seed=3), study(small, draws=130, seed=3, map=lambda f, tasks: client.gather(client.map(f, tasks))))
 
 
+def test_however_many_draws_no_more_than_a_round_of_them_is_handed_over(small, monkeypatch):
+    from pathaudit.spread import sharing
+
+    rounds = []
+
+    def listening(function, tasks):
+        rounds.append(sum(len(task) for task in tasks))
+        return [function(task) for task in tasks]
+
+    monkeypatch.setattr(sharing, "ROUND", 2)
+    same(study(small, draws=130), study(small, draws=130, map=listening))
+    assert max(rounds) <= 2 * sharing.TASK
+
+
 def test_progress_is_told_and_what_the_listener_raises_ends_it(small):
     heard = []
     study(small, draws=130, told=lambda words, share: heard.append((words, share)))

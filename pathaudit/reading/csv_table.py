@@ -98,12 +98,21 @@ def _line_end(data, at):
     return len(data)
 
 
+def _block_size():
+    """Bytes of a block: pandas' engine takes some milliseconds for each, whatever its size."""
+    try:
+        import pyarrow.csv  # noqa: F401
+    except ImportError:
+        return 4 * BLOCK
+    return BLOCK
+
+
 class _Blocks:
     """The rows of a table in pieces of whole lines; each is taken out when it is asked for."""
 
     def __init__(self, table, data, start, line):
         self.table, self.data, self.line = table, data, line
-        size, self.bounds = BLOCK if table.large else len(data), [start]
+        size, self.bounds = _block_size() if table.large else len(data), [start]
         while self.bounds[-1] < len(data):
             self.bounds.append(_line_end(data, min(self.bounds[-1] + size, len(data) - 1)))
         self.rows = None  # the first row of each block and the number of all rows, once they are known

@@ -3,7 +3,8 @@
 Nothing here changes an audit: an edit of the speed makes another one, in the worker's thread, and the newest change wins.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import cached_property
 
 from ..by_hand import by_hand
 from ..changes import outline
@@ -22,6 +23,12 @@ class Variant:
     edits: Edits
     retiming: object
     audit: object
+
+    @cached_property
+    def numbers(self):
+        """What variants are compared by: `changes.outline` and the slowest factor"""
+        slowest = 100.0 if self.retiming is None else 100.0 * self.retiming.slowest
+        return {**outline(self.audit), "slowest_percent": slowest}
 
 
 class Listener:
@@ -48,7 +55,7 @@ class Session:
 
     def __init__(self, audit, listener=None):
         self.given = audit
-        self.shown = Variant(PROGRAMMED, Edits(), None, audit)
+        self.shown = self._programmed = Variant(PROGRAMMED, Edits(), None, audit)
         self.variants = {}
         self._listener = listener or Listener()
         self._worker = Worker(self._listener.told)
@@ -59,7 +66,7 @@ class Session:
         name = " ".join(str(name).split())
         if not name or name == PROGRAMMED:
             raise ValueError(f"the name is {name!r}, expected one of your own for the variant")
-        self.variants[name] = Variant(name, self.shown.edits, self.shown.retiming, self.shown.audit)
+        self.variants[name] = replace(self.shown, name=name)
         self._listener.changed()
 
     @property
@@ -113,12 +120,11 @@ class Session:
         rows = self._all()
         if all(v.edits != self.shown.edits for v in rows):
             rows = *rows, self.shown
-        return [(v.name, v.edits == self.shown.edits, variant_outline(v)) for v in rows]
+        return [(v.name, v.edits == self.shown.edits, v.numbers) for v in rows]
 
     def _start(self):
         edits = self._history.now
         kept = next((v for v in self._all() if v.edits == edits), None)
-        self._listener.changed()
         return self._worker.start(lambda told: self._make(edits, kept, told), self._take, self._fail)
 
     def _make(self, edits, kept, told):
@@ -140,11 +146,4 @@ class Session:
         self._listener.failed(sentence)
 
     def _all(self):
-        return Variant(PROGRAMMED, Edits(), None, self.given), *self.variants.values()
-
-
-def variant_outline(variant):
-    """What variants are compared by: `changes.outline` and the slowest factor."""
-    slowest = 100.0 if variant.retiming is None else 100.0 * variant.retiming.slowest
-    return {**outline(variant.audit), "slowest_percent": slowest}
-
+        return self._programmed, *self.variants.values()

@@ -32,7 +32,10 @@ class Variant:
 
 
 class Listener:
-    """What a session tells, all from the worker's thread but `changed`; this one hears nothing."""
+    """What a session tells, all from the worker's thread but `begun` and `changed`; this one hears nothing."""
+
+    def begun(self):
+        """Another audit is being made."""
 
     def drawn(self, variant):
         """Whatever takes long before `shown`: its result is handed to it."""
@@ -125,6 +128,7 @@ class Session:
     def _start(self):
         edits = self._history.now
         kept = next((v for v in self._all() if v.edits == edits), None)
+        self._listener.begun()
         return self._worker.start(lambda told: self._make(edits, kept, told), self._take, self._fail)
 
     def _make(self, edits, kept, told):

@@ -67,6 +67,9 @@ class Timeline(anywidget.AnyWidget):
             self.set_trait("trial", trial_facts(self.session))
         self._refresh_still()
 
+    def begun(self):
+        self.trial = {**self.trial, "busy": True}
+
     def changed(self):
         with self.hold_sync():
             if not self.session.busy:

@@ -117,7 +117,8 @@ export function trialPanel(ui) {
   }
 
   function show(value) {
-    if (!value.busy) done();
+    if (value.busy && trial) return;      // what is under way is told by its end
+    done();
     trial = value;
     undo.disabled = !trial.undo;
     redo.disabled = !trial.redo;

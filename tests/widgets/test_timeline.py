@@ -299,7 +299,7 @@ def test_what_the_worker_does_is_said_until_it_is_given_up(bench, monkeypatch):
     monkeypatch.setattr(module, "LONG", 0)
     monkeypatch.setattr(bench, "drawn", lambda variant: (begun.set(), go.wait(10)))
     bench._on_message(bench, {"do": "slow", "first": 0, "last": 100, "factor": 0.5}, [])
-    assert begun.wait(10) and bench.status.startswith("Working: ")
+    assert begun.wait(10) and bench.status.startswith("Working: ") and bench.trial["busy"]
     bench._on_message(bench, {"do": "cancel"}, [])
     assert bench.status == "" and not bench.trial["busy"]
     go.set()

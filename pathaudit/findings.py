@@ -7,6 +7,7 @@ import numpy as np
 
 from . import causes
 from .measures import Rates
+from .runs import runs
 
 TRAVEL_SLACK = 1e-7  # rad or m: a joint that stands at its end stop to the last digit is not past it
 MERGE = 3  # stretches of the same rule and severity with no more samples than this between them are one
@@ -69,12 +70,8 @@ def stretches(time, level, bound, sense, merge=MERGE) -> list:
     """The stretches of `level` (N,) beyond `bound`; where it crosses between two samples, the time is interpolated. NaN is not beyond."""
     with np.errstate(invalid="ignore"):
         beyond = sense * level > sense * bound
-    if not beyond.any():
-        return []
-    inside = np.flatnonzero(beyond)
-    cuts = np.flatnonzero(np.diff(inside) > merge + 1)
     found = []
-    for first, last in zip(inside[np.r_[0, cuts + 1]], inside[np.r_[cuts, -1]], strict=True):
+    for first, last in runs(beyond, merge):
         worst = first + int(np.nanargmax(sense * level[first : last + 1]))
         start, end = _crossing(time, level, bound, first, -1), _crossing(time, level, bound, last, 1)
         found.append(Stretch(int(first), int(last), start, end, int(worst), float(level[worst])))

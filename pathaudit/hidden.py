@@ -7,6 +7,7 @@ import numpy as np
 from . import causes
 from .findings import MERGE, TRAVEL_SLACK, Stretch, flag, unit_of
 from .proof import Proof
+from .runs import runs
 
 SLACK = 1e-7  # of a limit: what a bound misses by no more than this is rounding
 
@@ -18,12 +19,7 @@ def find(proof: Proof, found) -> list:
 
 def _runs(flagged, level, sense):
     """(first, last, worst) of the intervals of each run of flagged (K,), runs closer than MERGE joined; worst by sense * level."""
-    inside = np.flatnonzero(flagged)
-    if not len(inside):
-        return []
-    cuts = np.flatnonzero(np.diff(inside) > MERGE + 1)
-    firsts, lasts = inside[np.r_[0, cuts + 1]], inside[np.r_[cuts, -1]]
-    return [(int(a), int(b), int(a + np.nanargmax(np.where(flagged, sense * level, -np.inf)[a : b + 1]))) for a, b in zip(firsts, lasts, strict=True)]
+    return [(int(a), int(b), int(a + np.nanargmax(np.where(flagged, sense * level, -np.inf)[a : b + 1]))) for a, b in runs(flagged, MERGE)]
 
 
 def _uncovered(proof, found, kind, severity, joint):

@@ -13,6 +13,7 @@ from .conventions import frozen
 from .findings import TRAVEL_SLACK, peak_shares
 from .measures import Rates, measure
 from .proof import shares_of_halves
+from .runs import runs
 
 AIM = 1.0 - 1e-6  # share of the limits that a retiming aims at, so that rounding never shows as an overrun
 SPARE = 5e-7  # of what AIM leaves, the part that a measured excess may use up
@@ -148,12 +149,8 @@ def retime(rates: Rates, style=None) -> Retiming:
 
 
 def slowed_stretches(factor) -> list:
-    """(first, last) of each run of samples that a retiming slows: factor (N,) below 1."""
-    slow = np.flatnonzero(np.asarray(factor) < 1.0 - 1e-9)
-    if not len(slow):
-        return []
-    cuts = np.flatnonzero(np.diff(slow) > 1)
-    return list(zip(slow[np.r_[0, cuts + 1]].tolist(), slow[np.r_[cuts, -1]].tolist(), strict=True))
+    """[first, last] of each run of samples that a retiming slows: factor (N,) below 1."""
+    return runs(np.asarray(factor) < 1.0 - 1e-9).tolist()
 
 
 def whole_shares(rates: Rates, spread=False):
@@ -225,14 +222,13 @@ class Plan:
         process = self.rates.motion.path.process
         with np.errstate(divide="ignore"):
             own = np.minimum(self.ceiling, (self.limit / self.hardest).min(axis=1))
-        cuts = np.flatnonzero(np.diff(process.astype(int))) + 1
-        runs = [r for r in np.split(np.arange(len(process)), cuts) if process[r[0]]]
+        stretches = [slice(first, last + 1) for first, last in runs(process)]
         ceiling = self.ceiling.copy()
-        for run in runs:
+        for run in stretches:
             ceiling[run] = min(1.0, own[run].min())
         for _ in range(ROUNDS):
             b = self.settle(ceiling, even=True)
-            uneven = [run for run in runs if b[run].min() < b[run].max() * (1.0 - 1e-9)]
+            uneven = [run for run in stretches if b[run].min() < b[run].max() * (1.0 - 1e-9)]
             if not uneven:
                 break
             for run in uneven:

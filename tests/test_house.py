@@ -15,7 +15,7 @@ ROOT = Path(__file__).parents[1]
 PACKAGE = ROOT / "pathaudit"
 
 ORDER = [
-    "conventions", "errors", "writing", "kernels", "taskpath", "course", "arm", "tolerances", "cell", "given", "reading", "converting", "capacity", "motion", "measures", "between",
+    "conventions", "errors", "runs", "writing", "kernels", "taskpath", "course", "arm", "tolerances", "cell", "given", "reading", "converting", "capacity", "motion", "measures", "between",
     "proof", "causes", "findings", "hidden", "retiming", "edits", "by_hand", "changes", "earlier", "against", "pipeline", "spread", "notes", "report", "charts", "widgets", "cli",
     "__main__",
 ]  # fmt: skip

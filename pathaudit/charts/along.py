@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..report.scene import clock_offset, worst_text
-from ..report.thinning import kept_samples, runs
+from ..report.thinning import kept_of_path
 from .look import FAINT, SEVERITY, SOFT, lines_of, plain, turned_out
 
 MOST_SAMPLES = 5000
@@ -56,10 +56,8 @@ def along_path(audit, along, series, findings):
     """What to draw of an audit: series (N, S) are the values whose peaks have to stay; findings: (number, Finding) pairs."""
     if along not in ("time", "distance"):
         raise ValueError(f"along is {along!r}, expected 'time' or 'distance'")
-    edges = runs(~audit.motion.reached)
-    always = [*(f.worst for _, f in findings), *edges[:, 0], *edges[:, 1], *(edges[:, 0] - 1), *(edges[:, 1] + 1)]
-    series = np.where(np.isfinite(series), series, np.nan)
-    return Along(audit, kept_samples(series, MOST_SAMPLES, always), along == "time", tuple(findings))
+    kept = kept_of_path(audit.motion.reached, series, MOST_SAMPLES, [f.worst for _, f in findings])
+    return Along(audit, kept, along == "time", tuple(findings))
 
 
 def shown_time(audit):

@@ -7,6 +7,7 @@ import numpy as np
 from ..conventions import FARTHEST, MM, frozen
 from ..errors import ReadError
 from ..kernels.rotations import carry_frames, continuous_wxyz, wxyz_from_matrix
+from ..runs import runs
 from .curves import spline
 from .shapes import ARC, CURVE, LINE, STILL, Arcs, Curves, Lines
 from .turning import EVEN, SPLINED, Even, Splined, between
@@ -152,15 +153,15 @@ class Draft:
         self._check_points(points, line)
         self._check_speeds(np.array(speed), line)
         arcs, curve = self._arc_table(points[1:][kind == ARC]), kind == CURVE
-        runs = _runs(curve)
-        curves = Curves(_padded([spline(points[a : b + 1], _chords(points[a : b + 1])) for a, b in runs]))
+        bent = [(first, last + 1) for first, last in runs(curve).tolist()]
+        curves = Curves(_padded([spline(points[a : b + 1], _chords(points[a : b + 1])) for a, b in bent]))
         row = np.arange(len(kind))
         row[kind == ARC], row[curve] = np.arange((kind == ARC).sum()), np.arange(curve.sum())
         lines = Lines(points[:-1], points[1:])
         length = np.where(kind == LINE, np.linalg.norm(points[1:] - points[:-1], axis=1), 0.0)
         length[kind == ARC] = arcs.length
         length[curve] = _curve_lengths(curves)
-        turned = self._turning(kind, pose, line, runs, points)
+        turned = self._turning(kind, pose, line, bent, points)
         numbers = (frozen(values, dtype) for values, dtype in ((speed, float), (dwell, float), (air, bool), (zone, float)))
         return Course(
             frozen(kind, np.uint8), frozen(row, np.int64), frozen(length), lines, arcs, curves, *turned, self.spin_free, *numbers,
@@ -189,8 +190,8 @@ class Draft:
         reached = start - first + np.cos(sweep)[:, None] * first + np.sin(sweep)[:, None] * second
         return Arcs(start - first, first, second, sweep, ends - reached)
 
-    def _turning(self, kind, pose, line, runs, points):
-        """Kind and row of each move's turning, and the tables."""
+    def _turning(self, kind, pose, line, bent, points):
+        """Kind and row of each move's turning, and the tables. bent: first move of each run of curves, and the one behind its last."""
         used = np.zeros(len(self.poses), dtype=bool)
         used[pose] = True
         used[[middle for _, middle in self.middles.values()]] = True
@@ -203,7 +204,7 @@ class Draft:
         self._check_turns(kind, np.linalg.norm(turn, axis=1), line)
         splined, row = [], np.arange(len(kind))
         how = np.full(len(kind), EVEN, dtype=np.uint8)
-        for a, b in runs:
+        for a, b in bent:
             if turn[a:b].any():
                 how[a:b], row[a:b] = SPLINED, np.arange(b - a) + sum(map(len, splined))
                 splined.append(spline(continuous_wxyz(at_points[a : b + 1]), _chords(points[a : b + 1])))
@@ -236,12 +237,6 @@ class Draft:
 
 def _apart(a, b):
     return max(abs(a[0] - b[0]), abs(a[1] - b[1]), abs(a[2] - b[2]))
-
-
-def _runs(mark):
-    """(first, behind last) of each run of True."""
-    edges = np.flatnonzero(np.diff(np.concatenate([[0], mark.astype(np.int8), [0]])))
-    return [(int(a), int(b)) for a, b in edges.reshape(-1, 2)]
 
 
 def _chords(points):

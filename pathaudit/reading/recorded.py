@@ -12,6 +12,7 @@ import numpy as np
 from ..conventions import DEG, MM, UNIT_TOLERANCE
 from ..errors import ReadError, quoted
 from ..kernels import rotations
+from ..runs import runs
 from ..taskpath import ANGLE, AXIS, LENGTH, QUATERNION, TIME, Path, assemble
 from .csv_table import Table, is_number, not_a_number
 from .json_lines import json_columns
@@ -312,9 +313,9 @@ def _stale_poses(log, said):
     if len(log.time) < 4:
         return log
     equal = np.concatenate([[False], (log.pose[1:] == log.pose[:-1]).all(axis=1)])
-    edges = np.flatnonzero(np.diff(np.concatenate([[False], equal, [False]]).astype(np.int8)))
     stale = np.zeros(len(equal), bool)
-    for start, end in zip(edges[::2], edges[1::2]):  # rows start..end-1 repeat row start-1
+    for start, last in runs(equal):  # these rows repeat row start - 1
+        end = last + 1
         if end - start > STALE or start < 2 or end >= len(equal):
             continue
         before = _rate(log, start - 2, start - 1)

@@ -8,6 +8,8 @@ without the bias of a moving mean (the same, section 3.2.5).
 
 import numpy as np
 
+from ..runs import runs
+
 HALF = 0.7532
 """Times 1/width: the frequency of which half the amplitude stays, where samples lie on both sides (from the fit's equivalent kernel,
 15/32 (1 - u^2)(3 - 7 u^2), the same book, table 3.1)."""
@@ -58,11 +60,10 @@ def dwells(time, values, width, floor):
     ahead = np.searchsorted(time, time + width, "right") - 1
     behind = np.searchsorted(time, time - width, "left")
     still = np.linalg.norm(values[ahead] - values[behind], axis=1) <= near
-    edges = np.flatnonzero(np.diff(np.concatenate([[False], still, [False]]).astype(np.int8)))
     padded = np.cumsum(np.concatenate([values[:1]] * 5 + [values] + [values[-1:]] * 4), axis=0)
     calm = (padded[9:] - padded[:-9]) / 9.0
     found = []
-    for first, last in zip(edges[::2], edges[1::2] - 1):
+    for first, last in runs(still):
         quarter = (last - first) // 4
         middle = values[first + quarter : last - quarter + 1].mean(axis=0)
         resting = np.linalg.norm(calm - middle, axis=1) <= near / 4.0

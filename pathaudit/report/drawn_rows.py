@@ -4,6 +4,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ..runs import runs
 from .rows import nice_step
 from .surfaces import FAINT, GROUND, INK, LANE, LINE, QUIET, SEVERITY, SOFT
 
@@ -219,9 +220,8 @@ def _draw_shortage(surface, places, row, y, time, ceiling, speed):
 
 def pieces(time, mask, *values):
     """For every unbroken run of mask: (time, value, ...) of it."""
-    edges = np.flatnonzero(np.diff(np.r_[False, mask, False]))
-    for first, end in zip(edges[::2], edges[1::2]):
-        yield (time[first:end], *(value[first:end] for value in values))
+    for first, last in runs(mask):
+        yield (time[first : last + 1], *(value[first : last + 1] for value in values))
 
 
 def beyond(time, value, bound, bad):

@@ -13,7 +13,7 @@ from ..causes import lost_words_along
 from . import origin
 from .rows import groups_of, row_index, rows_of
 from .skeleton import arm_facts
-from .thinning import kept_samples, runs, spans
+from .thinning import kept_of_path, spans
 
 MOST_SAMPLES = 5000
 _FINEST = 2000           # stretches nearer to each other than duration / this are drawn as one
@@ -131,9 +131,7 @@ def _kept(audit, full, most):
     series = np.column_stack([full[name] for name in drawn])
     findings = audit.finding_list
     always = [f.worst for f in findings] + [f.first for f in findings] + [f.last for f in findings]
-    edges = runs(~audit.motion.reached)
-    always += [*edges[:, 0], *edges[:, 1], *(edges[:, 0] - 1), *(edges[:, 1] + 1)]
-    return kept_samples(np.where(np.isfinite(series), series, np.nan), most, always)
+    return kept_of_path(audit.motion.reached, series, most, always)
 
 
 def _facts(audit, arrays, again, is_applied):

@@ -2,6 +2,8 @@
 
 import numpy as np
 
+from ..runs import runs
+
 
 def kept_samples(series, most, always=()):
     """Sample numbers, increasing, at most `most` of them.
@@ -25,6 +27,13 @@ def kept_samples(series, most, always=()):
     return kept if len(kept) <= most else anchors
 
 
+def kept_of_path(reached, series, most, always=()):
+    """`kept_samples` of a path: infinite values are nothing, and the samples on both sides of where poses are not reached, reached (N,), stay."""
+    edges = runs(~reached)
+    always = [*always, *edges.ravel(), *(edges[:, 0] - 1), *(edges[:, 1] + 1)]
+    return kept_samples(np.where(np.isfinite(series), series, np.nan), most, always)
+
+
 def _extremes(low, high, pieces):
     """Where each of `pieces` pieces has its least of low (S, N) and its greatest of high; the last piece may be shorter."""
     series, samples = low.shape
@@ -36,12 +45,6 @@ def _extremes(low, high, pieces):
         if whole < samples:
             found.append(whole + place(values[:, whole:], axis=1, keepdims=True))
     return np.unique(np.concatenate([places.ravel() for places in found]))
-
-
-def runs(mask):
-    """(K, 2) first and last sample of every unbroken run of True in mask (N,)."""
-    edges = np.flatnonzero(np.diff(np.r_[False, np.asarray(mask, dtype=bool), False]))
-    return np.stack([edges[::2], edges[1::2] - 1], axis=1)
 
 
 def spans(mask, time, gap):

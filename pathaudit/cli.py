@@ -9,6 +9,7 @@ import shlex
 import sys
 
 from . import __version__
+from .conventions import LONG
 from .errors import ModelError, PathAuditError, UsageError, WriteError, quoted
 
 EXAMPLE = """example:
@@ -17,8 +18,6 @@ EXAMPLE = """example:
 
 exit status: 0 nothing fails, 1 at least one finding fails, 2 unusable input or arguments
 """
-
-LONG = 50_000  # samples from which the work may take longer than a second, so that a line says what goes on
 
 
 class _Parser(argparse.ArgumentParser):

@@ -32,6 +32,9 @@ LATEST = 1e10
 FARTHEST = 1e4
 """Largest coordinate of anything given, m: what lies beyond is a mistake in the unit."""
 
+LONG = 50_000
+"""Samples from which work may take longer than a second, so that somebody says what goes on."""
+
 CAUTIONS = (
     "This is not a risk assessment and does not replace one.",
     "Run the programme first at reduced speed, at most 250 mm/s at the tool centre point in manual reduced-speed mode "

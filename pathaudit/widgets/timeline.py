@@ -7,6 +7,7 @@ from pathlib import PurePath
 import anywidget
 import traitlets
 
+from ..conventions import LONG
 from ..edits import Lock, Slow
 from ..report.scene import scene
 from ..report.script import shared_module, style_sheet
@@ -17,8 +18,6 @@ from .noting import Noting
 from .session import Session
 from .still_form import StillForm, still_form
 from .trial_facts import trial_facts
-
-LONG = 50_000  # samples from which it is said what the worker does
 
 
 class Timeline(anywidget.AnyWidget):
@@ -38,7 +37,10 @@ class Timeline(anywidget.AnyWidget):
     cursor = traitlets.Int().tag(sync=True, echo_update=False)
 
     def __init__(self, audit, shown=None, still=None, noting=None, study=None):
-        """study: of the audit under tolerances, whose bands are drawn while it runs as programmed; shown: the audit's Scene, where it has been made already; still: the StillForm beside this one, told of every change."""
+        """shown: the audit's Scene, where it has been made already; still: the StillForm beside this one, told of every change.
+
+        study: of the audit under tolerances, whose bands are drawn while it runs as programmed.
+        """
         self.session, self.still, self.noting, self.study = Session(audit, self), still, noting or Noting(audit), study
         super().__init__(**_state(shown or scene(audit, study=study)), trial=trial_facts(self.session), notes=self.noting.told())
         self.on_msg(self._on_message)
@@ -158,7 +160,7 @@ def show(audit, notes=None, study=None):
     elif not hasattr(shell, "kernel"):
         display({"text/plain": summary(audit, noting.placed)}, raw=True)
     if not hasattr(shell, "kernel"):
-        return Desk(Session(audit))
+        return Desk(Session(audit), noting)
     shown = scene(audit, study=study)
     still = StillForm(shell)
     timeline = Timeline(audit, shown, still, noting, study)

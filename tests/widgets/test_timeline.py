@@ -272,6 +272,14 @@ def test_plain_text_in_a_terminal(notebook, audit):
     assert bundle["text/plain"].startswith("FAIL") and audit.finding_list[0].why.split(",")[0] in bundle["text/plain"].replace("\n", " ")
 
 
+def test_notes_stay_in_the_file_named_where_there_is_no_notebook(notebook, real, tmp_path):
+    shell, _ = notebook
+    del shell.kernel
+    desk = module.show(real, tmp_path / "mine.notes.toml")
+    desk.note("look here", float(real.time[20]), "A. Weber")
+    assert "look here" in (tmp_path / "mine.notes.toml").read_text(encoding="utf-8")
+
+
 def test_a_cell_that_is_run_again_lets_its_old_timelines_go(notebook, audit):
     shell, _ = notebook
     module.show(audit)

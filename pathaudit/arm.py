@@ -178,3 +178,14 @@ class _Row:
         about_z = rotations.pose(rotations.matrix_from_rpy_deg([0.0, 0.0, self.number("theta_deg", 0.0)]), [0.0, 0.0, d])
         about_x = rotations.pose(rotations.matrix_from_rpy_deg([self.number("alpha_deg", 0.0), 0.0, 0.0]), [a, 0.0, 0.0])
         return about_z @ about_x if convention == "standard" else about_x @ about_z
+
+
+def unit_of(arm, joint):
+    """Factor and unit in which a joint's position is shown: (1000, "mm") where it slides, else degrees."""
+    return (1000.0, "mm") if arm.prismatic[joint] else (180.0 / np.pi, "deg")
+
+
+def units_of(arm):
+    """The factors (n,) and the n units of all joints."""
+    scales, units = zip(*(unit_of(arm, joint) for joint in range(len(arm.joint_names))), strict=True)
+    return np.array(scales), units

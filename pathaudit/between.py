@@ -12,6 +12,8 @@ from math import comb
 
 import numpy as np
 
+from .measures import tool_jacobians
+
 HALVINGS = 26  # of a bracket in [0, 1]: what is left, squared, is below rounding, and an extreme is flat
 OUTWARD = 1e-12  # of its largest coefficient, by which an extreme of a polynomial is moved outwards; rounding is below 1e-14 of it
 MARGIN = 1e-10  # by which, for each unit of the Jacobian's norm, a bound of sigma_min is lowered; see `certify`
@@ -155,15 +157,6 @@ def _rounded(joints):
 
 
 # --------------------------------------------------------------------------------------------------------------- sigma_min
-
-
-def tool_jacobians(chain, length, rows, q):
-    """Poses (M, 4, 4) and unscaled Jacobians (M, 6, n) in the chain's first frame, and the task Jacobians (M, rows, n) in tool axes."""
-    from .kernels.linkage import locate
-
-    poses, jacobians, _ = locate(*chain, q)
-    turned = np.swapaxes(poses[:, :3, :3], 1, 2)
-    return poses, jacobians, np.concatenate([turned @ (jacobians[:, :3] / length), turned @ jacobians[:, 3:]], axis=1)[:, :rows]
 
 
 def lever_arms(chain, slid):

@@ -33,6 +33,10 @@ class Thresholds:
     tool_speed_mm_s: float | None = None
     characteristic_length_mm: float | None = None
 
+    def travel_warn(self, slides):
+        """Least travel left in m where the joint slides, else in rad: slides a bool or (n,)."""
+        return np.where(slides, self.travel_warn_mm / 1000.0, np.radians(self.travel_warn_deg))
+
     def __post_init__(self):
         for field in fields(self):
             value = getattr(self, field.name)

@@ -6,9 +6,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from . import causes
+from .arm import unit_of
 from .measures import Rates
 from .runs import runs
 
+PEAK = 1.02  # times what the samples beside an interval show: from there on its mean joint speed tells of a peak hidden in it
 TRAVEL_SLACK = 1e-7  # rad or m: a joint that stands at its end stop to the last digit is not past it
 MERGE = 3  # stretches of the same rule and severity with no more samples than this between them are one
 
@@ -168,16 +170,11 @@ def _posture_words(arm, q):
     return ", ".join(f"{name} {value * unit_of(arm, i)[0]:.0f}" for i, (name, value) in enumerate(zip(arm.joint_names, q, strict=True)))
 
 
-def unit_of(arm, joint):
-    """Factor and unit in which a joint's position is shown."""
-    return (1000.0, "mm") if arm.prismatic[joint] else (180.0 / np.pi, "deg")
-
-
 def peak_share(rates: Rates, joint: int) -> np.ndarray:
     """(N,) speed share of a joint, raised where the mean over an interval beside it shows a higher peak hidden between samples."""
     share, between = rates.speed_share[:, joint], rates.between[:, joint]
     with np.errstate(invalid="ignore"):
-        hidden = between > 1.02 * np.maximum(share[1:], share[:-1])
+        hidden = between > PEAK * np.maximum(share[1:], share[:-1])
     hidden[[k - 1 for k in rates.motion.jumps if k > 0]] = False  # a jump is a finding of its own
     if not hidden.any():
         return share
@@ -244,8 +241,7 @@ def _travel_left(rates, joint):
 
 
 def _travel_bounds(rates, joint):
-    arm, limits = rates.motion.cell.arm, rates.motion.cell.thresholds
-    return (limits.travel_warn_mm / 1000.0 if arm.prismatic[joint] else np.radians(limits.travel_warn_deg)), 0.0
+    return float(rates.motion.cell.thresholds.travel_warn(rates.motion.cell.arm.prismatic[joint])), 0.0
 
 
 def _travel_shown(rates, joint, level, bound):

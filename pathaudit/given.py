@@ -5,6 +5,7 @@ from dataclasses import asdict
 
 import numpy as np
 
+from .arm import unit_of, units_of
 from .cell import Cell
 from .kernels import rotations
 from .taskpath import Path
@@ -22,7 +23,7 @@ def cell_values(cell: Cell) -> dict:
         "thresholds": asdict(cell.thresholds),
     }  # fmt: skip
     if cell.start is not None:
-        values["start"] = _listed(cell.start * np.where(arm.prismatic, 1000.0, 180.0 / np.pi))
+        values["start"] = _listed(cell.start * units_of(arm)[0])
     if cell.tolerances.dimensions:
         values["tolerance"] = {d.name: d.words for d in cell.tolerances.dimensions}
     return values
@@ -48,7 +49,7 @@ def flat(values, prefix="") -> dict:
 
 
 def _joint(arm, j):
-    unit, per = ("mm", 1000.0) if arm.prismatic[j] else ("deg", 180.0 / np.pi)
+    per, unit = unit_of(arm, j)
     values = {f"travel_{unit}": _listed(per * np.array([arm.lower[j], arm.upper[j]])), f"speed_{unit}_s": _number(per * arm.speed[j]),
               f"acceleration_{unit}_s2": _number(per * arm.acceleration[j])}  # fmt: skip
     return values | {"effort_n" if arm.prismatic[j] else "effort_nm": _number(arm.effort[j])}

@@ -5,7 +5,8 @@ from dataclasses import replace
 import numpy as np
 
 from . import causes
-from .findings import MERGE, TRAVEL_SLACK, Stretch, flag, unit_of
+from .arm import unit_of
+from .findings import MERGE, TRAVEL_SLACK, Stretch, flag
 from .proof import Proof
 from .runs import runs
 
@@ -83,7 +84,7 @@ def _speeds(proof, found):
 def _travels(proof, found):
     arm, limits = proof.rates.motion.cell.arm, proof.rates.motion.cell.thresholds
     left = np.minimum(proof.position_low - arm.lower, arm.upper - proof.position_high)
-    wanted = np.where(arm.prismatic, limits.travel_warn_mm / 1000.0, np.radians(limits.travel_warn_deg))
+    wanted = limits.travel_warn(arm.prismatic)
     out = []
     for severity, bound in (("fail", np.zeros(arm.n)), ("warn", wanted)):
         for joint, run in _joint_runs(proof, [*found, *out], "joint travel", severity, left, proof.rates.travel_left, bound - TRAVEL_SLACK, -1.0):

@@ -120,14 +120,19 @@ def measure(motion: Motion) -> Rates:
 
 
 def task_jacobians(motion: Motion, samples) -> np.ndarray:
-    """The task Jacobians (M, rows, n) at the samples (M,), in tool axes, linear rows divided by the characteristic length."""
+    """The task Jacobians (M, rows, n) at the samples (M,)."""
+    return tool_jacobians(motion.cell.chain, motion.cell.characteristic_length, motion.rows, motion.closest[samples])[2]
+
+
+def tool_jacobians(chain, length, rows, q):
+    """Poses (M, 4, 4) and Jacobians (M, 6, n) in the chain's first frame at q (M, n), and the task Jacobians (M, rows, n): in tool axes, linear
+    rows divided by the characteristic length."""
     from .kernels.linkage import locate
 
-    cell = motion.cell
-    poses, jacobians, _ = locate(*cell.chain, motion.closest[samples])
+    poses, jacobians, _ = locate(*chain, q)
     turned = np.swapaxes(poses[:, :3, :3], 1, 2)
-    linear = turned @ jacobians[:, :3] / cell.characteristic_length
-    return np.concatenate([linear, turned @ jacobians[:, 3:]], axis=1)[:, : motion.rows]
+    linear = turned @ jacobians[:, :3] / length
+    return poses, jacobians, np.concatenate([linear, turned @ jacobians[:, 3:]], axis=1)[:, :rows]
 
 
 def in_part_axes(motion: Motion, samples, vectors) -> np.ndarray:

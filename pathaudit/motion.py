@@ -224,7 +224,7 @@ class _Task:
             self.chain, self.cell.characteristic_length, self.rows, arm.speed, joints, self.twist[samples], self.twist_rate[samples], zero, zero
         )
         limits = self.cell.thresholds
-        wanted = np.where(arm.prismatic, limits.travel_warn_mm / 1000.0, np.radians(limits.travel_warn_deg))
+        wanted = limits.travel_warn(arm.prismatic)
         # each of the three is 1 where its own limit or bound is just met
         near = limits.sigma_min_fail / np.maximum(measures[:, 0], 1e-12)
         worst = max(measures[:, 1].max(), near.max(), (wanted / np.maximum(left, 1e-12)).max())

@@ -7,7 +7,7 @@ import numpy as np
 
 from . import between
 from .conventions import frozen, owned
-from .measures import Rates
+from .measures import Rates, tool_jacobians
 
 MOTION = (
     "Between two samples each joint is taken to run along the smooth curve in time that has, at both, the position, speed and acceleration that were "
@@ -51,6 +51,13 @@ class Proof:
     def known(self) -> np.ndarray:
         """(K,) bool: a motion leads from sample to sample"""
         return frozen(np.isfinite(self.sigma_bound), bool)
+
+    @property
+    def whole(self) -> tuple:
+        """Of the whole path: sigma_min stays above the first, the tool within the second, m, and the third, rad, of the straight way; NaN where no motion is known."""
+        if not self.known.any():
+            return (np.nan,) * 3
+        return float(np.nanmin(self.sigma_bound)), float(np.nanmax(self.stray_m)), float(np.nanmax(self.stray_rad))
 
     @cached_property
     def unproven(self) -> np.ndarray:
@@ -120,7 +127,7 @@ def _block(rates, known, rows, lowest):
     speed, acceleration = between.peaks(part)
     low, high = between.span(part.position)
     both = slice(rows.start, rows.stop + 1)
-    poses, jacobians, task = between.tool_jacobians(chain, length, motion.rows, motion.closest[both])
+    poses, jacobians, task = tool_jacobians(chain, length, motion.rows, motion.closest[both])
     sigma = np.stack([rates.sigma_min[both][:-1], rates.sigma_min[both][1:]], axis=1)
     least = np.where(known, sigma.min(axis=1), -1.0)
     warn, fail = limits.sigma_min_warn, limits.sigma_min_fail

@@ -8,7 +8,6 @@ import hashlib
 import math
 import mmap
 import re
-from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from functools import cached_property

@@ -10,6 +10,7 @@ import pytest
 
 from pathaudit import between
 from pathaudit.arm import Chain
+from pathaudit.measures import tool_jacobians
 
 UNDECIDED = (-np.inf, -np.inf)
 
@@ -29,7 +30,7 @@ def joints_of(ends):
 
 
 def samples_of(chain, length, rows, ends):
-    both = [between.tool_jacobians(chain, length, rows, q) for q in ends[:2]]
+    both = [tool_jacobians(chain, length, rows, q) for q in ends[:2]]
     task = np.stack([found[2] for found in both], axis=1)
     return both, task, np.linalg.svd(task, compute_uv=False)[..., -1]
 

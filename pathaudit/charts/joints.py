@@ -2,6 +2,7 @@
 
 import numpy as np
 
+from ..arm import unit_of
 from .along import along_path, limit_line, marks, note_on, numbered, stacked
 from .look import LINE, for_file, lines_of, plain
 from .places import joint_number
@@ -18,7 +19,7 @@ def joint_over_time(audit, joint, *, along="time"):
     """
     arm = audit.cell.arm
     j = joint_number(arm, joint)
-    unit, scale = ("mm", 1e3) if arm.prismatic[j] else ("deg", 180.0 / np.pi)
+    scale, unit = unit_of(arm, j)
     name = arm.joint_names[j]
     values = scale * np.stack([audit.joints[:, j], audit.rates.joint_speed[:, j], audit.rates.joint_acceleration[:, j]], axis=1)
     limits = scale * np.array([[arm.lower[j], arm.upper[j]], [-arm.speed[j], arm.speed[j]], [-arm.acceleration[j], arm.acceleration[j]]])

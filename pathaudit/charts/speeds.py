@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from .along import along_path, marks, numbered, stacked
+from .along import along_path, numbered, stacked
 from .look import INK, LINE, SOFT, for_file, lines_of, plain
 
 _SHOWN = ("joint speed", "joint acceleration", "tool speed", "unreachable")  # what other times can cure, and where nothing can

@@ -11,7 +11,7 @@ from .. import arm as arms
 from ..arm import Arm
 from ..cell import Cell, Thresholds
 from ..conventions import DEG, MM
-from ..errors import ModelError, ReadError, quoted
+from ..errors import ModelError, ReadError
 from ..kernels import rotations
 from ..tolerances import KEYS as TOLERANCES, Tolerances
 from .sources import decode, read_bytes

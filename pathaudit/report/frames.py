@@ -4,6 +4,8 @@ from dataclasses import asdict
 
 import numpy as np
 
+from ..arm import unit_of
+
 
 def findings_frame(audit):
     """One row a finding, with the fields of the JSON report and the samples and distances behind them."""
@@ -24,7 +26,7 @@ def measures_frame(audit):
     rates, arm = audit.rates, audit.cell.arm
     columns = {"t_s": audit.time, "distance_mm": audit.path.distance * 1000.0, "reached": audit.motion.reached}
     for j, name in enumerate(arm.joint_names):
-        scale, unit = (1000.0, "mm") if arm.prismatic[j] else (180.0 / np.pi, "deg")
+        scale, unit = unit_of(arm, j)
         columns[f"{name}_{unit}"] = audit.joints[:, j] * scale
         columns[f"{name}_{unit}_s"] = rates.joint_speed[:, j] * scale
         columns[f"{name}_{unit}_s2"] = rates.joint_acceleration[:, j] * scale

@@ -6,8 +6,7 @@ Only table, tr, td, div, b and inline styles are used: a sanitising export shows
 from html import escape
 from pathlib import PurePath
 
-import numpy as np
-
+from ..arm import unit_of
 from . import noted, origin
 from .scene import clock_offset, significant, worst_text
 
@@ -134,8 +133,7 @@ def limits_table(audit):
     arm = audit.cell.arm
     rows = []
     for j, name in enumerate(arm.joint_names):
-        slides = bool(np.asarray(arm.chain.prismatic)[j])
-        unit, scale = ("mm", 1e3) if slides else ("deg", 180 / np.pi)
+        scale, unit = unit_of(arm, j)
         low, high, speed, acceleration = (significant(scale * values[j]) for values in (arm.lower, arm.upper, arm.speed, arm.acceleration))
         travel = f"{low} to {high} {unit}" if low and high else "unlimited"
         rows.append((name, travel, f"{speed} {unit}/s" if speed else "not given", f"{acceleration} {unit}/s²" if acceleration else "not given"))

@@ -113,7 +113,7 @@ def _of_joint(lane, j):
 def _travel_lanes(arm, thresholds, travel):
     """Place inside the travel: 0 and 100 are its ends. What lies past them is shown as far as 20 percent."""
     room = np.asarray(arm.upper) - np.asarray(arm.lower)
-    kept = np.where(arm.prismatic, thresholds.travel_warn_mm / 1e3, np.radians(thresholds.travel_warn_deg))
+    kept = thresholds.travel_warn(arm.prismatic)
     for j in range(arm.n):
         line = (("travel_percent", j, "main"),)
         if not np.isfinite(room[j]):

@@ -1,21 +1,19 @@
 """An audit as JSON and CSV text."""
 
-import csv
-import io
 import json
 import math
 
 import numpy as np
 
 from .. import given
+from ..arm import units_of
 from ..converting import csv_text, texts
+from ..earlier import FORMAT
 from ..taskpath import TIME
 from . import origin
 from .compared import compared_values
 from .noted import json_text, note_values
 from .scene import plain
-
-FORMAT = "pathaudit.check/1"
 
 
 def check_json(audit, notes=(), compared=None) -> str:
@@ -60,14 +58,10 @@ def check_values(audit, notes=(), compared=None) -> dict:
 
 def _proof(proof):
     """What is certain between the samples, over the whole path; null where no motion leads from any sample to the next."""
-    known = proof.known
-    bounds = (np.nan,) * 3
-    if known.any():
-        bounds = proof.sigma_bound[known].min(), 1000.0 * proof.stray_m[known].max(), np.degrees(proof.stray_rad[known].max())
-    above, off_line, off_turn = (float(bound) for bound in bounds)
+    known, (above, off_line, off_turn) = proof.known, proof.whole
     return {
         "motion": proof.motion, "intervals": len(known), "intervals_without_motion": int((~known).sum()), "intervals_unproven": int(proof.unproven.sum()),
-        "sigma_min_above": above, "off_line_mm_below": off_line, "off_turn_deg_below": off_turn,
+        "sigma_min_above": above, "off_line_mm_below": 1000.0 * off_line, "off_turn_deg_below": float(np.degrees(off_turn)),
     }  # fmt: skip
 
 
@@ -83,13 +77,11 @@ def _finding(audit, finding):
 def joints_csv(audit) -> str:
     """One row a sample: t_s, each joint in deg or mm, each joint's speed, sigma_min, speed_use; empty where nothing was reached."""
     rates, arm = audit.rates, audit.cell.arm
-    slides = arm.prismatic
-    scale = np.where(slides, 1000.0, 180.0 / np.pi)
-    units = ["mm" if s else "deg" for s in slides]
+    scale, units = units_of(arm)
     header = ["t_s", *(f"{name}_{unit}" for name, unit in zip(arm.joint_names, units))]
     header += [*(f"{name}_{unit}_s" for name, unit in zip(arm.joint_names, units)), "sigma_min", "speed_use"]
     measured = np.column_stack([audit.joints * scale, rates.joint_speed * scale, rates.sigma_min, rates.speed_share.max(axis=1)])
-    return _csv(header, ((repr(time), *map(_digits, row.tolist())) for time, row in zip(audit.time.tolist(), measured)))
+    return csv_text(header, [_spelled(audit.time), *(list(map(_digits, column)) for column in measured.T.tolist())])
 
 
 def _digits(value):
@@ -109,11 +101,3 @@ def retimed_csv(retiming) -> str:
 def _spelled(values):
     """Numbers as texts that are read as the same doubles."""
     return list(map(repr, values.tolist()))
-
-
-def _csv(header, rows):
-    stream = io.StringIO()
-    writer = csv.writer(stream, lineterminator="\n")
-    writer.writerow(header)
-    writer.writerows(rows)
-    return stream.getvalue()

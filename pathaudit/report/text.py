@@ -91,8 +91,9 @@ def between_text(audit) -> str:
     proof = audit.proof
     if not proof.known.any():
         return ""
-    clear, far, turned = np.nanmin(proof.sigma_bound), 1000.0 * np.nanmax(proof.stray_m), np.degrees(np.nanmax(proof.stray_rad))
-    certain = f"sigma_min stays above {significant(clear, 3)}; the tool is within {significant(far, 2)} mm and {significant(turned, 2)} deg of the straight way from pose to pose."
+    clear, far, turned = proof.whole
+    off = f"{significant(1000.0 * far, 2)} mm and {significant(np.degrees(turned), 2)} deg"
+    certain = f"sigma_min stays above {significant(clear, 3)}; the tool is within {off} of the straight way from pose to pose."
     return f"Between the samples\n{_indented(f'For certain {certain} {proof.motion}')}"
 
 

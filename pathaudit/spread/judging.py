@@ -8,15 +8,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..arm import Chain
-from ..findings import RULES, TRAVEL_SLACK
+from ..arm import Chain, unit_of
+from ..findings import PEAK, RULES, TRAVEL_SLACK
 from ..measures import task_jacobians
 from ..motion import pose_distance
 
 TOGETHER = 5_000  # samples of draws that are worked on at once: their arrays stay in a core's cache
 PIECE = 2000  # samples of one kernel call, so that it does not share itself out to the cores
 NEAR = 1e-4  # sigma_min below which the followed motion itself decides what the Jacobian cannot tell
-HIDDEN = 1.02  # as in findings.peak_share
 
 
 @dataclass(frozen=True)
@@ -51,14 +50,15 @@ def watched(rates) -> tuple:
             warn, fail = rule.bounds(rates, joint)
             judged = rule.kind != "joint acceleration" or np.isfinite(arm.acceleration[joint])
             if judged and not (warn is None and fail is None):
-                scale, unit = _shown(rule.kind, joint is not None and arm.prismatic[joint])
+                scale, unit = _shown(rule.kind, arm, joint)
                 out.append(Watched(rule.kind, joint, rule.sense, warn, fail, scale, unit))
     return tuple(out)
 
 
-def _shown(kind, slides):
+def _shown(kind, arm, joint):
     if kind == "joint travel":
-        return (1000.0, "mm left") if slides else (180.0 / np.pi, "deg left")
+        scale, unit = unit_of(arm, joint)
+        return scale, f"{unit} left"
     return {"near-singular": (1.0, ""), "tool speed": (1.0, "mm/s")}.get(kind, (100.0, "% of the limit"))
 
 
@@ -223,7 +223,7 @@ def _hidden(course, joints, jumped, rate):
     between = np.abs(np.diff(joints, axis=1))
     between *= np.repeat(1.0 / np.diff(course.time), joints.shape[2]).reshape(-1, joints.shape[2])
     beside = np.maximum(rate[:, 1:], rate[:, :-1])
-    beside *= HIDDEN
+    beside *= PEAK
     with np.errstate(invalid="ignore"):
         hidden = between > beside
     if jumped.any():

@@ -127,8 +127,8 @@ def together(levels_of, verdicts, dimensions, slope) -> Worst | None:
     return _shortest(levels_of, verdicts, dimensions, [way * MOST_TIMES for way in harm if way.any()], MOST_TIMES)
 
 
-def worst_direction(shared, levels_of, verdicts, dimensions, slope) -> Worst | None:
-    """The shortest way to another verdict in `dimensions` taken together, as multiples of their sizes; None where the verdict stays in all directions
+def worst_direction(shared, verdicts, dimensions, slope) -> Worst | None:
+    """The shortest way to another verdict in `dimensions`, whose levels are shared.levels, taken together, as multiples of their sizes; None where the verdict stays in all directions
     that were looked at.
 
     For the levels that come first to a bound, the point of the bound nearest to the cell as stated is looked for by linearising again and again
@@ -140,7 +140,7 @@ def worst_direction(shared, levels_of, verdicts, dimensions, slope) -> Worst | N
     for i in _nearest(verdicts, np.linalg.norm(scaled, axis=1)):
         ways += _towards(shared, verdicts, i, dimensions, scaled[i])
     most = min(most / size for most, size in zip((MOST[d.unit] for d in dimensions), sizes, strict=True))
-    return _shortest(levels_of, verdicts, dimensions, [way / np.linalg.norm(way) * most * sizes for way in ways], most)
+    return _shortest(shared.levels, verdicts, dimensions, [way / np.linalg.norm(way) * most * sizes for way in ways], most)
 
 
 def _nearest(verdicts, reach):

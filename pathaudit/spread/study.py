@@ -234,7 +234,7 @@ def _reserves(shared, verdicts, cell, stated, slope, told):
     told("the worst direction of where the part stands", 0.7)
     part = tuple(d for d in dimensions if d.key in ("part_xyz_mm", "part_rpy_deg"))
     some = _Some(placed(part))
-    return single, once, worst_direction(some, some.levels, verdicts, part, slopes(some, part))
+    return single, once, worst_direction(some, verdicts, part, slopes(some, part))
 
 
 @dataclass(frozen=True, eq=False)

@@ -7,7 +7,6 @@ import pytest
 
 import pathaudit as pa
 from pathaudit.reading import recorded, smoothing
-from pathaudit.report.tables import check_json
 
 STEP = 0.004
 

@@ -68,7 +68,7 @@ def test_the_worst_direction_of_a_planar_arm_is_straight_out(bench):
     nearest = np.hypot(x / 1.0, y / 2.0).min()
     dimensions = bench.dimensions
     shared = Shared(Job(Course.of(bench.audit), bench.audit.cell, dimensions), map)
-    found = worst_direction(shared, shared.levels, bench.judge, dimensions, slopes(shared, dimensions))
+    found = worst_direction(shared, bench.judge, dimensions, slopes(shared, dimensions))
     assert found.size == pytest.approx(nearest, rel=2e-3)
 
 

@@ -6,6 +6,7 @@ import numpy as np
 
 from pathaudit.arm import Chain
 from pathaudit.cell import Thresholds
+from pathaudit.proof import Proof
 from pathaudit.tolerances import Tolerances
 
 SPEED_DEG_S = (200.0, 180.0, 200.0, 400.0, 400.0, 600.0)
@@ -135,6 +136,7 @@ def fake_audit(samples=2000, n=6, duration=14.0, gap=True, seed=0, tight=False):
     between = np.fmin(sigma[1:], sigma[:-1]) * np.where(reached[1:] & reached[:-1], 0.99, np.nan)
     proof = SimpleNamespace(motion="Between two samples the joints run smoothly.", known=np.isfinite(between), sigma_bound=between,
                             unproven=np.zeros(samples - 1, dtype=bool), stray_m=0.0 * between + 1e-6, stray_rad=0.0 * between + 1e-6)
+    proof.whole = Proof.whole.fget(proof)
     return SimpleNamespace(proof=proof, path=path, cell=cell, time=time, joints=q, rates=rates, finding_list=tuple(found), suggestion=retiming,
                            motion=SimpleNamespace(reached=reached, reasons={}, start_reason="start_deg of the cell"),
                            verdict="fail" if any(f.severity == "fail" for f in found) else "warn" if found else "pass",

@@ -43,10 +43,7 @@ def _parser():
     )  # fmt: skip
     parser.add_argument("--version", action="version", version=f"pathaudit {__version__}")
     commands = parser.add_subparsers(dest="command", metavar="COMMAND", required=True)
-    check = commands.add_parser(
-        "check", help="audit a path with a cell", description="Audit a path with a cell (TOML). The path's content says what kind of file it is.",
-        epilog=EXAMPLE, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
-    )  # fmt: skip
+    check = _command(commands, "check", _check, "audit a path with a cell", "Audit a path with a cell (TOML). The path's content says what kind of file it is.", EXAMPLE)
     check.add_argument("path", metavar="PATH", help="the path: a timed CSV, or another of the formats below")
     check.add_argument("--cell", metavar="CELL.toml", required=True, help="the cell: arm, placement, tool, part, limits")
     check.add_argument("--json", metavar="FILE", help="write the verdict and findings as JSON; - writes them to stdout, the summary to stderr")
@@ -60,8 +57,15 @@ def _parser():
     _add_sign(commands)
     _add_convert(commands)
     _add_notes(commands)
-    demo = commands.add_parser("demo", help="write a ready cell, path and notebook", description="Write a ready cell, path and notebook into a folder.", allow_abbrev=False)
+    demo = _command(commands, "demo", _demo, "write a ready cell, path and notebook", "Write a ready cell, path and notebook into a folder.")
     demo.add_argument("folder", metavar="FOLDER", help="made where it is missing; nothing in it is overwritten")
+    return parser
+
+
+def _command(commands, name, run, help, description, epilog=None):
+    """The parser of a command, whose options are given to `run`; it gives the exit status."""
+    parser = commands.add_parser(name, help=help, description=description, epilog=epilog, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False)
+    parser.set_defaults(run=run)
     return parser
 
 
@@ -81,10 +85,8 @@ exit status: 0 no draw fails, 1 at least one draw or the cell as stated fails, 2
 
 
 def _add_study(commands):
-    parser = commands.add_parser(
-        "study", help="what the tolerances of a cell do to a path", description="What the tolerances of a cell do to a path: chances, what to measure better first, how far off it may be.",
-        epilog=STUDY, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
-    )  # fmt: skip
+    what = "What the tolerances of a cell do to a path: chances, what to measure better first, how far off it may be."
+    parser = _command(commands, "study", _study, "what the tolerances of a cell do to a path", what, STUDY)
     parser.add_argument("path", metavar="PATH", help="the path, in any of the formats that are read")
     parser.add_argument("--cell", metavar="CELL.toml", required=True, help="the cell, with what may be off under [tolerance]")
     parser.add_argument("--draws", metavar="N", default="2000", help="how many cells are drawn at random; 2000 where nothing is said")
@@ -140,10 +142,8 @@ SIGN = """examples:
 
 
 def _add_sign(commands):
-    parser = commands.add_parser(
-        "sign", help="put a name to a report", description="Put a name and a date to a report of check --json. The signature becomes void when what it covers changes.",
-        epilog=SIGN, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
-    )  # fmt: skip
+    what = "Put a name and a date to a report of check --json. The signature becomes void when what it covers changes."
+    parser = _command(commands, "sign", _sign, "put a name to a report", what, SIGN)
     parser.add_argument("report", metavar="REPORT.json", help="the report; it is written anew with the signature, in place of any it had")
     parser.add_argument("--by", metavar="NAME", required=True, help="the person who stands for it")
     parser.add_argument("--remark", metavar="TEXT", default="", help="what the person adds")
@@ -174,10 +174,7 @@ CONVERT = """examples:
 
 
 def _add_convert(commands):
-    parser = commands.add_parser(
-        "convert", help="write a path as another kind of file", description="Write a path as timed CSV, JSON lines, Parquet or Feather.",
-        epilog=CONVERT, formatter_class=argparse.RawDescriptionHelpFormatter, allow_abbrev=False,
-    )  # fmt: skip
+    parser = _command(commands, "convert", _convert, "write a path as another kind of file", "Write a path as timed CSV, JSON lines, Parquet or Feather.", CONVERT)
     parser.add_argument("path", metavar="IN", help="the path, in any of the formats that are read")
     parser.add_argument("out", metavar="OUT", help="the file to write; its ending says the format: .csv, .jsonl, .parquet, .feather")
     parser.add_argument("--to", metavar="F", choices=("timed", "json-lines", "parquet", "feather"), help="the format of OUT: timed, json-lines, parquet, feather")
@@ -209,15 +206,15 @@ exit status of merge: 0 merged, 1 merged and marked where somebody has to decide
 
 
 def _add_notes(commands):
-    shape = {"formatter_class": argparse.RawDescriptionHelpFormatter, "allow_abbrev": False, "epilog": NOTES}
-    notes = commands.add_parser("notes", help="merge or list the notes pinned to a path", description="Notes pinned to a path: merge them or list them.", **shape)
+    notes = _command(commands, "notes", None, "merge or list the notes pinned to a path", "Notes pinned to a path: merge them or list them.", NOTES)
     acts = notes.add_subparsers(dest="act", metavar="ACT", required=True)
-    merging = acts.add_parser("merge", help="make one file of two people's notes", description="Make one file of two people's notes, without loss.", **shape)
+    merging = _command(acts, "merge", _merge_notes, "make one file of two people's notes", "Make one file of two people's notes, without loss.", NOTES)
     merging.add_argument("ours", metavar="OURS", help="a file of notes")
     merging.add_argument("theirs", metavar="THEIRS", help="another one")
     merging.add_argument("--base", metavar="BASE", help="what both began with; it tells changes that were made by hand in an editor")
     merging.add_argument("--out", metavar="FILE", required=True, help="the merged notes: OURS, THEIRS or a new file")
-    listing = acts.add_parser("list", help="show notes; with path and cell, what is stale", description="Show notes; with path and cell, where they are now and what is stale.", **shape)
+    what = "Show notes; with path and cell, where they are now and what is stale."
+    listing = _command(acts, "list", _list_notes, "show notes; with path and cell, what is stale", what, NOTES)
     listing.add_argument("file", metavar="FILE", help="a file of notes")
     listing.add_argument("path", metavar="PATH", nargs="?", help="the path that they are pinned to")
     listing.add_argument("--cell", metavar="CELL.toml", help="the cell; goes with PATH")
@@ -230,15 +227,7 @@ def _run(arguments):
     except SystemExit:  # argparse has printed what --help or --version asks for
         _say("", sys.stdout)
         return 0
-    if options.command == "notes":
-        return _merge_notes(options) if options.act == "merge" else _list_notes(options)
-    if options.command == "sign":
-        return _sign(options)
-    if options.command == "study":
-        return _study(options)
-    if options.command == "convert":
-        return _convert(options)
-    return _check(options) if options.command == "check" else _demo(options.folder)
+    return options.run(options)
 
 
 def _check(options):
@@ -453,11 +442,12 @@ def _silence(stream):
         pass
 
 
-def _demo(folder):
+def _demo(options):
     from importlib.resources import files
 
     from .writing import write_whole
 
+    folder = options.folder
     items = sorted((files("pathaudit") / "demo").iterdir(), key=lambda item: item.name)
     contents = {os.path.join(folder, item.name): item.read_bytes() for item in items if item.is_file() and item.name[0] not in "._"}
     for file in contents:

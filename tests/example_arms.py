@@ -80,3 +80,9 @@ def swaying(seed, scale=1.0, time=SWAY_TIME):
     size, rate, phase = random.uniform(0.05, 0.25, 6), random.uniform(0.5, 4.0, 6), random.uniform(0, 6.3, 6)
     joints = middle + size * np.sin(np.outer(time, rate) + phase)
     return cell_of(pa.Arm.from_dh(rows), 0.1 * scale, start=joints[0]), joints
+
+
+def swaying_audit(seed):
+    """The audit of a swaying motion, begun as the arm was moved."""
+    cell, joints = swaying(seed)
+    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])

@@ -7,7 +7,7 @@ from datetime import UTC, datetime
 
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import swaying_audit
 
 import pathaudit as pa
 from pathaudit.against import against, path_words
@@ -17,8 +17,7 @@ from pathaudit.report.tables import check_json, check_values
 
 @pytest.fixture(scope="module")
 def audit():
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 @pytest.fixture

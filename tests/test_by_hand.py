@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import SWAY_TIME, path_of_motion, swaying, swaying_audit
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
@@ -24,8 +24,7 @@ def audit():
 @pytest.fixture(scope="module")
 def failing():
     """A motion that passes speed and acceleration limits as programmed."""
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 def test_without_edits_the_programme_stands(failing):

@@ -4,16 +4,14 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import swaying_audit
 
-import pathaudit as pa
 from pathaudit.changes import changes, outline
 
 
 @pytest.fixture(scope="module")
 def audit():
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 def with_findings(audit, *findings):

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, cell_of, dh_rows, path_of_motion, path_of_poses, puma, swaying
+from example_arms import SWAY_TIME, cell_of, dh_rows, path_of_motion, path_of_poses, puma, swaying, swaying_audit
 
 import pathaudit as pa
 from pathaudit import between, hidden, proof
@@ -107,8 +107,7 @@ def test_an_end_of_travel_passed_between_samples_is_found():
 @pytest.mark.parametrize("seed", range(4))
 @pytest.mark.parametrize("style", ["even", "local"])
 def test_a_retimed_audit_has_nothing_between_its_samples(seed, style):
-    cell, joints = swaying(seed)
-    audit = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    audit = swaying_audit(seed)
     again = audit.retime(style).audit()
     assert again.verdict == "warn" and not between_samples(again)
     assert again.proof.speed_share.max() < 1.0 and again.proof.acceleration_share.max() < 1.0
@@ -184,8 +183,7 @@ def test_the_reports_say_what_is_certain_between_the_samples():
     from pathaudit.report.tables import check_values
     from pathaudit.report.text import summary
 
-    cell, joints = swaying(3)[:2]
-    audit = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    audit = swaying_audit(3)
     told, text = check_values(audit)["proof"], " ".join(summary(audit).split())
     assert told["intervals"] == 300 and told["intervals_without_motion"] == told["intervals_unproven"] == 0 and told["motion"] in text
     assert 0.9 * audit.rates.sigma_min.min() < told["sigma_min_above"] <= audit.rates.sigma_min.min()
@@ -194,8 +192,7 @@ def test_the_reports_say_what_is_certain_between_the_samples():
 
 
 def test_long_paths_are_proven_in_blocks(monkeypatch):
-    cell, joints = swaying(4)[:2]
-    rates = measure(pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0]).motion)
+    rates = measure(swaying_audit(4).motion)
     whole = proof.prove(rates)
     monkeypatch.setattr(between, "BLOCK", 47)
     for field in ("sigma_bound", "stray_m", "stray_rad", "speed_share", "position_high", "points"):

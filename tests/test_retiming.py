@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, cell_of, path_of_motion, path_of_poses, puma, swaying
+from example_arms import SWAY_TIME, cell_of, path_of_motion, path_of_poses, puma, swaying, swaying_audit
 
 import pathaudit as pa
 
@@ -12,8 +12,7 @@ def overruns(audit):
 
 
 def test_one_even_speed_is_one_factor_and_just_enough():
-    cell, joints = swaying(1)[:2]
-    audit = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    audit = swaying_audit(1)
     assert overruns(audit)
     even = audit.retime("even")
     assert np.ptp(even.factor) < 1e-12 and even.feasible and not overruns(even.audit())
@@ -35,8 +34,7 @@ def test_only_air_moves_are_slowed_where_only_they_need_it():
 
 
 def test_every_slowed_sample_says_what_limits_it():
-    cell, joints = swaying(2)[:2]
-    again = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0]).retime("local")
+    again = swaying_audit(2).retime("local")
     assert len(again.binding) == len(again.time)
     for words, factor in zip(again.binding, again.factor, strict=True):
         assert (words == "") == (factor >= 1.0 - 1e-9)
@@ -53,9 +51,8 @@ def test_no_retiming_helps_where_a_pose_is_out_of_reach():
 
 
 def test_an_unknown_style_is_refused():
-    cell, joints = swaying(2)[:2]
     with pytest.raises(ValueError, match="'even', 'local' or None"):
-        pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0]).retime("fast")
+        swaying_audit(2).retime("fast")
 
 
 def test_the_audit_of_new_times_is_that_of_the_retimed_path_on_its_own():

@@ -3,9 +3,8 @@
 import base64
 
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import swaying_audit
 
-import pathaudit as pa
 from pathaudit.report.script import joined_modules, style_sheet
 from pathaudit.report.tables import retimed_csv
 from pathaudit.widgets.timeline import Timeline
@@ -26,8 +25,7 @@ window.begin = () => render({ model: window.model, el: document.getElementById("
 
 @pytest.fixture(scope="module")
 def audit():
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 class Instrument:

@@ -1,7 +1,7 @@
 """The DataFrames of an audit: units in the names, nothing lost, gaps kept."""
 
 import numpy as np
-from example_arms import SWAY_TIME, cell_of, path_of_motion, path_of_poses, puma, swaying
+from example_arms import SWAY_TIME, cell_of, path_of_motion, path_of_poses, puma, swaying, swaying_audit
 
 import pathaudit as pa
 
@@ -21,8 +21,7 @@ def test_measures_are_one_row_a_sample_in_the_trades_units():
 
 
 def test_findings_carry_the_fields_of_the_report():
-    cell, joints = swaying(1)[:2]
-    audit = pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    audit = swaying_audit(1)
     wanted = ["kind", "severity", "joint", "t_start_s", "t_end_s", "worst_t_s", "value", "limit", "unit", "why"]
     assert list(audit.findings.columns[:10]) == wanted and len(audit.findings) == len(audit.finding_list) > 0
 

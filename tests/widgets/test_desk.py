@@ -2,9 +2,8 @@
 
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import swaying_audit
 
-import pathaudit as pa
 from pathaudit.notes import read_notes
 from pathaudit.widgets.desk import Desk
 from pathaudit.widgets.noting import Noting
@@ -13,8 +12,7 @@ from pathaudit.widgets.session import Session
 
 @pytest.fixture(scope="module")
 def audit():
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 @pytest.fixture

@@ -3,17 +3,15 @@
 from threading import Event
 
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import swaying_audit
 
-import pathaudit as pa
 from pathaudit.edits import Edits, Slow
 from pathaudit.widgets.session import Listener, Session
 
 
 @pytest.fixture(scope="module")
 def audit():
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 class Ear(Listener):

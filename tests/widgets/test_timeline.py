@@ -12,10 +12,9 @@ import nbconvert
 import nbformat
 import numpy as np
 import pytest
-from example_arms import SWAY_TIME, path_of_motion, swaying
+from example_arms import swaying_audit
 from fake_audit import fake_audit
 
-import pathaudit as pa
 from pathaudit.report.tables import retimed_csv
 from pathaudit.widgets import timeline as module
 from pathaudit.widgets.still_form import still_form
@@ -65,8 +64,7 @@ def ask(timeline, **content):
 
 @pytest.fixture(scope="module")
 def real():
-    cell, joints = swaying(2)[:2]
-    return pa.audit(path_of_motion(cell, SWAY_TIME, joints), cell, start=joints[0])
+    return swaying_audit(2)
 
 
 @pytest.fixture

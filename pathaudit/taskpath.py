@@ -271,7 +271,7 @@ class Filling:
         if self.form == "angles":
             out[:] = rotations.matrix_from_rpy(np.stack(turned[:3], axis=-1))
         elif self.form == "quaternion":
-            _frames_from_wxyz(self._unit(turned[:4], QUATERNION, "a quaternion", place), out)
+            rotations.matrix_from_wxyz(np.stack(self._unit(turned[:4], QUATERNION, "a quaternion", place)).T, out)
         else:  # the turns about the axes are chosen when all are there
             for c, block in enumerate(self._unit(turned[:3], AXIS, "a tool axis", place)):
                 out[:, c, 2] = block
@@ -336,16 +336,6 @@ def _units(name, units):
 def _either(names):
     *first, last = names
     return f"{', '.join(first)} or {last}" if first else last
-
-
-def _frames_from_wxyz(wxyz, out):
-    """`rotations.matrix_from_wxyz`, written entry by entry into `out`: several times as fast on long paths."""
-    w, x, y, z = wxyz
-    xx, yy, zz, xy, xz, yz, wx, wy, wz = x * x, y * y, z * z, x * y, x * z, y * z, w * x, w * y, w * z
-    rows = ((1 - 2 * (yy + zz), 2 * (xy - wz), 2 * (xz + wy)), (2 * (xy + wz), 1 - 2 * (xx + zz), 2 * (yz - wx)), (2 * (xz - wy), 2 * (yz + wx), 1 - 2 * (xx + yy)))
-    for i, row in enumerate(rows):
-        for j, entry in enumerate(row):
-            out[:, i, j] = entry
 
 
 def _carried_on(axes, before):

@@ -8,7 +8,7 @@ import numpy as np
 from ..conventions import INCH, MM
 from ..errors import ModelError, quoted
 from .curves import angle_between, joining_quintic
-from .moves import PARTS, Course
+from .moves import PARTS, Course, curve_lengths
 from .shapes import CURVE, STILL, Curves, curvature
 from .turning import EVEN, Blended, splined_rate
 
@@ -98,7 +98,7 @@ def round_corners(course: Course, corner: Corner, speed, acceleration) -> Rounde
     start = _look(course, at, course.length[at] - used, moving[at])
     end = _look(course, at + 1, used, moving[at])
     curves = Curves(joining_quintic(start[0], end[0], (start[1], end[1]), (start[2], end[2])))
-    length = _lengths(curves)
+    length = curve_lengths(curves)
     turning = Blended(start[3], start[4] * length[:, None], end[3], end[4] * length[:, None])
     cut_start, cut_end = np.zeros(course.moves), np.zeros(course.moves)
     cut_start[at + 1], cut_end[at] = used, used
@@ -158,12 +158,6 @@ def peak_factor(bend):
         _, slope, second = curves.at(rows, np.full(len(bend), t))
         peak = np.maximum(peak, np.linalg.norm(curvature(slope, second)[2], axis=1))
     return 1.001 * peak
-
-
-def _lengths(curves):
-    rows = np.arange(len(curves.coefficients))
-    edges = np.linspace(0.0, 1.0, PARTS + 1)
-    return sum((curves.length(rows, np.full(len(rows), a), np.full(len(rows), b)) for a, b in zip(edges[:-1], edges[1:], strict=True)), np.zeros(len(rows)))
 
 
 def _nearest(curves, points):

@@ -160,7 +160,7 @@ class Draft:
         lines = Lines(points[:-1], points[1:])
         length = np.where(kind == LINE, np.linalg.norm(points[1:] - points[:-1], axis=1), 0.0)
         length[kind == ARC] = arcs.length
-        length[curve] = _curve_lengths(curves)
+        length[curve] = curve_lengths(curves)
         turned = self._turning(kind, pose, line, bent, points)
         numbers = (frozen(values, dtype) for values, dtype in ((speed, float), (dwell, float), (air, bool), (zone, float)))
         return Course(
@@ -252,7 +252,8 @@ PARTS = 16
 """Parts of a curve's interval over which its length is summed: then 8 nodes each are exact to the last digits."""
 
 
-def _curve_lengths(curves):
+def curve_lengths(curves):
+    """(r,) m, the whole length of each curve."""
     rows = np.arange(len(curves.coefficients))
     return sum((curves.length(rows, np.full(len(rows), k / PARTS), np.full(len(rows), (k + 1) / PARTS)) for k in range(PARTS)), np.zeros(len(rows)))
 

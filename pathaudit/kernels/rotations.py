@@ -53,15 +53,16 @@ def rpy_from_matrix(matrix):
     return np.stack([x, y, z], axis=-1)
 
 
-def matrix_from_wxyz(quaternion):
-    """Unit quaternions (..., 4) -> (..., 3, 3)."""
+def matrix_from_wxyz(quaternion, out=None):
+    """Unit quaternions (..., 4) -> (..., 3, 3), written into `out` where one is given; entry by entry, which is fast on long paths."""
     w, x, y, z = np.moveaxis(np.asarray(quaternion, dtype=np.float64), -1, 0)
-    rows = [
-        [1 - 2 * (y * y + z * z), 2 * (x * y - w * z), 2 * (x * z + w * y)],
-        [2 * (x * y + w * z), 1 - 2 * (x * x + z * z), 2 * (y * z - w * x)],
-        [2 * (x * z - w * y), 2 * (y * z + w * x), 1 - 2 * (x * x + y * y)],
-    ]
-    return np.stack([np.stack(row, axis=-1) for row in rows], axis=-2)
+    out = np.empty((*w.shape, 3, 3)) if out is None else out
+    xx, yy, zz, xy, xz, yz, wx, wy, wz = x * x, y * y, z * z, x * y, x * z, y * z, w * x, w * y, w * z
+    rows = ((1 - 2 * (yy + zz), 2 * (xy - wz), 2 * (xz + wy)), (2 * (xy + wz), 1 - 2 * (xx + zz), 2 * (yz - wx)), (2 * (xz - wy), 2 * (yz + wx), 1 - 2 * (xx + yy)))
+    for i, row in enumerate(rows):
+        for j, entry in enumerate(row):
+            out[..., i, j] = entry
+    return out
 
 
 def wxyz_from_matrix(matrix):

@@ -12,6 +12,7 @@ import numpy as np
 from ..conventions import INCH, MM
 from ..course import Course, Draft
 from ..errors import ReadError, quoted
+from .geometry import UNIT_OF, axis_asked, metres
 from .sources import decode
 
 EXPECTED = "cutter-location text"
@@ -30,7 +31,7 @@ HINTS = {"CIRCLE": ARCS, "MOVARC": ARCS, "INDIRV": ARCS, "TLON": ARCS, "ARCMOV":
 
 def read_cutter_location(data: bytes, name, sha256: str, options) -> Course:
     """The moves of a file. options.units where the file has no UNITS; options.axis, the tool's +Z, where it has no vectors. Raises ReadError."""
-    moves = _Moves(name, sha256, getattr(options, "units", None), getattr(options, "axis", None))
+    moves = _Moves(name, sha256, options.units, options.axis)
     for number, statement in _statements(name, decode(name, data, EXPECTED)):
         moves.take(number, statement)
     return moves.course()
@@ -62,7 +63,7 @@ class _Moves:
 
     def __init__(self, name, sha256, units, axis):
         self.name, self.sha256, self.asked = name, sha256, axis
-        self.unit = {None: None, "mm": MM, "inch": INCH}[units]
+        self.unit = UNIT_OF.get(units)
         self.ended = self.rapid = self.rapids = self.vectors = self.multax = False
         self.holder = HOLDER if axis is None else tuple(-float(value) for value in axis)
         self.speed, self.place, self.draft, self.number = None, None, None, 0
@@ -111,7 +112,7 @@ class _Moves:
             self.holder, self.vectors = self._unit(values[3:], what), True
         elif not self.multax and self.vectors and self.holder != HOLDER:
             raise self.refuse(f"{what} after MULTAX/OFF with the tool tilted", "MULTAX/ON and a vector: what the tool does here differs between processors")
-        return tuple(_metres(value, self.unit) for value in values[:3])
+        return tuple(metres(value, self.unit) for value in values[:3])
 
     def _unit(self, vector, what):
         length = math.hypot(*vector)
@@ -148,7 +149,7 @@ class _Moves:
             raise self.refuse("GODLTA from a point that is not known", "FROM or GOTO before it")
         values = self._numbers(parts, (1, 3), "GODLTA")
         step = np.array(values) if len(values) == 3 else values[0] * np.array(self.holder)
-        self._move(tuple(a + _metres(float(b), self.unit) for a, b in zip(self.place, step, strict=True)), "GODLTA")
+        self._move(tuple(a + metres(float(b), self.unit) for a, b in zip(self.place, step, strict=True)), "GODLTA")
 
     def _move(self, place, word):
         if self.speed is None and not self.rapid:
@@ -205,12 +206,8 @@ class _Moves:
         elif self.asked is None:
             yield "The file has no vectors: the holder is straight above the tip (0, 0, 1), as its words mean; the turn about the tool's axis is free."
         else:
-            yield f"The tool stands at i,j,k = {', '.join(f'{value:.6g}' for value in self.asked)} all along, as asked; the turn about it is free."
+            yield axis_asked(self.asked)
         if self.scaled:
             yield f"Vectors that are not of length 1, first in line {self.scaled}, are scaled to it."
         if self.rapids:
             yield "RAPID holds for the next motion, which is an air move in a straight line."
-
-
-def _metres(value, unit):
-    return value / 1000.0 if unit == MM else value * unit

@@ -10,6 +10,7 @@ import re
 from ..conventions import INCH, MM
 from ..course import Course, Draft
 from ..errors import ReadError, quoted
+from .geometry import UNIT_OF, axis_asked, metres
 from .sources import decode
 
 EXPECTED = "machine code as text"
@@ -43,8 +44,8 @@ HINTS = {
 
 def read_machine_code(data: bytes, name, sha256: str, options) -> Course:
     """The moves of a program. options.axis: the tool's +Z in the part frame, which no program of this kind tells. Raises ReadError."""
-    program = _Program(name, sha256, bool(getattr(options, "inch_codes", False)), getattr(options, "units", None))
-    axis = getattr(options, "axis", None)
+    program = _Program(name, sha256, options.inch_codes, options.units)
+    axis = options.axis
     for number, line in enumerate(decode(name, data, EXPECTED).split("\n"), 1):
         program.block(number, line)
     if axis is None:
@@ -58,7 +59,7 @@ class _Program:
     def __init__(self, name, sha256, inch_codes, units):
         self.name, self.sha256, self.inch_codes = name, sha256, inch_codes
         self.motion = self.plane = self.distance = self.speed = self.perminute = None
-        self.unit = {None: None, "mm": MM, "inch": INCH}[units]
+        self.unit = UNIT_OF.get(units)
         self.place = [None, None, None]
         self.ended = self.percent = self.number = 0
         self.moves, self.begin, self.first_line = [], None, 0
@@ -195,7 +196,7 @@ class _Program:
         place = list(self.place)
         for k, letter in enumerate(AXES):
             if letter in words:
-                step = _metres(words[letter], self.unit)
+                step = metres(words[letter], self.unit)
                 if self.distance == 91 and place[k] is None:
                     raise self.refuse(f"{letter} from a point that is not known", f"{letter} once with G90 before it")
                 place[k] = place[k] + step if self.distance == 91 else step
@@ -234,7 +235,7 @@ class _Program:
         start, self.place = self.place, self._target(words)
         centre, normal = list(start), [0.0, 0.0, 0.0]
         for k in (first, second):
-            centre[k] = start[k] + _metres(words.get(CENTRE[k], 0.0), self.unit)
+            centre[k] = start[k] + metres(words.get(CENTRE[k], 0.0), self.unit)
         normal[third] = 1.0 if self.motion == 3 else -1.0
         sweep = self._sweep(start, centre, first, second)
         self.moves.append(("arc", self.number, tuple(self.place), tuple(centre), tuple(normal), sweep, self.speed))
@@ -276,7 +277,7 @@ class _Program:
         return draft.finish()
 
     def _notes(self, axis):
-        yield f"The tool stands at i,j,k = {', '.join(f'{value:.6g}' for value in axis)} all along, as asked; the turn about it is free."
+        yield axis_asked(axis)
         if self.rapids:
             yield "G00 is an air move, taken as a straight line; on some machines the axes move independently."
         if self.dwelt:
@@ -287,8 +288,3 @@ class _Program:
             yield f"Numbers without a decimal point, first in line {self.pointless}, are taken as whole {'millimetres' if self.unit == MM else 'inches'}."
         if self.off > 1e-7:
             yield f"Arcs end up to {self.off / MM:.2g} mm off their circle (line {self.off_line}), which is drawn in evenly along the arc."
-
-
-def _metres(value, unit):
-    """The decimal number of the file in metres, rounded once for millimetres."""
-    return value / 1000.0 if unit == MM else value * unit

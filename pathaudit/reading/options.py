@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..errors import ModelError, quoted
+from .geometry import UNIT_OF
 
 FORMATS = {
     "timed": "a timed path (CSV)",
@@ -17,8 +18,6 @@ FORMATS = {
     "recorded": "a recorded path",
 }
 """Every format that can be asked for, and what it is called in messages."""
-
-UNITS = ("mm", "inch")
 
 
 @dataclass(frozen=True)
@@ -50,7 +49,7 @@ class ReadOptions:
 
     def __post_init__(self):
         _one_of("format", self.format, FORMATS)
-        _one_of("units", self.units, UNITS)
+        _one_of("units", self.units, UNIT_OF)
         if self.axis is not None:
             object.__setattr__(self, "axis", _direction(self.axis))
         for name in ABOVE_ZERO:

@@ -14,7 +14,7 @@ from ..errors import ReadError, quoted
 from ..kernels import rotations
 from ..runs import runs
 from ..taskpath import ANGLE, AXIS, LENGTH, QUATERNION, TIME, Path, assemble
-from .csv_table import Table, is_number, not_a_number
+from .csv_table import NUMERIC, Table, is_number, not_a_number
 from .json_lines import json_columns
 from .smoothing import HALF, MOST, dwells, noise, smoothed
 from .sniffing import sniff
@@ -95,7 +95,7 @@ class _Log(NamedTuple):
 
     def path(self, sha256, made):
         """The Path: values that were not altered are those of the source, to the last bit."""
-        numbers = {name: self._column(name) for name in self.table.header if name in _KNOWN}
+        numbers = {name: self._column(name) for name in self.table.header if name in NUMERIC}
         cells = [self._cells(name, numbers) for name in self.table.header]
         lines = None if self.table.lines is None else self.table.lines[self.kept]
         return assemble(
@@ -132,12 +132,9 @@ class _Log(NamedTuple):
         return tuple(values[row] for row in self.kept)
 
 
-_KNOWN = {*TIME, *QUATERNION, *AXIS, "process", *(f"{c}_{u}" for c in "xyz" for u in LENGTH), *(f"r{c}_{u}" for c in "xyz" for u in ANGLE)}
-
-
 def leaves_out(column, found) -> bool:
     """Whether a row goes here for what another reader refuses: its words for what it found in that column."""
-    return column in _KNOWN - {"process"} and (found in ("an empty cell", "no value") or found.strip("'").strip().lower() in NOTHING - {""})
+    return column in NUMERIC - {"process"} and (found in ("an empty cell", "no value") or found.strip("'").strip().lower() in NOTHING - {""})
 
 
 def _numbers(name, table, column):
@@ -168,7 +165,7 @@ def _quantity(name, table, title, units):
 def _orientation(name, table, said):
     """(N, 4) quaternions with neighbouring signs, or (N, 3) axes; of length 1, or NaN where the recorder has nothing. And which were scaled (N,)."""
     forms = [form for form in (QUATERNION, AXIS) if all(c in table.header for c in form)]
-    angles = [c for c in table.header if c[:2] in ("rx", "ry", "rz") and c in _KNOWN]
+    angles = [c for c in table.header if c[:2] in ("rx", "ry", "rz") and c in NUMERIC]
     if len(forms) + bool(angles) != 1:
         raise ReadError(name, "header", f"the columns {quoted(', '.join(table.header))}", "exactly one of qw,qx,qy,qz or rx_deg,ry_deg,rz_deg (or _rad) or i,j,k")
     if angles:

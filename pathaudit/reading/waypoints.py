@@ -15,6 +15,7 @@ from ..errors import ReadError, first_repeated, quoted
 from ..kernels.rotations import matrix_from_rpy, wxyz_from_matrix
 from ..taskpath import ANGLE, AXIS, LENGTH, ORIENTATIONS, QUATERNION, TIME
 from .csv_table import holds_cells, is_number, not_a_number, split_header
+from .geometry import axis_asked
 from .sources import decode
 
 EXPECTED = "points with a speed as CSV text"
@@ -30,7 +31,7 @@ FLAT = 1e-6
 
 def read_waypoints(data: bytes, name, sha256: str, options) -> Course:
     """The moves through the points. options.axis: the tool's +Z, where the file has no orientation. Raises ReadError."""
-    return _Course(_Rows(name, decode(name, data, EXPECTED)), sha256, getattr(options, "axis", None)).course()
+    return _Course(_Rows(name, decode(name, data, EXPECTED)), sha256, options.axis).course()
 
 
 class _Rows:
@@ -266,7 +267,7 @@ class _Course:
         if unused:
             yield f"Columns that points have no use for were left out: {', '.join(unused)}."
         if self.poses is None:
-            yield f"The tool stands at i,j,k = {', '.join(f'{value:.6g}' for value in self.axis)} all along, as asked; the turn about it is free."
+            yield axis_asked(self.axis)
 
 
 def _carried(values):
